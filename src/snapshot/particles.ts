@@ -1,0 +1,105 @@
+/**
+ * The one in-memory form of a snapshot: a structure of arrays in shared memory.
+ *
+ * All readers make it, all physics takes it, and nobody reorders it: index i means the same body
+ * in the file, here, and in every result.
+ */
+import type { UnitSystem } from './units.ts';
+
+/** A column of reals as it lies in shared memory: the precision of the file is kept. */
+export type FloatColumn = Float64Array | Float32Array;
+
+/** Identifiers keep the width of the file, so that 64-bit ids stay exact. */
+export type IdColumn =
+  | BigInt64Array
+  | BigUint64Array
+  | Float64Array
+  | Float32Array
+  | Int32Array
+  | Uint32Array
+  | Int16Array
+  | Uint16Array
+  | Int8Array
+  | Uint8Array;
+
+/** Columns beyond mass, position and velocity; each is present only if the file holds it. */
+export interface OptionalColumns {
+  readonly id?: IdColumn;
+  /** Index into {@link Particles.componentNames}. */
+  readonly component?: Uint16Array;
+  /** Plummer-equivalent softening length of each body [length]. */
+  readonly softening?: FloatColumn;
+  /** Potential written by the simulation, sign and self term as written [velocity²]. */
+  readonly potential?: FloatColumn;
+  /** Accelerations written by the simulation [velocity² / length]. */
+  readonly acceleration?: {
+    readonly x: FloatColumn;
+    readonly y: FloatColumn;
+    readonly z: FloatColumn;
+  };
+  readonly specificEnergy?: FloatColumn;
+  readonly density?: FloatColumn;
+  readonly group?: IdColumn;
+  readonly subgroup?: IdColumn;
+}
+
+/** Coordinates are physical, or comoving with all that is needed to make them physical. */
+export type Frame =
+  | { readonly kind: 'physical' }
+  | {
+      readonly kind: 'comoving';
+      readonly scaleFactor: number;
+      readonly hubbleRate: number;
+      /** Edge of the periodic box [comoving length], or null if not periodic. */
+      readonly boxSize: number | null;
+    };
+
+/** What a reader knows about where the bytes came from, for messages and for the record. */
+export interface ParticleOrigin {
+  /** Path as the user gave it, `-` for standard input, or a model's name. */
+  readonly file: string;
+  readonly format: 'raw' | 'arrow-file' | 'arrow-stream' | 'made';
+  /** Significant binary digits of the coarsest of mass, position, velocity in the file: 53, 24 or 11. */
+  readonly mantissaBits: number;
+  /** Findings of the reader that a user should see with the result (for instance a layout found by itself). */
+  readonly remarks: readonly Remark[];
+}
+
+/** A finding with a stable code, one sentence, and what to do about it. */
+export interface Remark {
+  readonly code: string;
+  readonly text: string;
+  readonly remedy: string;
+}
+
+export interface Particles {
+  readonly count: number;
+  readonly mass: FloatColumn;
+  readonly x: FloatColumn;
+  readonly y: FloatColumn;
+  readonly z: FloatColumn;
+  readonly vx: FloatColumn;
+  readonly vy: FloatColumn;
+  readonly vz: FloatColumn;
+  readonly columns: OptionalColumns;
+  readonly componentNames: readonly string[];
+  /** Time of the snapshot in its own units, or null if the file does not say. */
+  readonly time: number | null;
+  /** Units and G as the file states them, or null; command line and run file may overrule. */
+  readonly units: UnitSystem | null;
+  readonly gravity: number | null;
+  /** Plummer-equivalent softening length as the file states it, or null. */
+  readonly softening: number | null;
+  readonly frame: Frame;
+  readonly origin: ParticleOrigin;
+}
+
+/** Allocates a zeroed column of `count` reals in shared memory. */
+export function allocateColumn(
+  count: number,
+  type: 'float64' | 'float32' = 'float64',
+): FloatColumn {
+  return type === 'float64'
+    ? new Float64Array(new SharedArrayBuffer(count * 8))
+    : new Float32Array(new SharedArrayBuffer(count * 4));
+}

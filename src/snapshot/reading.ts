@@ -1,0 +1,83 @@
+/** What every reader takes and gives; the readers themselves are in `raw/` and `arrow/`. */
+import type { Particles, Remark } from './particles.ts';
+
+/** Names of the columns that the engine knows, in files of every format. */
+export const FIELD_NAMES = [
+  'mass',
+  'position',
+  'velocity',
+  'x',
+  'y',
+  'z',
+  'vx',
+  'vy',
+  'vz',
+  'id',
+  'component',
+  'softening',
+  'potential',
+  'acceleration',
+  'ax',
+  'ay',
+  'az',
+  'specificEnergy',
+  'density',
+  'group',
+  'subgroup',
+] as const;
+
+export type FieldName = (typeof FIELD_NAMES)[number];
+
+export interface ReadOptions {
+  /** Layout file of a raw snapshot, as the user gave it. Without it, one beside the data is looked for. */
+  readonly layout?: string;
+  /** From our field name to the name of the column or field in the file (`--columns mass=m,…`). */
+  readonly columns?: Readonly<Partial<Record<FieldName, string>>>;
+  /** Optional columns to load besides mass, position, velocity and `id`; others are left on disk. */
+  readonly optional?: readonly FieldName[];
+  /** Called with bytes done and bytes in all, not more than some tens of times a second. */
+  readonly onProgress?: (bytesDone: number, bytesTotal: number) => void;
+  readonly signal?: AbortSignal;
+}
+
+/** Result of `describe`: what is in the file, without reading more than it must. */
+export interface SnapshotDescription {
+  readonly file: string;
+  readonly format: 'raw' | 'arrow-file' | 'arrow-stream';
+  /** Length of the file, or null for standard input. */
+  readonly bytes: number | null;
+  readonly count: number;
+  readonly time: number | null;
+  readonly units: string | null;
+  readonly gravity: number | null;
+  readonly softening: number | null;
+  /** Byte order of the numbers in the file. */
+  readonly byteOrder: 'little' | 'big';
+  /** For a raw file its layout in one line; for Arrow the compression and number of batches. */
+  readonly structure: string;
+  readonly columns: readonly DescribedColumn[];
+  /** First sanity findings, from the first and last few thousand bodies. */
+  readonly remarks: readonly Remark[];
+}
+
+export interface DescribedColumn {
+  /** Name in the file. */
+  readonly name: string;
+  /** Our name for it, or null for a column that Settlemark does not use. */
+  readonly field: FieldName | null;
+  readonly type: string;
+  /** Numbers a body: 3 for a vector. */
+  readonly width: number;
+  /** Where the column's values lie: byte offset of the first and distance to the next, if that makes sense. */
+  readonly offset: number | null;
+  readonly stride: number | null;
+  /** Smallest and largest finite value among the bodies looked at, or null if none was. */
+  readonly smallest: number | null;
+  readonly largest: number | null;
+}
+
+export type SnapshotReader = (path: string, options: ReadOptions) => Promise<Particles>;
+export type SnapshotDescriber = (
+  path: string,
+  options: ReadOptions,
+) => Promise<SnapshotDescription>;
