@@ -1,0 +1,193 @@
+/** What is in a raw file, from its header and its first and last bodies. */
+import { InputError } from '../../errors.ts';
+import { openInput } from '../files.ts';
+import { allocateColumn, type FloatColumn, type Particles, type Remark } from '../particles.ts';
+import type { DescribedColumn, FieldName, ReadOptions, SnapshotDescription } from '../reading.ts';
+import { screenSample } from '../screen.ts';
+import { readBodies, type BodyRange, type Target } from './bodies.ts';
+import { findLayout } from './find-layout.ts';
+import { layOverOrExplain } from './fit.ts';
+import { describeLayout, isSkip, type Layout, type LayoutField } from './layout.ts';
+import { planColumns, QUANTITIES, similarNames, type Plan, type Quantity } from './plan.ts';
+import { columnType, statedValues } from './read.ts';
+import type { RawStructure } from './structure.ts';
+
+/** Bodies looked at, from the beginning and as many from the end. */
+const SAMPLE_BODIES = 4096;
+
+/**
+ * Describes a raw file: header, columns, smallest and largest value of the first and last 4096
+ * bodies, and what is odd about them, as remarks.
+ * @throws InputError as `readRaw` does if the file cannot be opened or the layout does not fit;
+ * findings about the values are remarks
+ */
+export async function describeRaw(
+  path: string,
+  options: ReadOptions,
+): Promise<SnapshotDescription> {
+  const file = await openInput(path);
+  try {
+    const found = await findLayout(path, options.layout);
+    const { layout } = found;
+    const structure = await layOverOrExplain(file, layout, found.file);
+    const ranges = sampleRanges(structure.count);
+    const targets = sampleTargets(layout, ranges);
+    await readBodies(file, structure, targets, ranges, options);
+    const planned = tryPlan(path, layout, options);
+    const stated = statedValues(path, structure);
+    return {
+      file: path,
+      format: 'raw',
+      bytes: file.size,
+      count: structure.count,
+      time: stated.time,
+      units: stated.units?.name ?? null,
+      gravity: stated.gravity,
+      softening: stated.softening,
+      byteOrder: layout.byteOrder,
+      structure: describeLayout(layout),
+      columns: layout.fields.flatMap((entry) =>
+        isSkip(entry) ? [] : [describeField(entry, structure, targets, planned.plan)],
+      ),
+      remarks: [
+        ...found.remarks,
+        ...similarNames(path, layout, options),
+        ...planned.remarks,
+        ...screened(path, structure, targets, planned.plan, ranges),
+      ],
+    };
+  } finally {
+    await file.handle.close();
+  }
+}
+
+function sampleRanges(count: number): BodyRange[] {
+  if (count <= 2 * SAMPLE_BODIES) return [{ begin: 0, end: count }];
+  return [
+    { begin: 0, end: SAMPLE_BODIES },
+    { begin: count - SAMPLE_BODIES, end: count },
+  ];
+}
+
+type SampleTarget = Extract<Target, { kind: 'reals' }>;
+
+function sampleTargets(layout: Layout, ranges: readonly BodyRange[]): SampleTarget[] {
+  const count = ranges.reduce((sum, range) => sum + range.end - range.begin, 0);
+  const targets: SampleTarget[] = [];
+  for (const field of layout.fields) {
+    if (isSkip(field)) continue;
+    for (let lane = 0; lane < field.width; lane++) {
+      const source = { field, lane };
+      targets.push({ kind: 'reals', source, column: allocateColumn(count, columnType(source)) });
+    }
+  }
+  return targets;
+}
+
+/** The plan with all optional columns; a column that is missing is a remark here, not an error. */
+function tryPlan(
+  path: string,
+  layout: Layout,
+  options: ReadOptions,
+): { plan: Plan; remarks: Remark[] } {
+  try {
+    return {
+      plan: planColumns(path, layout, { ...options, optional: QUANTITIES }),
+      remarks: [],
+    };
+  } catch (error) {
+    if (!(error instanceof InputError) || error.code !== 'input.missingColumn') throw error;
+    return { plan: new Map(), remarks: [asRemark(error)] };
+  }
+}
+
+function asRemark(error: InputError): Remark {
+  return { code: error.code, text: error.message, remedy: error.remedy ?? '' };
+}
+
+function describeField(
+  field: LayoutField,
+  structure: RawStructure,
+  targets: readonly SampleTarget[],
+  plan: Plan,
+): DescribedColumn {
+  let smallest = Infinity;
+  let largest = -Infinity;
+  for (const target of targets) {
+    if (target.source.field !== field) continue;
+    for (const value of target.column) {
+      if (value < smallest && value !== -Infinity) smallest = value;
+      if (value > largest && value !== Infinity) largest = value;
+    }
+  }
+  const block = structure.blocks.find((one) => one.fields.some((place) => place.field === field));
+  const place = block?.fields.find((one) => one.field === field);
+  return {
+    name: field.name,
+    field: fieldNameOf(field, plan),
+    type: field.type,
+    width: field.width,
+    offset: block && place ? block.segments[0].offset + place.offset : null,
+    stride: block?.stride ?? null,
+    smallest: Number.isFinite(smallest) ? smallest : null,
+    largest: Number.isFinite(largest) ? largest : null,
+  };
+}
+
+function fieldNameOf(field: LayoutField, plan: Plan): FieldName | null {
+  for (const [quantity, source] of plan) {
+    if (source.field !== field) continue;
+    if (field.width === 1) return quantity;
+    return VECTOR_OF[quantity] ?? quantity;
+  }
+  return null;
+}
+
+const VECTOR_OF: Readonly<Partial<Record<Quantity, FieldName>>> = {
+  x: 'position',
+  vx: 'velocity',
+  ax: 'acceleration',
+};
+
+/** The findings of the screening of the sample. */
+function screened(
+  path: string,
+  structure: RawStructure,
+  targets: readonly SampleTarget[],
+  plan: Plan,
+  ranges: readonly BodyRange[],
+): Remark[] {
+  if (plan.size === 0) return [];
+  const count = targets[0].column.length;
+  const column = (quantity: Quantity): FloatColumn => {
+    const source = plan.get(quantity);
+    const target = targets.find(
+      (one) => one.source.field === source?.field && one.source.lane === source.lane,
+    );
+    return target?.column ?? allocateColumn(count).fill(structure.layout.constants?.mass ?? NaN);
+  };
+  const sample: Particles = {
+    count,
+    mass: column('mass'),
+    x: column('x'),
+    y: column('y'),
+    z: column('z'),
+    vx: column('vx'),
+    vy: column('vy'),
+    vz: column('vz'),
+    columns: {},
+    componentNames: [],
+    ...statedValues(path, structure),
+    frame: { kind: 'physical' },
+    origin: { file: path, format: 'raw', mantissaBits: 53, remarks: [] },
+  };
+  const bodyOf = (index: number): number =>
+    index < ranges[0].end ? index : index - count + structure.count;
+  try {
+    screenSample(sample, bodyOf);
+    return [];
+  } catch (error) {
+    if (!(error instanceof InputError)) throw error;
+    return [asRemark(error)];
+  }
+}

@@ -1,0 +1,155 @@
+/**
+ * The layout of a raw file: one schema for validation, for the types and for the published JSON
+ * Schema. `docs/` tells users what it means; the checks that a schema cannot say are in
+ * `layout-check.ts`.
+ */
+import { z } from 'zod';
+import { UNIT_SYSTEMS } from '../units.ts';
+import { NUMBER_TYPES, TYPE_BYTES } from './types.ts';
+
+const numberType = z.enum(NUMBER_TYPES);
+
+const headerItem = z
+  .strictObject({
+    name: z
+      .string()
+      .min(1)
+      .describe(
+        'time, count, gravity and softening are used; any other name is kept as a value of the header',
+      ),
+    type: numberType,
+    offset: z
+      .int()
+      .min(0)
+      .describe('bytes from the beginning of the header, Fortran length words not counted'),
+  })
+  .describe('one number of the header');
+
+const field = z
+  .strictObject({
+    name: z
+      .string()
+      .min(1)
+      .describe(
+        'mass position velocity, or m, x y z, vx vy vz; id component softening potential acceleration (ax ay az) specificEnergy density group subgroup; a field of any other name is left on disk',
+      ),
+    type: numberType,
+    width: z
+      .int()
+      .min(1)
+      .max(65536)
+      .default(1)
+      .describe('numbers a body: 3 for position, velocity, acceleration'),
+    scale: z.number().default(1).describe('the value is the number in the file times this; not 0'),
+  })
+  .describe('a quantity of each body');
+
+const skip = z
+  .strictObject({
+    skip: z
+      .int()
+      .min(1)
+      .max(2 ** 31)
+      .describe('bytes a body to pass over'),
+  })
+  .describe('bytes that hold nothing of interest');
+
+const constants = z
+  .strictObject({
+    mass: z.number().min(0).optional().describe('mass of every body, if the file holds none'),
+    gravity: z.number().positive().optional().describe('constant of gravity G'),
+    softening: z
+      .number()
+      .min(0)
+      .optional()
+      .describe('Plummer-equivalent softening length of every body'),
+    time: z.number().optional().describe('time of the snapshot'),
+    count: z.int().min(1).optional().describe('number of bodies'),
+  })
+  .describe('what the file does not hold');
+
+const unitNames = Object.keys(UNIT_SYSTEMS) as (keyof typeof UNIT_SYSTEMS)[];
+
+export const layoutSchema = z
+  .strictObject({
+    $schema: z.string().optional().describe('for editors; not used'),
+    settlemark: z.literal('layout/1').describe('kind and version of this file'),
+    byteOrder: z.enum(['little', 'big']).default('little'),
+    markers: z
+      .enum(['none', 'fortran4', 'fortran8'])
+      .default('none')
+      .describe(
+        'length words of 4 or 8 bytes around each record of a sequential unformatted Fortran file; the header is one or more whole records, the bodies are one record (interleaved: or one each) or one record a field (columns)',
+      ),
+    headerBytes: z
+      .int()
+      .min(0)
+      .default(0)
+      .describe('bytes before the first body, Fortran length words not counted'),
+    header: z.array(headerItem).default([]),
+    arrangement: z
+      .enum(['interleaved', 'columns'])
+      .default('interleaved')
+      .describe('all fields of a body together, or one block a field'),
+    fields: z.array(z.union([field, skip])).min(1),
+    constants: constants.optional(),
+    units: z.enum(unitNames).optional().describe('system of units; sets G unless gravity is given'),
+  })
+  .meta({
+    title: 'Settlemark layout of a raw binary snapshot',
+    description:
+      'Says what the bytes of a raw binary file of particles are. The length of the file must fit to the byte.',
+  });
+
+/** Names of the keys of each kind of object, for messages about a misspelt one. */
+export const LAYOUT_KEYS = {
+  layout: Object.keys(layoutSchema.shape),
+  header: Object.keys(headerItem.shape),
+  fields: [...Object.keys(field.shape), ...Object.keys(skip.shape)],
+  constants: Object.keys(constants.shape),
+} as const;
+
+/** A layout as it stands in a file: what has a default may be left out. */
+export type LayoutInput = z.input<typeof layoutSchema>;
+/** A layout with all defaults filled in. */
+export type Layout = z.output<typeof layoutSchema>;
+export type LayoutField = z.output<typeof field>;
+export type LayoutSkip = z.output<typeof skip>;
+
+/** Seven little-endian float64 a body: what is assumed when there is no layout at all. */
+export const DEFAULT_LAYOUT: Layout = layoutSchema.parse({
+  settlemark: 'layout/1',
+  fields: ['mass', 'x', 'y', 'z', 'vx', 'vy', 'vz'].map((name) => ({ name, type: 'float64' })),
+} satisfies LayoutInput);
+
+/** JSON Schema (draft 2020-12) of layout files, for editors and for `docs/layout.schema.json`. */
+export function layoutJsonSchema(): Record<string, unknown> {
+  return z.toJSONSchema(layoutSchema, { target: 'draft-2020-12', io: 'input' });
+}
+
+export function isSkip(entry: LayoutField | LayoutSkip): entry is LayoutSkip {
+  return 'skip' in entry;
+}
+
+/** Bytes that a field takes in each body. */
+export function fieldBytes(entry: LayoutField | LayoutSkip): number {
+  return isSkip(entry) ? entry.skip : TYPE_BYTES[entry.type] * entry.width;
+}
+
+/** Bytes of one body, without Fortran length words. */
+export function bodyBytes(layout: Layout): number {
+  return layout.fields.reduce((sum, entry) => sum + fieldBytes(entry), 0);
+}
+
+/** A layout in one line, for `describe`. */
+export function describeLayout(layout: Layout): string {
+  const fields = layout.fields.map((entry) =>
+    isSkip(entry)
+      ? `(${entry.skip} bytes)`
+      : `${entry.name} ${entry.type}${entry.width > 1 ? `×${entry.width}` : ''}`,
+  );
+  const parts = [`${layout.byteOrder}-endian`, layout.arrangement];
+  if (layout.markers !== 'none') parts.push(`${layout.markers} markers`);
+  if (layout.headerBytes > 0) parts.push(`header of ${layout.headerBytes} bytes`);
+  return `${parts.join(', ')}: ${fields.join(', ')}`;
+}
