@@ -1,0 +1,171 @@
+/** Options of a measurement, and which of option, run file, snapshot and default decides each. */
+import { UsageError } from '../errors.ts';
+import { SPLINE_SUPPORT, type SofteningKernel } from '../octree/softening.ts';
+import type { Particles } from '../snapshot/particles.ts';
+import { UNIT_SYSTEMS, type UnitSystem } from '../snapshot/units.ts';
+import type { CentreMethod, RecordSettings, Setting, SettingOrigin } from './record.ts';
+
+/** What the user may set; everything is optional. */
+export interface MeasureOptions {
+  /** Name of a unit system; sets G unless `gravity` is given at the same level. */
+  readonly units?: string;
+  readonly gravity?: number;
+  /** Plummer-equivalent softening length [length]. */
+  readonly softening?: number;
+  /** Kernel; `plummer` if a length is given without a kernel. */
+  readonly softeningKernel?: SofteningKernel;
+  readonly coulombFactor?: number;
+  /** Relative error wanted of U. */
+  readonly error?: number;
+  readonly exact?: boolean;
+  readonly centre?: CentreMethod;
+  /** Mass fractions of Lagrangian radii; 0.1 and 0.5 are always measured. */
+  readonly fractions?: readonly number[];
+  /** What to do with bodies at one point without softening. */
+  readonly coincident?: 'leave-out' | 'refuse';
+  readonly accelerations?: boolean;
+}
+
+export const DEFAULT_ERROR = 1e-5;
+/** Source: Giersz & Heggie 1994, MNRAS 268, 257 (equal masses). */
+export const DEFAULT_COULOMB_FACTOR = 0.11;
+export const DEFAULT_FRACTIONS: readonly number[] = [0.01, 0.05, 0.1, 0.25, 0.5, 0.75, 0.9, 0.99];
+
+/** Disagreement of G and units above which a pair of options is refused. */
+const GRAVITY_CLASH = 1e-4;
+
+/**
+ * Decides every setting.
+ * @throws UsageError if an option is out of its domain, or units and G contradict each other
+ */
+export function settle(options: MeasureOptions, particles: Particles): RecordSettings {
+  const { gravity, units } = settleGravity(options, particles);
+  const fractions = settleFractions(options.fractions);
+  return {
+    gravity,
+    units,
+    softening: settleSoftening(options, particles),
+    coulombFactor: fromOption(
+      positive('--coulomb-factor', options.coulombFactor),
+      DEFAULT_COULOMB_FACTOR,
+    ),
+    error: fromOption(inRange('--error', options.error, 1e-15, 1), DEFAULT_ERROR),
+    centre: fromOption(options.centre, 'density'),
+    fractions,
+    exact: fromOption(options.exact, false),
+  };
+}
+
+function fromOption<T>(value: T | undefined, fallback: T): Setting<T> {
+  return value === undefined ? { value: fallback, from: 'default' } : { value, from: 'option' };
+}
+
+function settleGravity(
+  options: MeasureOptions,
+  particles: Particles,
+): { gravity: Setting<number>; units: Setting<string> } {
+  const stated = positive('--gravity', options.gravity);
+  const named = options.units === undefined ? undefined : unitSystem(options.units);
+  const levels: { units: UnitSystem | null; gravity: number | null; from: SettingOrigin }[] = [
+    { units: named ?? null, gravity: stated ?? null, from: 'option' },
+    { units: particles.units, gravity: particles.gravity, from: 'snapshot' },
+  ];
+  for (const { units, gravity, from } of levels) {
+    if (units && gravity !== null && units.name !== 'natural' && units.name !== 'own') {
+      const clash = Math.abs(gravity / units.gravity - 1);
+      if (clash > GRAVITY_CLASH) {
+        throw new UsageError(
+          'usage.gravityClash',
+          `${from === 'option' ? '' : `${particles.origin.file}: `}units ${units.name} mean G = ${units.gravity}, but G = ${gravity} is stated with them`,
+          'state the one or the other, or a G that agrees with the units',
+        );
+      }
+    }
+  }
+  const unitsLevel = levels.find((level) => level.units !== null);
+  // Units given at a higher level than a number for G speak last: they set G.
+  const gravityLevel = levels.find((level) => level.gravity !== null || level.units !== null);
+  const system = unitsLevel?.units ?? UNIT_SYSTEMS.natural;
+  return {
+    units: { value: system.name, from: unitsLevel?.from ?? 'default' },
+    gravity: {
+      value: gravityLevel?.gravity ?? gravityLevel?.units?.gravity ?? system.gravity,
+      from: gravityLevel?.from ?? 'default',
+    },
+  };
+}
+
+function unitSystem(name: string): UnitSystem {
+  const known = UNIT_SYSTEMS as Readonly<Record<string, UnitSystem>>;
+  if (!Object.hasOwn(known, name)) {
+    throw new UsageError(
+      'usage.units',
+      `--units ${name} is not a known unit system`,
+      `known are ${Object.keys(known).join(', ')}`,
+    );
+  }
+  return known[name];
+}
+
+function settleSoftening(
+  options: MeasureOptions,
+  particles: Particles,
+): RecordSettings['softening'] {
+  const length = options.softening ?? particles.softening ?? 0;
+  if (!(length >= 0) || length === Infinity) {
+    throw new UsageError(
+      'usage.softening',
+      `--softening ${length} is not a length of 0 or more`,
+      'give the Plummer-equivalent length in the unit of length of the snapshot',
+    );
+  }
+  const stated = options.softening !== undefined || options.softeningKernel !== undefined;
+  const from: SettingOrigin = stated
+    ? 'option'
+    : particles.softening !== null
+      ? 'snapshot'
+      : 'default';
+  const kernel = options.softeningKernel ?? (length > 0 ? 'plummer' : 'none');
+  if (kernel !== 'none' && length === 0) {
+    throw new UsageError(
+      'usage.softeningKernel',
+      `--softening-kernel ${kernel} needs a length`,
+      'add --softening LENGTH',
+    );
+  }
+  if (kernel === 'none') return { value: { length: 0, support: 0, kernel }, from };
+  const support = kernel === 'spline' ? SPLINE_SUPPORT * length : null;
+  return { value: { length, support, kernel }, from };
+}
+
+function settleFractions(asked: readonly number[] | undefined): RecordSettings['fractions'] {
+  for (const f of asked ?? []) {
+    if (!(f > 0 && f < 1)) {
+      throw new UsageError(
+        'usage.fractions',
+        `--fractions has ${f}, which is not between 0 and 1`,
+        'give mass fractions such as 0.1,0.5,0.9',
+      );
+    }
+  }
+  const value = [...new Set([...(asked ?? DEFAULT_FRACTIONS), 0.1, 0.5])].sort((a, b) => a - b);
+  return { value, from: asked ? 'option' : 'default' };
+}
+
+function positive(option: string, value: number | undefined): number | undefined {
+  return inRange(option, value, Number.MIN_VALUE, Number.MAX_VALUE);
+}
+
+function inRange(
+  option: string,
+  value: number | undefined,
+  low: number,
+  high: number,
+): number | undefined {
+  if (value === undefined || (value >= low && value <= high)) return value;
+  throw new UsageError(
+    'usage.range',
+    `${option} ${value} is out of range`,
+    low === Number.MIN_VALUE ? 'give a number above 0' : `give a number from ${low} to ${high}`,
+  );
+}

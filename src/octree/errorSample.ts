@@ -1,0 +1,195 @@
+/**
+ * The error of a tree sum, measured in the same run in two steps.
+ *
+ * Some thousand bodies, drawn by mass along the tree's order, are summed again by the classical walk
+ * under a narrow angle; some tens of them also directly. The mean of (engine − narrow walk) plus the
+ * mean of (narrow walk − direct) estimates the mean error of Σ m/r per unit mass, and so the error of
+ * the total; the two sampling variances add.
+ */
+import type { Crew, TaskModule } from '../parallel/crew.ts';
+import { DIRECT_SLICE } from './forces.task.ts';
+import type { FieldColumns } from './forces.task.ts';
+import type { Softening } from './softening.ts';
+import {
+  GEOMETRY,
+  NODE_BEGIN,
+  NODE_CHILD,
+  NODE_CHILDREN,
+  NODE_END,
+  NODE_MASS,
+  TOPOLOGY,
+  type Octree,
+} from './tree.ts';
+import type { SourceTree } from './walk.ts';
+
+const TASK: TaskModule<typeof import('./forces.task.ts')> = {
+  url: new URL('./forces.task.js', import.meta.url),
+  load: () => import('./forces.task.ts'),
+};
+
+/** Up to this many bodies the whole sample is summed directly: that is cheaper than the narrow walk. */
+const DIRECT_UP_TO = 32768;
+const DIRECT_SAMPLE = 384;
+const WALK_SAMPLE = 2048;
+const DIRECT_OF_WALK = 40;
+const SAMPLES_PER_JOB = 32;
+
+/** Error of the mass-weighted mean of one sum, as a mean offset and the 1σ of its estimate. */
+export interface SampledError {
+  readonly offset: number;
+  readonly sigma: number;
+  /** Rms of the error of single bodies' sums. */
+  readonly rms: number;
+}
+
+export interface ErrorSample {
+  readonly phi: SampledError;
+  readonly psi: SampledError;
+  readonly bodies: number;
+  readonly interactions: number;
+}
+
+/**
+ * Measures the error of the engine's sums on a sample.
+ * @param field - the engine's sums, in input order
+ * @param narrowAngle - opening angle of the second walk, well below the engine's
+ */
+export async function sampleError(
+  source: SourceTree,
+  field: FieldColumns,
+  order: number,
+  softening: Softening,
+  narrowAngle: number,
+  crew: Crew,
+): Promise<ErrorSample> {
+  const count = source.tree.bodies.count;
+  const direct = count <= DIRECT_UP_TO;
+  const places = drawPlaces(source.tree, direct ? DIRECT_SAMPLE : WALK_SAMPLE);
+  if (places.length === 0) {
+    const none = { offset: 0, sigma: 0, rms: 0 };
+    return { phi: none, psi: none, bodies: 0, interactions: 0 };
+  }
+  const engine = engineSums(source.tree, field, places);
+  if (direct) {
+    const exact = await directSums(source, softening, places, crew);
+    return {
+      phi: compare(engine, exact, 0),
+      psi: compare(engine, exact, 1),
+      bodies: places.length,
+      interactions: places.length * count,
+    };
+  }
+  const narrow = shared(places.length * 2);
+  const round = { source, order, softening, openingAngle: narrowAngle, places };
+  const counts = await crew.run(
+    TASK,
+    'sampleByWalk',
+    { ...round, perJob: SAMPLES_PER_JOB, sums: narrow },
+    Math.ceil(places.length / SAMPLES_PER_JOB),
+  );
+  const step = places.length / DIRECT_OF_WALK;
+  const chosen = Uint32Array.from({ length: DIRECT_OF_WALK }, (_, k) =>
+    Math.floor((k + 0.5) * step),
+  );
+  const exact = await directSums(
+    source,
+    softening,
+    chosen.map((k) => places[k]),
+    crew,
+  );
+  const narrowChosen = new Float64Array(chosen.length * 2);
+  chosen.forEach((k, at) => narrowChosen.set(narrow.subarray(2 * k, 2 * k + 2), 2 * at));
+  return {
+    phi: together(compare(engine, narrow, 0), compare(narrowChosen, exact, 0)),
+    psi: together(compare(engine, narrow, 1), compare(narrowChosen, exact, 1)),
+    bodies: places.length,
+    interactions: counts.reduce((sum, n) => sum + n, 0) + chosen.length * count,
+  };
+}
+
+/** Places in tree order, one in each equal share of the mass, at a hashed position inside it. */
+function drawPlaces(tree: Octree, wanted: number): Uint32Array {
+  const { geometry: G, topology: T, bodies } = tree;
+  const total = G[NODE_MASS];
+  if (!(total > 0)) return new Uint32Array(0);
+  const size = Math.min(wanted, bodies.count);
+  const places = new Set<number>();
+  for (let k = 0; k < size; k++) {
+    const hash = (Math.imul(k + 1, 0x9e3779b1) >>> 0) / 2 ** 32;
+    let mass = ((k + hash) / size) * total;
+    let slot = 0;
+    while (T[slot * TOPOLOGY + NODE_CHILDREN] > 0) {
+      const first = T[slot * TOPOLOGY + NODE_CHILD];
+      const last = first + T[slot * TOPOLOGY + NODE_CHILDREN] - 1;
+      let child = first;
+      while (child < last && mass >= G[child * GEOMETRY + NODE_MASS]) {
+        mass -= G[child * GEOMETRY + NODE_MASS];
+        child++;
+      }
+      slot = child;
+    }
+    let place = T[slot * TOPOLOGY + NODE_BEGIN];
+    const end = T[slot * TOPOLOGY + NODE_END] - 1;
+    while (place < end && mass >= bodies.mass[place]) mass -= bodies.mass[place++];
+    if (bodies.mass[place] > 0) places.add(place);
+  }
+  return Uint32Array.from(places);
+}
+
+function engineSums(tree: Octree, field: FieldColumns, places: Uint32Array): Float64Array {
+  const sums = new Float64Array(places.length * 2);
+  places.forEach((place, k) => {
+    const i = tree.bodies.input[place];
+    sums[2 * k] = field.phi[i];
+    sums[2 * k + 1] = field.psi.length > 0 ? field.psi[i] : 0;
+  });
+  return sums;
+}
+
+async function directSums(
+  source: SourceTree,
+  softening: Softening,
+  places: Uint32Array,
+  crew: Crew,
+): Promise<Float64Array> {
+  const slices = Math.ceil(source.tree.bodies.count / DIRECT_SLICE);
+  const partial = shared(places.length * slices * 2);
+  await crew.run(
+    TASK,
+    'sampleDirectly',
+    { source, softening, places, sums: partial },
+    places.length * slices,
+  );
+  const sums = new Float64Array(places.length * 2);
+  for (let k = 0; k < partial.length; k++) {
+    sums[2 * Math.floor(k / (2 * slices)) + (k % 2)] += partial[k];
+  }
+  return sums;
+}
+
+/** Mean and scatter of a − b in the given one of the two sums a body. */
+function compare(a: Float64Array, b: Float64Array, which: 0 | 1): SampledError {
+  const n = a.length / 2;
+  let sum = 0;
+  let squares = 0;
+  for (let k = which; k < a.length; k += 2) {
+    const d = a[k] - b[k];
+    sum += d;
+    squares += d * d;
+  }
+  const offset = sum / n;
+  const variance = Math.max(0, squares / n - offset * offset) * (n / Math.max(1, n - 1));
+  return { offset, sigma: Math.sqrt(variance / n), rms: Math.sqrt(squares / n) };
+}
+
+function together(first: SampledError, second: SampledError): SampledError {
+  return {
+    offset: first.offset + second.offset,
+    sigma: Math.hypot(first.sigma, second.sigma),
+    rms: first.rms,
+  };
+}
+
+function shared(count: number): Float64Array {
+  return new Float64Array(new SharedArrayBuffer(count * 8));
+}

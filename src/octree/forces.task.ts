@@ -1,0 +1,219 @@
+/** Work of the crew while forces are summed: each function does numbered jobs on shared arrays. */
+import type { TakeJob } from '../parallel/crew.ts';
+import { sumAtPoint } from './classical.ts';
+import { expansionOf } from './expansion.ts';
+import { estimateDepths, gatherBranch } from './multipoles.ts';
+import { pairKernelsOf, pairSofteningOf } from './pairs.ts';
+import { supportOf, type Softening } from './softening.ts';
+import { NODE_BEGIN, NODE_END, TOPOLOGY, type Octree } from './tree.ts';
+import {
+  descendBranch,
+  walkBranch,
+  WalkScratch,
+  type Acceptance,
+  type SourceTree,
+  type WalkCounts,
+} from './walk.ts';
+
+export interface GatherRound {
+  readonly tree: Octree;
+  readonly order: number;
+  readonly softening: Softening;
+  readonly multipoles: Float64Array;
+  /** Also estimate depths, which needs no multipoles; done once a tree. */
+}
+
+export function gatherBranches(round: GatherRound, takeJob: TakeJob): void {
+  const expansion = expansionOf(round.order, round.softening.kernel === 'plummer');
+  for (let job = takeJob(); job >= 0; job = takeJob()) {
+    gatherBranch(round.tree, job, expansion, round.multipoles);
+  }
+}
+
+export interface DepthRound {
+  readonly tree: Octree;
+  readonly soft2: number;
+}
+
+export function estimateBranches(round: DepthRound, takeJob: TakeJob): void {
+  for (let job = takeJob(); job >= 0; job = takeJob()) {
+    estimateDepths(round.tree, job, round.soft2);
+  }
+}
+
+/** Results in input order; shared memory. Sums are positive and without G, see pairs.ts. */
+export interface FieldColumns {
+  readonly phi: Float64Array;
+  /** Empty if the softening has no Clausius part. */
+  readonly psi: Float64Array;
+  /** Empty unless accelerations are wanted. */
+  readonly ax: Float64Array;
+  readonly ay: Float64Array;
+  readonly az: Float64Array;
+}
+
+export interface WalkRound {
+  readonly target: Octree;
+  readonly source: SourceTree;
+  readonly same: boolean;
+  readonly order: number;
+  readonly softening: Softening;
+  readonly acceptance: Acceptance;
+  readonly field: FieldColumns;
+}
+
+const scratch = new WalkScratch();
+
+/** Walks branches and writes the field at their bodies; returns what was counted. */
+export function walkBranches(round: WalkRound, takeJob: TakeJob): WalkCounts {
+  const { target, source, softening, field } = round;
+  const soft = softening.kernel !== 'none';
+  const force = field.ax.length > 0;
+  const expansion = expansionOf(round.order, softening.kernel === 'plummer');
+  const tools = {
+    expansion,
+    pairs: pairKernelsOf(softening.kernel, force),
+    pairSoftening: pairSofteningOf(softening.kernel, softening.length),
+    acceptance: round.acceptance,
+  };
+  const counts: WalkCounts = { cellInteractions: 0, pairInteractions: 0, coincidentPairs: 0 };
+  for (let job = takeJob(); job >= 0; job = takeJob()) {
+    const root = target.branchRoots[job] * TOPOLOGY;
+    const begin = target.topology[root + NODE_BEGIN];
+    const size = target.topology[root + NODE_END] - begin;
+    const nodes = target.branchSlots[2 * job + 1] - target.branchSlots[2 * job] + 1;
+    scratch.prepare(size, nodes * expansion.locals, soft, force);
+    walkBranch(target, job, source, round.same, tools, scratch, counts);
+    descendBranch(target, job, expansion, soft && softening.kernel === 'plummer', force, scratch);
+    const input = target.bodies.input;
+    for (let k = 0; k < size; k++) {
+      const i = input[begin + k];
+      field.phi[i] = scratch.phi[k];
+      if (soft) field.psi[i] = scratch.psi[k];
+      if (force) {
+        field.ax[i] = scratch.ax[k];
+        field.ay[i] = scratch.ay[k];
+        field.az[i] = scratch.az[k];
+      }
+    }
+  }
+  return counts;
+}
+
+export interface SampleRound {
+  readonly source: SourceTree;
+  readonly order: number;
+  readonly softening: Softening;
+  readonly openingAngle: number;
+  /** Places in tree order of the sampled bodies. */
+  readonly places: Uint32Array;
+  /** Sampled bodies a job. */
+  readonly perJob: number;
+  /** Two numbers a sampled body: its sums phi and psi. */
+  readonly sums: Float64Array;
+}
+
+/** The classical walk at sampled bodies; returns interactions. */
+export function sampleByWalk(round: SampleRound, takeJob: TakeJob): number {
+  const { source, softening, places, perJob, sums } = round;
+  const tools = {
+    expansion: expansionOf(round.order, softening.kernel === 'plummer'),
+    pairs: pairKernelsOf(softening.kernel, false),
+    pairSoftening: pairSofteningOf(softening.kernel, softening.length),
+    openingAngle: round.openingAngle,
+    soft2: softening.kernel === 'plummer' ? softening.length ** 2 : 0,
+    support: softening.kernel === 'spline' ? supportOf(softening) : 0,
+  };
+  const { x, y, z } = source.tree.bodies;
+  let interactions = 0;
+  const out = new Float64Array(5);
+  for (let job = takeJob(); job >= 0; job = takeJob()) {
+    for (let k = job * perJob; k < Math.min(places.length, (job + 1) * perJob); k++) {
+      const place = places[k];
+      out.fill(0);
+      interactions += sumAtPoint(source, x[place], y[place], z[place], place, tools, out);
+      sums[2 * k] = out[0];
+      sums[2 * k + 1] = out[1];
+    }
+  }
+  return interactions;
+}
+
+/** Bodies that a job of a direct sum at a sampled body runs over, to keep jobs short. */
+export const DIRECT_SLICE = 262144;
+
+/** Direct sums at sampled bodies, sliced over the sources; `sums` has two numbers a slice and body. */
+export function sampleDirectly(
+  round: Omit<SampleRound, 'order' | 'openingAngle' | 'perJob'>,
+  takeJob: TakeJob,
+): void {
+  const { source, softening, places, sums } = round;
+  const { x, y, z, mass, count } = source.tree.bodies;
+  const pairs = pairKernelsOf(softening.kernel, false);
+  const soft = pairSofteningOf(softening.kernel, softening.length);
+  const slices = Math.ceil(count / DIRECT_SLICE);
+  const out = new Float64Array(5);
+  for (let job = takeJob(); job >= 0; job = takeJob()) {
+    const place = places[Math.floor(job / slices)];
+    const begin = (job % slices) * DIRECT_SLICE;
+    const end = Math.min(count, begin + DIRECT_SLICE);
+    out.fill(0);
+    const split = Math.min(end, Math.max(begin, place));
+    const after = place >= begin && place < end ? place + 1 : split;
+    pairs.atPoint(x[place], y[place], z[place], x, y, z, mass, begin, split, out, soft);
+    pairs.atPoint(x[place], y[place], z[place], x, y, z, mass, after, end, out, soft);
+    sums[2 * job] = out[0];
+    sums[2 * job + 1] = out[1];
+  }
+}
+
+export interface DirectRound {
+  readonly x: Float64Array;
+  readonly y: Float64Array;
+  readonly z: Float64Array;
+  readonly mass: Float64Array;
+  readonly softening: Softening;
+  readonly field: FieldColumns;
+}
+
+/** Targets a job of the full direct sum handles. */
+export const DIRECT_TARGETS = 64;
+
+/** Direct sums on all bodies from all others, one way, in input order. Returns coincident pairs (each counted once a side). */
+export function sumDirectly(round: DirectRound, takeJob: TakeJob): number {
+  const { x, y, z, mass, softening, field } = round;
+  const force = field.ax.length > 0;
+  const soft = softening.kernel !== 'none';
+  const pairs = pairKernelsOf(softening.kernel, force);
+  const pairSoftening = pairSofteningOf(softening.kernel, softening.length);
+  const count = mass.length;
+  const out = new Float64Array(5);
+  let coincident = 0;
+  for (let job = takeJob(); job >= 0; job = takeJob()) {
+    for (let i = job * DIRECT_TARGETS; i < Math.min(count, (job + 1) * DIRECT_TARGETS); i++) {
+      out.fill(0);
+      coincident += pairs.atPoint(x[i], y[i], z[i], x, y, z, mass, 0, i, out, pairSoftening);
+      coincident += pairs.atPoint(
+        x[i],
+        y[i],
+        z[i],
+        x,
+        y,
+        z,
+        mass,
+        i + 1,
+        count,
+        out,
+        pairSoftening,
+      );
+      field.phi[i] = out[0];
+      if (soft) field.psi[i] = out[1];
+      if (force) {
+        field.ax[i] = out[2];
+        field.ay[i] = out[3];
+        field.az[i] = out[4];
+      }
+    }
+  }
+  return coincident;
+}

@@ -1,0 +1,344 @@
+/**
+ * Particles → Forces: potential, Clausius share and, if asked, acceleration of every body, with
+ * measured errors, by direct sums where those are cheaper and by the cell–cell walk elsewhere.
+ */
+import { crewOfOne, type Crew, type TaskModule } from '../parallel/crew.ts';
+import { buildOctree, type BodyColumns } from './build.ts';
+import { CompensatedSum } from '../numerics/compensated.ts';
+import { sampleError, type ErrorSample, type SampledError } from './errorSample.ts';
+import { expansionOf } from './expansion.ts';
+import { DIRECT_TARGETS, type FieldColumns } from './forces.task.ts';
+import { gatherSlot, leastOfChildren } from './multipoles.ts';
+import { firstLevel, LEVELS, nextLevel, treeCost, type Level } from './levels.ts';
+import { supportOf, type Softening } from './softening.ts';
+import { NODE_CHILDREN, TOPOLOGY, type Octree } from './tree.ts';
+import type { Acceptance, SourceTree, WalkCounts } from './walk.ts';
+
+const TASK: TaskModule<typeof import('./forces.task.ts')> = {
+  url: new URL('./forces.task.js', import.meta.url),
+  load: () => import('./forces.task.ts'),
+};
+
+/** Up to this many bodies sums are always direct. */
+export const DIRECT_COUNT = 4096;
+/** The promise `--error E` is kept if this many σ of the measured error stay below E |U|. */
+export const PROMISED_SIGMAS = 2.6;
+
+export interface ForceOptions {
+  /** G [length · velocity² / mass]. */
+  readonly gravity: number;
+  readonly softening: Softening;
+  /** Relative error wanted of U; {@link PROMISED_SIGMAS} σ of the measured error stay below it. */
+  readonly errorWanted: number;
+  /** Direct sums for any number of bodies. */
+  readonly exact?: boolean;
+  readonly accelerations?: boolean;
+  /** Fixed level of the walk instead of one chosen by the error wanted: for benchmarks and tests. */
+  readonly level?: Level;
+}
+
+export interface ForceCosts {
+  readonly cellInteractions: number;
+  /** Pairs of bodies summed, each direction counted. */
+  readonly pairInteractions: number;
+  readonly sampleInteractions: number;
+  /** Wall-clock seconds. */
+  readonly seconds: { readonly tree: number; readonly forces: number; readonly error: number };
+}
+
+export interface Forces {
+  readonly origin: 'tree' | 'direct' | 'file';
+  readonly gravity: number;
+  readonly softening: Softening;
+  /** φ_i without the self term, in input order [velocity²]. */
+  readonly potential: Float64Array;
+  /** w_i with W = ½ Σ m_i w_i, in input order [velocity²]; the same array as `potential` if unsoftened. */
+  readonly clausiusShare: Float64Array;
+  readonly acceleration: {
+    readonly x: Float64Array;
+    readonly y: Float64Array;
+    readonly z: Float64Array;
+  } | null;
+  /** U = ½ Σ m φ and W = ½ Σ m w [mass · velocity²]. */
+  readonly potentialEnergy: number;
+  readonly clausius: number;
+  /** 1σ absolute errors of U and W, measured in this run [mass · velocity²]. */
+  readonly potentialError: number;
+  readonly clausiusError: number;
+  /** Rms error of single φ_i over the mean |φ|; 0 for direct sums. */
+  readonly potentialRms: number;
+  readonly level: Level | null;
+  /** Pairs of bodies at one point, left out of unsoftened sums. */
+  readonly coincidentPairs: number;
+  readonly costs: ForceCosts;
+  /** The tree, for neighbours and further sums; null where sums were direct and no tree was needed. */
+  readonly tree: SourceTree | null;
+}
+
+/**
+ * Sums the forces of all bodies on all bodies.
+ * @param columns - positions and masses in input order, finite, masses ≥ 0
+ * @returns forces in input order
+ */
+export async function sumForces(
+  columns: BodyColumns,
+  options: ForceOptions,
+  crew: Crew = crewOfOne(),
+): Promise<Forces> {
+  const count = columns.mass.length;
+  const first = options.level ?? firstLevel(options.errorWanted, count);
+  const direct =
+    options.exact === true ||
+    (options.level === undefined &&
+      (count <= DIRECT_COUNT || treeCost(first, count) >= directCost(count)));
+  return direct ? sumAllDirectly(columns, options, crew) : sumByTree(columns, options, first, crew);
+}
+
+/** Nanoseconds of one thread that direct sums take, roughly; only ratios to {@link treeCost} matter. */
+const directCost = (count: number): number => 2.8 * count * count;
+
+async function sumAllDirectly(
+  columns: BodyColumns,
+  options: ForceOptions,
+  crew: Crew,
+): Promise<Forces> {
+  const start = performance.now();
+  const count = columns.mass.length;
+  const field = allocateField(count, options);
+  const round = {
+    x: asDoubles(columns.x),
+    y: asDoubles(columns.y),
+    z: asDoubles(columns.z),
+    mass: asDoubles(columns.mass),
+    softening: options.softening,
+    field,
+  };
+  const small = count < 1500 ? crewOfOne() : crew;
+  const left = await small.run(TASK, 'sumDirectly', round, Math.ceil(count / DIRECT_TARGETS));
+  const seconds = { tree: 0, forces: (performance.now() - start) / 1000, error: 0 };
+  const costs = {
+    cellInteractions: 0,
+    pairInteractions: count * (count - 1),
+    sampleInteractions: 0,
+    seconds,
+  };
+  return finish(columns, options, field, {
+    origin: 'direct',
+    error: null,
+    level: null,
+    coincidentPairs: left.reduce((sum, n) => sum + n, 0) / 2,
+    costs,
+    tree: null,
+  });
+}
+
+async function sumByTree(
+  columns: BodyColumns,
+  options: ForceOptions,
+  first: Level,
+  crew: Crew,
+): Promise<Forces> {
+  const { softening } = options;
+  const start = performance.now();
+  const tree = await buildOctree(columns, crew);
+  const soft2 = softening.kernel === 'plummer' ? softening.length ** 2 : 0;
+  await crew.run(TASK, 'estimateBranches', { tree, soft2 }, tree.branchRoots.length);
+  for (let slot = tree.topCount - 1; slot >= 0; slot--) leastOfChildren(tree, slot);
+  const built = performance.now();
+  const field = allocateField(columns.mass.length, options);
+  const counts: WalkCounts = { cellInteractions: 0, pairInteractions: 0, coincidentPairs: 0 };
+  let sampled = 0;
+  let errorSeconds = 0;
+  for (let level = first; ;) {
+    const source = await gatherMultipoles(tree, level.order, softening, crew);
+    const done = await walkAll(source, level, softening, field, crew);
+    counts.cellInteractions += done.cellInteractions;
+    counts.pairInteractions += done.pairInteractions;
+    counts.coincidentPairs = done.coincidentPairs;
+    const walked = performance.now();
+    const error = await sampleError(source, field, level.order, softening, level.narrowAngle, crew);
+    errorSeconds += (performance.now() - walked) / 1000;
+    sampled += error.interactions;
+    const total = performance.now();
+    const result = finish(columns, options, field, {
+      origin: 'tree',
+      error,
+      level,
+      coincidentPairs: counts.coincidentPairs,
+      costs: {
+        cellInteractions: counts.cellInteractions,
+        pairInteractions: counts.pairInteractions,
+        sampleInteractions: sampled,
+        seconds: {
+          tree: (built - start) / 1000,
+          forces: (total - built) / 1000 - errorSeconds,
+          error: errorSeconds,
+        },
+      },
+      tree: source,
+    });
+    const kept =
+      PROMISED_SIGMAS * result.potentialError <=
+      options.errorWanted * Math.abs(result.potentialEnergy);
+    if (kept || options.level) return result;
+    const missed =
+      (PROMISED_SIGMAS * result.potentialError) /
+      (options.errorWanted * Math.abs(result.potentialEnergy));
+    const next = nextLevel(level, missed);
+    if (
+      treeCost(next ?? LEVELS[LEVELS.length - 1], tree.bodies.count) >=
+      directCost(tree.bodies.count)
+    ) {
+      return sumAllDirectly(columns, options, crew);
+    }
+    if (!next) return result;
+    level = next;
+  }
+}
+
+/** Multipoles of the given order for all nodes. */
+export async function gatherMultipoles(
+  tree: Octree,
+  order: number,
+  softening: Softening,
+  crew: Crew,
+): Promise<SourceTree> {
+  const expansion = expansionOf(order, softening.kernel === 'plummer');
+  const multipoles = new Float64Array(
+    new SharedArrayBuffer(tree.nodeCount * expansion.multipoles * 8),
+  );
+  const round = { tree, order, softening, multipoles };
+  await crew.run(TASK, 'gatherBranches', round, tree.branchRoots.length);
+  const isBranch = new Set(tree.branchRoots);
+  for (let slot = tree.topCount - 1; slot >= 0; slot--) {
+    const inner = tree.topology[slot * TOPOLOGY + NODE_CHILDREN] > 0 && !isBranch.has(slot);
+    if (inner) gatherSlot(tree, slot, expansion, multipoles);
+  }
+  return { tree, multipoles };
+}
+
+async function walkAll(
+  source: SourceTree,
+  level: Level,
+  softening: Softening,
+  field: FieldColumns,
+  crew: Crew,
+): Promise<WalkCounts> {
+  const round = {
+    target: source.tree,
+    source,
+    same: true,
+    order: level.order,
+    softening,
+    acceptance: acceptanceOf(level, softening),
+    field,
+  };
+  const counts = await crew.run(TASK, 'walkBranches', round, source.tree.branchRoots.length);
+  return counts.reduce((sum, c) => ({
+    cellInteractions: sum.cellInteractions + c.cellInteractions,
+    pairInteractions: sum.pairInteractions + c.pairInteractions,
+    coincidentPairs: sum.coincidentPairs + c.coincidentPairs,
+  }));
+}
+
+export function acceptanceOf(level: Level, softening: Softening): Acceptance {
+  return {
+    openingAngle: level.openingAngle,
+    tolerance: level.tolerance,
+    order: level.order,
+    soft2: softening.kernel === 'plummer' ? softening.length ** 2 : 0,
+    support: softening.kernel === 'spline' ? supportOf(softening) : 0,
+  };
+}
+
+function allocateField(count: number, options: ForceOptions): FieldColumns {
+  const column = (wanted: boolean) =>
+    new Float64Array(new SharedArrayBuffer(wanted ? count * 8 : 0));
+  const force = options.accelerations === true;
+  return {
+    phi: column(true),
+    psi: column(options.softening.kernel !== 'none'),
+    ax: column(force),
+    ay: column(force),
+    az: column(force),
+  };
+}
+
+interface Outcome {
+  readonly origin: 'tree' | 'direct';
+  readonly error: ErrorSample | null;
+  readonly level: Level | null;
+  readonly coincidentPairs: number;
+  readonly costs: ForceCosts;
+  readonly tree: SourceTree | null;
+}
+
+/** Sums → Forces: applies G and sign in place, adds up totals, turns the sample into errors. */
+function finish(
+  columns: BodyColumns,
+  options: ForceOptions,
+  field: FieldColumns,
+  what: Outcome,
+): Forces {
+  const { gravity, softening } = options;
+  const { mass } = columns;
+  const count = mass.length;
+  const { phi, psi, ax, ay, az } = field;
+  const soft = psi.length > 0;
+  const potentialSum = new CompensatedSum();
+  const clausiusSum = new CompensatedSum();
+  const totalMass = new CompensatedSum();
+  for (let i = 0; i < count; i++) {
+    const potential = -gravity * phi[i];
+    phi[i] = potential;
+    potentialSum.add(mass[i] * potential);
+    totalMass.add(mass[i]);
+    if (soft) {
+      psi[i] = potential + gravity * psi[i];
+      clausiusSum.add(mass[i] * psi[i]);
+    }
+  }
+  for (let i = 0; i < ax.length; i++) {
+    ax[i] *= gravity;
+    ay[i] *= gravity;
+    az[i] *= gravity;
+  }
+  const potentialEnergy = potentialSum.value() / 2;
+  const clausius = soft ? clausiusSum.value() / 2 : potentialEnergy;
+  const scale = (gravity * totalMass.value()) / 2;
+  // Direct sums err by rounding alone, which grows as the root of the number of terms.
+  const rounding = 2 ** -53 * Math.sqrt(count);
+  const phiError = what.error ? scale * errorOf(what.error.phi) : 0;
+  const psiError = what.error && soft ? scale * errorOf(what.error.psi) : 0;
+  const potentialError = Math.hypot(phiError, rounding * potentialEnergy);
+  return {
+    origin: what.origin,
+    gravity,
+    softening,
+    potential: phi,
+    clausiusShare: soft ? psi : phi,
+    acceleration: ax.length > 0 ? { x: ax, y: ay, z: az } : null,
+    potentialEnergy,
+    clausius,
+    potentialError,
+    clausiusError: soft ? Math.hypot(potentialError, psiError) : potentialError,
+    potentialRms:
+      what.error && potentialEnergy < 0
+        ? (what.error.phi.rms * scale) / Math.abs(potentialEnergy)
+        : 0,
+    level: what.level,
+    coincidentPairs: what.coincidentPairs,
+    costs: what.costs,
+    tree: what.tree,
+  };
+}
+
+/** 1σ of a mean whose offset is measured but not corrected for. */
+const errorOf = ({ offset, sigma }: SampledError): number => Math.hypot(offset, sigma);
+
+function asDoubles(column: Float64Array | Float32Array): Float64Array {
+  if (column instanceof Float64Array && column.buffer instanceof SharedArrayBuffer) return column;
+  const copy = new Float64Array(new SharedArrayBuffer(column.length * 8));
+  copy.set(column);
+  return copy;
+}

@@ -1,0 +1,453 @@
+/**
+ * The cell–cell walk (Barnes & Hut 1986; cell against cell after Dehnen 2000, ApJ 536, L39).
+ *
+ * One branch of the target tree is walked against the whole source tree: in both directions at once
+ * where both cells lie in the branch, one way from everything outside. So a branch writes only to
+ * its own sums, in an order that the data alone decide.
+ */
+import type { Expansion } from './expansion.ts';
+import type { PairKernels, PairSums } from './pairs.ts';
+import {
+  GEOMETRY,
+  NODE_BEGIN,
+  NODE_CHILD,
+  NODE_CHILDREN,
+  NODE_DEPTH,
+  NODE_END,
+  NODE_MASS,
+  NODE_RADIUS,
+  TOPOLOGY,
+  type Octree,
+} from './tree.ts';
+
+/** When a cell–cell interaction is accepted; the one place that knows is {@link makeAcceptance}. */
+export interface Acceptance {
+  /** Opening angle: radii must sum to less than this times the distance. */
+  readonly openingAngle: number;
+  /** Wanted bound of one interaction's error relative to the target's potential. */
+  readonly tolerance: number;
+  /** Order of the expansion. */
+  readonly order: number;
+  /** ε² of Plummer softening, which makes the field smoother and so widens acceptance; else 0. */
+  readonly soft2: number;
+  /** Distance inside which the pair force is not Newtonian and cells must open (spline support); else 0. */
+  readonly support: number;
+}
+
+/** Sizes below which pairs are summed directly: without asking, and when cells were refused. */
+const DIRECT_AT_ONCE = 24;
+const DIRECT_IF_REFUSED = 96;
+/** A cell of at most this many bodies is summed directly with itself. */
+const DIRECT_INSIDE = 12;
+
+/** What one worker needs to walk branches; buffers grow with the largest branch and are reused. */
+export class WalkScratch implements PairSums {
+  phi: Float64Array = new Float64Array(0);
+  psi: Float64Array = new Float64Array(0);
+  ax: Float64Array = new Float64Array(0);
+  ay: Float64Array = new Float64Array(0);
+  az: Float64Array = new Float64Array(0);
+  locals: Float64Array = new Float64Array(0);
+  stack: Int32Array = new Int32Array(4096);
+
+  /** Clears room for a branch. */
+  prepare(bodies: number, locals: number, softened: boolean, force: boolean): void {
+    this.phi = cleared(this.phi, bodies);
+    this.psi = cleared(this.psi, softened ? bodies : 0);
+    this.ax = cleared(this.ax, force ? bodies : 0);
+    this.ay = cleared(this.ay, force ? bodies : 0);
+    this.az = cleared(this.az, force ? bodies : 0);
+    this.locals = cleared(this.locals, locals);
+  }
+}
+
+function cleared(array: Float64Array, count: number): Float64Array {
+  if (array.length < count) return new Float64Array(Math.ceil(count * 1.25));
+  array.fill(0, 0, count);
+  return array;
+}
+
+/** What was done, counted: deterministic figures of cost. */
+export interface WalkCounts {
+  cellInteractions: number;
+  pairInteractions: number;
+  /** Pairs at distance 0, left out of an unsoftened sum. */
+  coincidentPairs: number;
+}
+
+/** The source side of a walk: a tree with multipoles of its nodes. */
+export interface SourceTree {
+  readonly tree: Octree;
+  readonly multipoles: Float64Array;
+}
+
+export interface WalkTools {
+  readonly expansion: Expansion;
+  readonly pairs: PairKernels;
+  /** As the pair kernels take it. */
+  readonly pairSoftening: number;
+  readonly acceptance: Acceptance;
+}
+
+/**
+ * Sums the field of `source` on the bodies of one branch of `target` into `scratch`: pair sums at the
+ * bodies, and local coefficients of the branch's nodes (its root at 0, then its slots in order).
+ * @param same - source and target are one tree, so the branch also meets itself
+ */
+export function walkBranch(
+  target: Octree,
+  branch: number,
+  source: SourceTree,
+  same: boolean,
+  tools: WalkTools,
+  scratch: WalkScratch,
+  counts: WalkCounts,
+): void {
+  const rootSlot = target.branchRoots[branch];
+  const firstSlot = target.branchSlots[2 * branch];
+  const base = target.topology[rootSlot * TOPOLOGY + NODE_BEGIN];
+  const outer = new Walk(target, firstSlot, base, source, tools, scratch, counts);
+  if (!same) {
+    outer.oneWay(rootSlot, 0);
+    return;
+  }
+  const { topology } = target;
+  let slot = 0;
+  while (slot !== rootSlot) {
+    const t = slot * TOPOLOGY;
+    const first = topology[t + NODE_CHILD];
+    let onPath = first;
+    for (let child = first; child < first + topology[t + NODE_CHILDREN]; child++) {
+      const holds =
+        topology[child * TOPOLOGY + NODE_BEGIN] <= base &&
+        base < topology[child * TOPOLOGY + NODE_END];
+      if (holds) onPath = child;
+      else outer.oneWay(rootSlot, child);
+    }
+    slot = onPath;
+  }
+  outer.inside(rootSlot);
+}
+
+/** One branch's walk: the tree's arrays in locals, and the loops over a stack of pairs of cells. */
+class Walk {
+  private readonly target: Octree;
+  private readonly firstSlot: number;
+  private readonly base: number;
+  private readonly source: SourceTree;
+  private readonly tools: WalkTools;
+  private readonly scratch: WalkScratch;
+  private readonly counts: WalkCounts;
+
+  constructor(
+    target: Octree,
+    firstSlot: number,
+    base: number,
+    source: SourceTree,
+    tools: WalkTools,
+    scratch: WalkScratch,
+    counts: WalkCounts,
+  ) {
+    this.target = target;
+    this.firstSlot = firstSlot;
+    this.base = base;
+    this.source = source;
+    this.tools = tools;
+    this.scratch = scratch;
+    this.counts = counts;
+  }
+
+  /** The field of source cell `s0` on target cell `t0`, one way. */
+  oneWay(t0: number, s0: number): void {
+    const { target, base, firstSlot, scratch } = this;
+    const { tree, multipoles } = this.source;
+    const { expansion, pairs, pairSoftening, acceptance } = this.tools;
+    const { interact, multipoles: momentStride, locals: localStride } = expansion;
+    const onto = pairs.onto;
+    const locals = scratch.locals;
+    const tG = target.geometry;
+    const tT = target.topology;
+    const sG = tree.geometry;
+    const sT = tree.topology;
+    const tb = target.bodies;
+    const sb = tree.bodies;
+    const { soft2, support } = acceptance;
+    const angle2 = acceptance.openingAngle ** 2;
+    const tolerance2 = acceptance.tolerance ** 2;
+    const power = acceptance.order + 1;
+    let stack = scratch.stack;
+    let cells = 0;
+    let pairCount = 0;
+    let depth = 2;
+    stack[0] = t0;
+    stack[1] = s0;
+    while (depth > 0) {
+      const s = stack[--depth];
+      const t = stack[--depth];
+      const gt = t * GEOMETRY;
+      const gs = s * GEOMETRY;
+      const pt = t * TOPOLOGY;
+      const ps = s * TOPOLOGY;
+      const n =
+        (tT[pt + NODE_END] - tT[pt + NODE_BEGIN]) * (sT[ps + NODE_END] - sT[ps + NODE_BEGIN]);
+      const rt = tG[gt + NODE_RADIUS];
+      const rs = sG[gs + NODE_RADIUS];
+      if (n > DIRECT_AT_ONCE) {
+        const dx = tG[gt] - sG[gs];
+        const dy = tG[gt + 1] - sG[gs + 1];
+        const dz = tG[gt + 2] - sG[gs + 2];
+        const d2 = dx * dx + dy * dy + dz * dz;
+        const u = d2 + soft2;
+        const reach = rt + rs;
+        const reach2 = reach * reach;
+        if (reach2 < angle2 * u && (support === 0 || d2 > (reach + support) * (reach + support))) {
+          const ratio2 = reach2 / u;
+          let fall = ratio2;
+          for (let k = 1; k < power; k++) fall *= ratio2;
+          const m = sG[gs + NODE_MASS];
+          const least = tG[gt + NODE_DEPTH];
+          if (m * m * fall < tolerance2 * least * least * u) {
+            const lt = (t === t0 ? 0 : t - firstSlot + 1) * localStride;
+            interact(tG, gt, locals, lt, sG, gs, multipoles, s * momentStride, soft2);
+            cells++;
+            continue;
+          }
+        }
+      }
+      const tLeaf = tT[pt + NODE_CHILDREN] === 0;
+      const sLeaf = sT[ps + NODE_CHILDREN] === 0;
+      if (n <= DIRECT_IF_REFUSED || (tLeaf && sLeaf)) {
+        onto(
+          tb.x,
+          tb.y,
+          tb.z,
+          tT[pt + NODE_BEGIN],
+          tT[pt + NODE_END],
+          sb.x,
+          sb.y,
+          sb.z,
+          sb.mass,
+          sT[ps + NODE_BEGIN],
+          sT[ps + NODE_END],
+          base,
+          scratch,
+          pairSoftening,
+        );
+        pairCount += n;
+        continue;
+      }
+      if (depth + 32 > stack.length) stack = scratch.stack = longer(stack);
+      if (!sLeaf && (tLeaf || rs >= rt)) {
+        const first = sT[ps + NODE_CHILD];
+        for (let child = first + sT[ps + NODE_CHILDREN] - 1; child >= first; child--) {
+          stack[depth++] = t;
+          stack[depth++] = child;
+        }
+      } else {
+        const first = tT[pt + NODE_CHILD];
+        for (let child = first + tT[pt + NODE_CHILDREN] - 1; child >= first; child--) {
+          stack[depth++] = child;
+          stack[depth++] = s;
+        }
+      }
+    }
+    this.counts.cellInteractions += cells;
+    this.counts.pairInteractions += pairCount;
+  }
+
+  /** All pairs of bodies inside the branch rooted at `root`, both ways at once. */
+  inside(root: number): void {
+    const { base, firstSlot, scratch } = this;
+    const { tree, multipoles } = this.source;
+    const { expansion, pairs, pairSoftening, acceptance } = this.tools;
+    const { interactBoth, multipoles: momentStride, locals: localStride } = expansion;
+    const { inside, between } = pairs;
+    const locals = scratch.locals;
+    const G = tree.geometry;
+    const T = tree.topology;
+    const { x, y, z, mass } = tree.bodies;
+    const { soft2, support } = acceptance;
+    const angle2 = acceptance.openingAngle ** 2;
+    const tolerance2 = acceptance.tolerance ** 2;
+    const power = acceptance.order + 1;
+    let stack = scratch.stack;
+    let cells = 0;
+    let pairCount = 0;
+    let coincident = 0;
+    let depth = 2;
+    stack[0] = root;
+    stack[1] = root;
+    while (depth > 0) {
+      const b = stack[--depth];
+      const a = stack[--depth];
+      const pa = a * TOPOLOGY;
+      const sizeA = T[pa + NODE_END] - T[pa + NODE_BEGIN];
+      if (depth + 80 > stack.length) stack = scratch.stack = longer(stack);
+      if (a === b) {
+        if (T[pa + NODE_CHILDREN] === 0 || sizeA <= DIRECT_INSIDE) {
+          const left = inside(
+            x,
+            y,
+            z,
+            mass,
+            T[pa + NODE_BEGIN],
+            T[pa + NODE_END],
+            base,
+            scratch,
+            pairSoftening,
+          );
+          coincident += left;
+          pairCount += sizeA * (sizeA - 1);
+          continue;
+        }
+        const first = T[pa + NODE_CHILD];
+        const last = first + T[pa + NODE_CHILDREN];
+        for (let i = last - 1; i >= first; i--) {
+          for (let j = last - 1; j >= i; j--) {
+            stack[depth++] = i;
+            stack[depth++] = j;
+          }
+        }
+        continue;
+      }
+      const pb = b * TOPOLOGY;
+      const n = sizeA * (T[pb + NODE_END] - T[pb + NODE_BEGIN]);
+      const ga = a * GEOMETRY;
+      const gb = b * GEOMETRY;
+      const ra = G[ga + NODE_RADIUS];
+      const rb = G[gb + NODE_RADIUS];
+      if (n > DIRECT_AT_ONCE * 2) {
+        const dx = G[ga] - G[gb];
+        const dy = G[ga + 1] - G[gb + 1];
+        const dz = G[ga + 2] - G[gb + 2];
+        const d2 = dx * dx + dy * dy + dz * dz;
+        const u = d2 + soft2;
+        const reach = ra + rb;
+        const reach2 = reach * reach;
+        if (reach2 < angle2 * u && (support === 0 || d2 > (reach + support) * (reach + support))) {
+          const ratio2 = reach2 / u;
+          let fall = ratio2;
+          for (let k = 1; k < power; k++) fall *= ratio2;
+          const relative = Math.max(
+            G[ga + NODE_MASS] / G[gb + NODE_DEPTH],
+            G[gb + NODE_MASS] / G[ga + NODE_DEPTH],
+          );
+          if (relative * relative * fall < tolerance2 * u) {
+            const la = (a === root ? 0 : a - firstSlot + 1) * localStride;
+            const lb = (b === root ? 0 : b - firstSlot + 1) * localStride;
+            interactBoth(
+              G,
+              multipoles,
+              locals,
+              ga,
+              a * momentStride,
+              la,
+              gb,
+              b * momentStride,
+              lb,
+              soft2,
+            );
+            cells += 2;
+            continue;
+          }
+        }
+      }
+      const aLeaf = T[pa + NODE_CHILDREN] === 0;
+      const bLeaf = T[pb + NODE_CHILDREN] === 0;
+      if (n <= DIRECT_IF_REFUSED * 2 || (aLeaf && bLeaf)) {
+        between(
+          x,
+          y,
+          z,
+          mass,
+          T[pa + NODE_BEGIN],
+          T[pa + NODE_END],
+          T[pb + NODE_BEGIN],
+          T[pb + NODE_END],
+          base,
+          scratch,
+          pairSoftening,
+        );
+        pairCount += 2 * n;
+        continue;
+      }
+      const splitA = !aLeaf && (bLeaf || ra >= rb);
+      const p = splitA ? pa : pb;
+      const first = T[p + NODE_CHILD];
+      for (let child = first + T[p + NODE_CHILDREN] - 1; child >= first; child--) {
+        stack[depth++] = splitA ? child : a;
+        stack[depth++] = splitA ? b : child;
+      }
+    }
+    this.counts.cellInteractions += cells;
+    this.counts.pairInteractions += pairCount;
+    this.counts.coincidentPairs += coincident;
+  }
+}
+
+function longer(stack: Int32Array): Int32Array {
+  const copy = new Int32Array(stack.length * 2);
+  copy.set(stack);
+  return copy;
+}
+
+/**
+ * Hands the local coefficients of a walked branch down to its bodies and adds their values to the
+ * pair sums in `scratch`.
+ */
+export function descendBranch(
+  target: Octree,
+  branch: number,
+  expansion: Expansion,
+  softened: boolean,
+  force: boolean,
+  scratch: WalkScratch,
+): void {
+  const { geometry: G, topology: T, bodies } = target;
+  const { x, y, z } = bodies;
+  const { locals: stride, passDown, valueAt, clausiusAt, gradientAt } = expansion;
+  const { phi, psi, ax, ay, az, locals } = scratch;
+  const rootSlot = target.branchRoots[branch];
+  const firstSlot = target.branchSlots[2 * branch];
+  const endSlot = target.branchSlots[2 * branch + 1];
+  const base = T[rootSlot * TOPOLOGY + NODE_BEGIN];
+  const gradient = new Float64Array(3);
+  for (let local = 0; local <= endSlot - firstSlot; local++) {
+    const slot = local === 0 ? rootSlot : firstSlot + local - 1;
+    const t = slot * TOPOLOGY;
+    const g = slot * GEOMETRY;
+    const at = local * stride;
+    const cx = G[g];
+    const cy = G[g + 1];
+    const cz = G[g + 2];
+    const children = T[t + NODE_CHILDREN];
+    if (children > 0) {
+      const first = T[t + NODE_CHILD];
+      for (let child = first; child < first + children; child++) {
+        const c = child * GEOMETRY;
+        passDown(
+          locals,
+          at,
+          (child - firstSlot + 1) * stride,
+          G[c] - cx,
+          G[c + 1] - cy,
+          G[c + 2] - cz,
+        );
+      }
+      continue;
+    }
+    for (let i = T[t + NODE_BEGIN], k = i - base; i < T[t + NODE_END]; i++, k++) {
+      const dx = x[i] - cx;
+      const dy = y[i] - cy;
+      const dz = z[i] - cz;
+      phi[k] += valueAt(locals, at, dx, dy, dz);
+      if (softened) psi[k] += clausiusAt(locals, at, dx, dy, dz);
+      if (force) {
+        gradientAt(locals, at, dx, dy, dz, gradient);
+        ax[k] += gradient[0];
+        ay[k] += gradient[1];
+        az[k] += gradient[2];
+      }
+    }
+  }
+}

@@ -1,0 +1,168 @@
+/**
+ * A crew runs one function of a task module over numbered jobs, on worker threads or in place.
+ *
+ * A call to {@link Crew.run} is a *round*: every worker gets the same argument and takes job numbers
+ * from a shared counter until none is left, then replies once with what its function returned. Work
+ * is cut by the data and never by the number of threads, and a job writes only to its own part of
+ * shared memory, so results do not depend on who did which job.
+ */
+import { availableParallelism } from 'node:os';
+import { Worker } from 'node:worker_threads';
+import { InterruptedError } from '../errors.ts';
+import type { Reply, Round } from './protocol.ts';
+
+/** Gives the next job number, or -1 when none is left. */
+export type TakeJob = () => number;
+
+/** A function of a task module: takes the round's argument, does jobs, returns what it counted. */
+export type TaskFunction<A, R> = (argument: A, takeJob: TakeJob) => R;
+
+/** A task module as its owner names it: where a worker finds it, and how to load it in place. */
+export interface TaskModule<M> {
+  readonly url: URL;
+  readonly load: () => Promise<M>;
+}
+
+/** Names of the functions of module M that fit {@link TaskFunction}. */
+type TaskNames<M> = {
+  [K in keyof M]: M[K] extends (argument: never, takeJob: TakeJob) => unknown ? K : never;
+}[keyof M] &
+  string;
+type ArgumentOf<F> = F extends (argument: infer A, takeJob: TakeJob) => unknown ? A : never;
+type ResultOf<F> = F extends (...parameters: never[]) => infer R ? R : never;
+
+export interface Crew {
+  /** Number of threads that work; 1 means in place, on the calling thread. */
+  readonly threads: number;
+  /**
+   * Runs one round and resolves with each worker's return value, in no meaningful order.
+   * @param jobs - number of jobs; job numbers run from 0 to jobs - 1
+   * @throws what the task function threw, as an Error with the worker's stack in `cause`;
+   *   InterruptedError if the crew was closed meanwhile
+   */
+  run<M, K extends TaskNames<M>>(
+    module: TaskModule<M>,
+    name: K,
+    argument: ArgumentOf<M[K]>,
+    jobs: number,
+  ): Promise<ResultOf<M[K]>[]>;
+  /** Jobs taken so far in the round under way, and its number of jobs: for progress. */
+  progress(): { readonly done: number; readonly jobs: number };
+  /** Ends the workers; open rounds reject with InterruptedError. */
+  close(): Promise<void>;
+}
+
+/** The number of threads that the machine offers this process. */
+export function defaultThreads(): number {
+  return availableParallelism();
+}
+
+/** A crew of one: the calling thread does all jobs in order. */
+export function crewOfOne(): Crew {
+  let next = 0;
+  let total = 0;
+  return {
+    threads: 1,
+    async run(module, name, argument, jobs) {
+      next = 0;
+      total = jobs;
+      const loaded = await module.load();
+      const task = loaded[name] as TaskFunction<unknown, never>;
+      return [task(argument, () => (next < jobs ? next++ : -1))];
+    },
+    progress: () => ({ done: next, jobs: total }),
+    close: () => Promise.resolve(),
+  };
+}
+
+/** Starts a crew; its workers live until {@link Crew.close}. */
+export function startCrew(threads = defaultThreads()): Crew {
+  return threads <= 1 ? crewOfOne() : new WorkerCrew(threads);
+}
+
+class WorkerCrew implements Crew {
+  readonly threads: number;
+  private readonly workers: Worker[] = [];
+  private readonly pending = new Map<number, Pending>();
+  private nextRound = 1;
+  private counter = new Int32Array(new SharedArrayBuffer(4));
+  private total = 0;
+  private ended: Error | null = null;
+
+  constructor(threads: number) {
+    this.threads = threads;
+    const ending = import.meta.url.endsWith('.ts') ? '.ts' : '.js';
+    const entry = new URL(`./worker${ending}`, import.meta.url);
+    for (let i = 0; i < threads; i++) {
+      const worker = new Worker(entry);
+      worker.on('message', (reply: Reply) => this.settle(reply));
+      worker.on('error', (error) => this.end(error));
+      worker.on('messageerror', (error) => this.end(error));
+      worker.on('exit', () => this.end(new InterruptedError('a worker thread ended early')));
+      worker.unref();
+      this.workers.push(worker);
+    }
+  }
+
+  run<M, K extends TaskNames<M>>(
+    module: TaskModule<M>,
+    name: K,
+    argument: ArgumentOf<M[K]>,
+    jobs: number,
+  ): Promise<ResultOf<M[K]>[]> {
+    if (this.ended) return Promise.reject(this.ended);
+    const roundId = this.nextRound++;
+    const counter = new Int32Array(new SharedArrayBuffer(4));
+    this.counter = counter;
+    this.total = jobs;
+    const wanted = Math.min(this.threads, Math.max(1, jobs));
+    const round: Round = { roundId, module: module.url.href, name, argument, jobs, counter };
+    return new Promise<unknown[]>((resolve, reject) => {
+      this.pending.set(roundId, { results: [], wanted, failure: null, resolve, reject });
+      for (let i = 0; i < wanted; i++) {
+        this.workers[i].ref();
+        this.workers[i].postMessage(round);
+      }
+    }) as Promise<ResultOf<M[K]>[]>;
+  }
+
+  progress(): { done: number; jobs: number } {
+    return { done: Math.min(Atomics.load(this.counter, 0), this.total), jobs: this.total };
+  }
+
+  async close(): Promise<void> {
+    this.end(new InterruptedError());
+    await Promise.all(this.workers.map((worker) => worker.terminate()));
+  }
+
+  /** One reply a worker and round; the round settles when all its workers have replied. */
+  private settle(reply: Reply): void {
+    const round = this.pending.get(reply.roundId);
+    if (!round) return;
+    if (reply.kind === 'done') round.results.push(reply.result);
+    else {
+      const error = new Error(reply.message, { cause: reply.stack });
+      round.failure ??= error;
+    }
+    if (--round.wanted > 0) return;
+    this.pending.delete(reply.roundId);
+    if (this.pending.size === 0) for (const worker of this.workers) worker.unref();
+    if (round.failure) round.reject(round.failure);
+    else round.resolve(round.results);
+  }
+
+  private end(reason: Error): void {
+    if (this.ended) return;
+    this.ended = reason;
+    for (const round of this.pending.values()) round.reject(reason);
+    this.pending.clear();
+  }
+}
+
+interface Pending {
+  readonly results: unknown[];
+  wanted: number;
+  failure: Error | null;
+  readonly resolve: (results: unknown[]) => void;
+  readonly reject: (reason: Error) => void;
+}

@@ -1,0 +1,40 @@
+/** One file → one record: reading, measuring, and the time each took. */
+import { measureParticles } from '../dynamics/measure.ts';
+import type { MeasureRecord } from '../dynamics/record.ts';
+import type { MeasureOptions } from '../dynamics/settings.ts';
+import type { Crew } from '../parallel/crew.ts';
+import { readSnapshot } from '../snapshot/read.ts';
+import type { ReadOptions } from '../snapshot/reading.ts';
+
+/** Stages of one snapshot, for progress. */
+export type Stage = 'reading' | 'tree' | 'forces' | 'error' | 'dynamics';
+
+export interface SurveyOptions extends MeasureOptions {
+  readonly read?: ReadOptions;
+  /** Called when a stage begins and, while reading, as bytes come in. */
+  readonly onStage?: (stage: Stage, fraction: number | null) => void;
+}
+
+/**
+ * Reads one snapshot and measures it.
+ * @param path - a file, or `-` for an Arrow stream on standard input
+ * @throws InputError if the file cannot be read or used, UsageError for options that contradict it
+ */
+export async function measureFile(
+  path: string,
+  options: SurveyOptions,
+  crew: Crew,
+): Promise<MeasureRecord> {
+  const start = performance.now();
+  options.onStage?.('reading', null);
+  const read: ReadOptions = {
+    ...options.read,
+    onProgress: (done, total) => {
+      options.read?.onProgress?.(done, total);
+      options.onStage?.('reading', total > 0 ? done / total : null);
+    },
+  };
+  const particles = await readSnapshot(path, read);
+  const readSeconds = (performance.now() - start) / 1000;
+  return measureParticles(particles, options, crew, { readSeconds, onStage: options.onStage });
+}
