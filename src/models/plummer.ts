@@ -6,8 +6,8 @@
  */
 import { requireMassFraction, type SampledModel } from './sampling.ts';
 
-/** Above the greatest value of q² (1 − q²)^3.5, which is 0.0922 at q² = 2/9. */
-const REJECTION_BOUND = 0.0923;
+/** Greatest value of q² (1 − q²)^3.5, at q² = 2/9. */
+const REJECTION_BOUND = (2 / 9) * (7 / 9) ** 3.5;
 
 export const plummer: SampledModel = {
   name: 'plummer',

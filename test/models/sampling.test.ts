@@ -56,6 +56,12 @@ describe.each(NAMES)('%s', (name) => {
       // Anisotropy β = 1 − ⟨v_t²⟩/(2⟨v_r²⟩) of the shell, both errors together.
       expect(Math.abs(1 - meanTangential / meanRadial)).toBeLessThan(limit * Math.SQRT2);
     }
+    // All shells together, where a constant factor would show: Σ over three components.
+    const sum = (values: Float64Array) => values.reduce((a, b) => a + b);
+    const mean = (sum(radial) + sum(tangential)) / (3 * count);
+    const error = Math.sqrt((sum(radialFourth) / count - 1) / count);
+    expect(Math.abs(mean - 1)).toBeLessThan(4.5 * error);
+    expect(error).toBeLessThan(0.005);
   });
 
   it('has directions without preference and no mean motion', () => {
@@ -169,6 +175,13 @@ describe('speed at a given radius', () => {
     expect(kolmogorov(speeds, cdf)).toBeLessThan(KOLMOGOROV_LIMIT);
   });
 
+  it.each([0, 0.5, 0.99])('of the uniform sphere at r = %d fills a ball of radius √5 σ', (r) => {
+    const random = new Random(7);
+    const edge = Math.sqrt(2.5 * (1 - r * r)); // ⟨v²⟩ of a ball is 3/5 of its radius squared: 3σ²
+    const speeds = Float64Array.from({ length: 40_000 }, () => MODELS.uniform.drawSpeed(r, random));
+    expect(kolmogorov(speeds, (v) => Math.min(1, (v / edge) ** 3))).toBeLessThan(KOLMOGOROV_LIMIT);
+  });
+
   it('has the Hernquist dispersion far out, where the printed bracket is all rounding', () => {
     const random = new Random(6);
     for (const r of [1e3, 1e6]) {
@@ -250,6 +263,27 @@ describe('noise of a sample', () => {
 });
 
 describe('masses', () => {
+  it.each(['x', 'vy'] as const)('are independent of position and velocity: |%s|', (name) => {
+    const count = 100_000;
+    const set = makeModel({ model: 'uniform', count, seed: 4, masses: 'salpeter' });
+    // The rank of a mass, from its distribution function, against the size of the column's value.
+    let [a, b, aa, bb, ab] = [0, 0, 0, 0, 0];
+    const least = Array.from(set.mass).reduce((p, q) => Math.min(p, q));
+    for (let i = 0; i < count; i++) {
+      const rank = (set.mass[i] / least) ** -1.35;
+      const size = Math.abs(set[name][i]);
+      a += rank;
+      b += size;
+      aa += rank * rank;
+      bb += size * size;
+      ab += rank * size;
+    }
+    const correlation =
+      (ab / count - (a / count) * (b / count)) /
+      Math.sqrt((aa / count - (a / count) ** 2) * (bb / count - (b / count) ** 2));
+    expect(Math.abs(correlation)).toBeLessThan(4.5 / Math.sqrt(count));
+  });
+
   it('of the power law have its effective number and its distribution', () => {
     const count = 400_000;
     const set = makeModel({ model: 'uniform', count, seed: 21, masses: 'salpeter' });
