@@ -5,7 +5,7 @@
  *
  * Distance: insertions, deletions, substitutions and swaps of neighbours count 1 each (optimal
  * string alignment); case counts nothing. "Near enough" is at most a third of the longer name,
- * but at least 1. The first of several equally near names is taken.
+ * but at least 1; a name's beginning of three letters or more is near enough, too. The first of several equally near names is taken.
  */
 export function nearestName(name: string, known: readonly string[]): string | null {
   const wanted = name.toLowerCase();
@@ -14,7 +14,8 @@ export function nearestName(name: string, known: readonly string[]): string | nu
   for (const candidate of known) {
     const distance = editDistance(wanted, candidate.toLowerCase());
     const limit = Math.max(1, Math.floor(Math.max(name.length, candidate.length) / 3));
-    if (distance <= limit && distance < bestDistance) {
+    const begins = name.length >= 3 && candidate.toLowerCase().startsWith(wanted);
+    if ((distance <= limit || begins) && distance < bestDistance) {
       best = candidate;
       bestDistance = distance;
     }

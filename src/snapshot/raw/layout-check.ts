@@ -18,11 +18,12 @@ const NOT_YET: Readonly<Record<string, string>> = {
  * @throws InputError `input.layoutNotJson`, `input.layoutInvalid`, `input.layoutUnsupported`
  */
 export function parseLayout(text: string, file: string): Layout {
+  const json = text.replace(/^\uFEFF/, '');
   let value: unknown;
   try {
-    value = JSON.parse(text.replace(/^\uFEFF/, ''));
+    value = JSON.parse(json);
   } catch (error) {
-    throw notJson(text, file, error);
+    throw notJson(json, file, error);
   }
   return checkLayout(value, file);
 }
@@ -48,19 +49,46 @@ export function checkLayout(value: unknown, file: string): Layout {
 }
 
 function notJson(text: string, file: string, error: unknown): InputError {
-  const message = error instanceof Error ? error.message : String(error);
-  const position = /position (\d+)/.exec(message)?.[1];
-  const before = text.slice(0, position === undefined ? text.length : Number(position));
+  const at = firstBadCharacter(text);
+  const before = text.slice(0, at);
   const line = before.split('\n').length;
   const column = before.length - before.lastIndexOf('\n');
   return new InputError(
     'input.layoutNotJson',
     `${file}, line ${line}, column ${column}: expected JSON, found ${
-      position === undefined ? 'the end of the text' : JSON.stringify(text[Number(position)] ?? '')
+      at < text.length ? JSON.stringify(text[at]) : 'the end of the text'
     }`,
     'Correct the layout file there; JSON knows no comments and no comma after the last item.',
     { cause: error },
   );
+}
+
+/**
+ * Index of the character at which the text stops being JSON. Not every message of the engine tells
+ * the position, but whether a beginning of the text is only too short or already wrong it does.
+ */
+function firstBadCharacter(text: string): number {
+  let good = 0;
+  let bad = text.length + 1;
+  while (bad - good > 1) {
+    const middle = (good + bad) >> 1;
+    if (isWrong(text.slice(0, middle))) bad = middle;
+    else good = middle;
+  }
+  return good;
+}
+
+function isWrong(beginning: string): boolean {
+  try {
+    JSON.parse(beginning);
+    return false;
+  } catch (error) {
+    const message = error instanceof Error ? error.message : '';
+    const position = /position (\d+)/.exec(message)?.[1];
+    return position === undefined
+      ? !message.includes('end of JSON')
+      : Number(position) < beginning.length;
+  }
 }
 
 /** `fields[0].type`, or `the layout` for the whole. */

@@ -1,6 +1,6 @@
 import { appendFile, chmod, mkdir, truncate, writeFile } from 'node:fs/promises';
 import { join } from 'node:path';
-import { beforeEach, describe, expect, it } from 'vitest';
+import { beforeEach, describe, expect, it, vi } from 'vitest';
 import type { Particles } from '../../../src/snapshot/particles.ts';
 import { readRaw } from '../../../src/snapshot/raw/read.ts';
 import {
@@ -226,27 +226,31 @@ describe('what the bytes mean', () => {
   it('holds one copy of the data in shared memory, and little beside it', async () => {
     const n = 200_000;
     const path = await put(folder, 'a.bin', Buffer.alloc(56 * n, 1));
-    const Shared = globalThis.SharedArrayBuffer;
-    const Plain = globalThis.ArrayBuffer;
     let shared = 0;
     let plain = 0;
-    globalThis.SharedArrayBuffer = class extends Shared {
-      constructor(bytes: number) {
-        super(bytes);
-        shared += bytes;
-      }
-    };
-    globalThis.ArrayBuffer = class extends Plain {
-      constructor(bytes: number) {
-        super(bytes);
-        plain += bytes;
-      }
-    };
+    // Constructors that count what they are asked for.
+    vi.stubGlobal(
+      'SharedArrayBuffer',
+      class extends SharedArrayBuffer {
+        constructor(bytes: number) {
+          super(bytes);
+          shared += bytes;
+        }
+      },
+    );
+    vi.stubGlobal(
+      'ArrayBuffer',
+      class extends ArrayBuffer {
+        constructor(bytes: number) {
+          super(bytes);
+          plain += bytes;
+        }
+      },
+    );
     try {
       await readRaw(path, {});
     } finally {
-      globalThis.SharedArrayBuffer = Shared;
-      globalThis.ArrayBuffer = Plain;
+      vi.unstubAllGlobals();
     }
     expect(shared).toBe(56 * n);
     expect(plain).toBeGreaterThan(1 << 20);
