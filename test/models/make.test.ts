@@ -1,6 +1,7 @@
 import { describe, expect, it } from 'vitest';
 import { UsageError } from '../../src/errors.ts';
 import { makeModel, MODELS, type MakeOptions } from '../../src/models/make.ts';
+import { drawMasses, normaliseMasses } from '../../src/models/masses.ts';
 import { Random } from '../../src/numerics/random.ts';
 import { drawBodies } from '../../src/models/sampling.ts';
 import { energies, radius } from './samples.ts';
@@ -42,6 +43,15 @@ describe('makeModel', () => {
     drawBodies(MODELS.plummer, new Random(1).stream(1), 1, piece, 0, 100);
     expect(set.x.slice(65_536)).toEqual(piece.x);
     expect(set.vy.slice(65_536)).toEqual(piece.vy);
+  });
+
+  it('draws masses from a family of streams that shares nothing with the positions', () => {
+    const set = makeModel({ ...basis, masses: 'salpeter' });
+    const drawn = new Float64Array(300);
+    drawMasses({ slope: 2.35, range: [0.1, 10] }, new Random(1).family(1), drawn, 0, 300);
+    const expected = new Float64Array(300);
+    normaliseMasses(drawn, 1, expected);
+    expect(set.mass).toEqual(expected);
   });
 
   it('lies in shared memory and says what it is', () => {
