@@ -1,5 +1,4 @@
 /** The writer of raw files: the bytes that a layout asks for, under the final name only when whole. */
-import type { FileHandle } from 'node:fs/promises';
 import { InputError } from '../../errors.ts';
 import { writeAtomically } from '../atomic.ts';
 import type { Particles } from '../particles.ts';
@@ -13,6 +12,7 @@ import {
   type LayoutField,
   type LayoutSkip,
 } from './layout.ts';
+import { RecordWriter } from './record-writer.ts';
 import { integerRange, TYPE_BYTES, writeNumber, type NumberType } from './types.ts';
 
 export interface WriteOptions {
@@ -42,7 +42,7 @@ export async function writeRaw(
   const blocks = layout.arrangement === 'interleaved' ? [layout.fields] : splitFields(layout);
   const encoders = blocks.map((entries) => encoderOf(path, particles, layout, entries));
   await writeAtomically(path, async (handle) => {
-    const out = new Output(handle, layout, options.subrecordBytes ?? SUBRECORD_BYTES);
+    const out = new RecordWriter(handle, layout, options.subrecordBytes ?? SUBRECORD_BYTES);
     if (header.length > 0) {
       await out.begin(header.length);
       await out.write(header);
@@ -66,76 +66,6 @@ export async function writeRaw(
 
 function splitFields(layout: Layout): (LayoutField | LayoutSkip)[][] {
   return layout.fields.map((entry) => [entry]);
-}
-
-/** Puts Fortran length words around records, and around the subrecords of long ones. */
-class Output {
-  readonly #handle: FileHandle;
-  readonly #layout: Layout;
-  readonly #limit: number;
-  #left = 0;
-  #inSubrecord = 0;
-  #subrecord = 0;
-  #isFirst = true;
-
-  constructor(handle: FileHandle, layout: Layout, subrecordBytes: number) {
-    this.#handle = handle;
-    this.#layout = layout;
-    this.#limit = layout.markers === 'fortran4' ? subrecordBytes : Infinity;
-  }
-
-  async begin(bytes: number): Promise<void> {
-    this.#left = bytes;
-    this.#isFirst = true;
-    await this.#open();
-  }
-
-  async write(bytes: Uint8Array): Promise<void> {
-    let done = 0;
-    while (done < bytes.length) {
-      if (this.#inSubrecord === 0) {
-        await this.#close();
-        this.#isFirst = false;
-        await this.#open();
-      }
-      const part = Math.min(bytes.length - done, this.#inSubrecord);
-      await this.#put(bytes.subarray(done, done + part));
-      this.#inSubrecord -= part;
-      this.#left -= part;
-      done += part;
-    }
-  }
-
-  async end(): Promise<void> {
-    await this.#close();
-  }
-
-  async #open(): Promise<void> {
-    this.#subrecord = Math.min(this.#left, this.#limit);
-    this.#inSubrecord = this.#subrecord;
-    await this.#word(this.#left > this.#limit ? -this.#subrecord : this.#subrecord);
-  }
-
-  async #close(): Promise<void> {
-    await this.#word(this.#isFirst ? this.#subrecord : -this.#subrecord);
-  }
-
-  async #word(value: number): Promise<void> {
-    const { markers, byteOrder } = this.#layout;
-    if (markers === 'none') return;
-    const type: NumberType = markers === 'fortran4' ? 'int32' : 'int64';
-    const word = new DataView(new ArrayBuffer(TYPE_BYTES[type]));
-    writeNumber(word, 0, type, byteOrder, value);
-    await this.#put(new Uint8Array(word.buffer));
-  }
-
-  async #put(bytes: Uint8Array): Promise<void> {
-    let done = 0;
-    while (done < bytes.length) {
-      const { bytesWritten } = await this.#handle.write(bytes, done, bytes.length - done);
-      done += bytesWritten;
-    }
-  }
 }
 
 type Encode = (chunk: DataView, firstBody: number, count: number) => void;
