@@ -1,9 +1,9 @@
 /** Arrow's metadata, checked and then decoded by apache-arrow; any damage is an InputError. */
-import type { Schema as LooseSchema } from 'apache-arrow/schema';
+import type { Field as LooseField, Schema as LooseSchema } from 'apache-arrow/schema';
 import type { DataType, TypeMap } from 'apache-arrow/type';
 import { Footer } from 'apache-arrow/ipc/metadata/file';
 import { Message, type DictionaryBatch, type RecordBatch } from 'apache-arrow/ipc/metadata/message';
-import { MetadataVersion } from 'apache-arrow/enum';
+import { MetadataVersion, Type } from 'apache-arrow/enum';
 import { InputError, SettlemarkError } from '../../errors.ts';
 import { faultInFlatbuffer, slotPosition } from './flatbuffer.ts';
 import { FOOTER, MESSAGE } from './shapes.ts';
@@ -66,7 +66,9 @@ export function decodeMessage(bytes: Uint8Array, file: string, place: string): A
     if (message.isSchema()) {
       const view = new DataView(bytes.buffer, bytes.byteOffset, bytes.byteLength);
       assertLittleEndian(view, followSlot(view, 2), file);
-      return { kind: 'schema', schema: message.header() as Schema, bodyLength, version };
+      const schema = message.header() as Schema;
+      assertComplete(schema, file, place);
+      return { kind: 'schema', schema, bodyLength, version };
     }
     if (message.isRecordBatch())
       return { kind: 'batch', batch: message.header(), bodyLength, version };
@@ -88,6 +90,7 @@ export function decodeFooter(
     assertVersion(footer.version, file);
     const view = new DataView(bytes.buffer, bytes.byteOffset, bytes.byteLength);
     assertLittleEndian(view, followSlot(view, 1), file);
+    assertComplete(footer.schema, file, 'its footer');
     const blocks: Block[] = [];
     for (const block of footer.dictionaryBatches()) blocks.push(asBlock('dictionary', block));
     for (const block of footer.recordBatches()) blocks.push(asBlock('batch', block));
@@ -101,6 +104,20 @@ function asBlock(
 ): Block {
   const { offset, metaDataLength, bodyLength } = block;
   return { kind, offset, metadataLength: metaDataLength, bodyLength };
+}
+
+/** Checks that every list says what it is a list of: the library fails on others when asked. */
+function assertComplete(schema: LooseSchema, file: string, place: string): void {
+  const check = ({ name, type }: LooseField): void => {
+    const { children } = type as DataType;
+    const isList = [Type.List, Type.LargeList, Type.FixedSizeList, Type.Map].includes(
+      (type as DataType).typeId,
+    );
+    if (isList && !(children?.length === 1 && children[0]))
+      throw damaged(file, place, `the list "${name}" has no type of its entries`);
+    children?.forEach(check);
+  };
+  schema.fields.forEach(check);
 }
 
 /** Runs a decoder of apache-arrow; whatever it throws means that the bytes are wrong. */
