@@ -66,7 +66,8 @@ export interface Balance {
 
 export interface LagrangianRadii {
   readonly fractions: readonly number[];
-  readonly radii: readonly number[];
+  /** Null only for a set without mass. */
+  readonly radii: readonly (number | null)[];
   /** 1σ sampling errors; null where too few bodies lie inside to tell. */
   readonly errors: readonly (number | null)[];
 }

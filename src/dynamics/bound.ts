@@ -1,0 +1,121 @@
+/**
+ * The bound set by iterated unbinding: bodies with ½|v − v_c|² + φ ≥ 0 are removed, φ and v_c of the
+ * rest found again, until nothing changes. A round removes at most the least bound quarter of the
+ * set, since removing all at once can strip a set that is warm as a whole.
+ * Source: common practice; the cap per round has no source.
+ */
+import { sumForces, type Forces } from '../octree/forces.ts';
+import { subtractBodies } from '../octree/subtract.ts';
+import type { Crew } from '../parallel/crew.ts';
+import type { SetField } from './balance.ts';
+import { fieldOf } from './balance.ts';
+import { countUnbound, frameOf, type BodySet } from './sums.ts';
+import type { Bodies } from './sums.task.ts';
+
+export interface BoundSet {
+  /** The bound bodies; `member` is null if all are bound. */
+  readonly set: BodySet;
+  /** Field of the bound bodies from themselves; the field of all where all are bound. */
+  readonly field: SetField;
+  readonly rounds: number;
+  /** False if the rounds ran out before the set was stable. */
+  readonly settled: boolean;
+}
+
+const MOST_ROUNDS = 50;
+const LARGEST_SHARE = 0.25;
+/** A removal of more than this share of the set is summed again rather than subtracted. */
+const SUM_AGAIN_ABOVE = 0.3;
+
+export async function boundSet(bodies: Bodies, forces: Forces, crew: Crew): Promise<BoundSet> {
+  const whole = fieldOf(forces);
+  const { count } = bodies;
+  const specificEnergy = new Float64Array(new SharedArrayBuffer(count * 8));
+  let set: BodySet = { bodies, member: null };
+  let field = whole;
+  let kept: Uint8Array | null = null;
+  for (let round = 0; round < MOST_ROUNDS; round++) {
+    const frame = await frameOf(set, crew);
+    if (frame.particles === 0) return { set, field, rounds: round, settled: true };
+    const unbound = await countUnbound(set, frame, field.potential, specificEnergy, crew);
+    if (unbound === 0) return { set, field, rounds: round, settled: true };
+    if (kept === null) {
+      kept = new Uint8Array(new SharedArrayBuffer(count)).fill(1);
+      field = copied(whole);
+      set = { bodies, member: kept };
+    }
+    const removed = leastBound(specificEnergy, kept, unbound, frame.particles);
+    for (const i of removed) kept[i] = 0;
+    if (frame.particles === removed.length) continue;
+    const subtract = removed.length <= SUM_AGAIN_ABOVE * frame.particles;
+    const done = subtract && (await subtractBodies(bodies, removed, kept, forces, field, crew));
+    if (!done) await sumAgain(bodies, kept, forces, field, crew);
+  }
+  return { set, field, rounds: MOST_ROUNDS, settled: false };
+}
+
+/** Unbound members, or the least bound quarter of the set if they are more than that. */
+function leastBound(
+  specificEnergy: Float64Array,
+  kept: Uint8Array,
+  unbound: number,
+  particles: number,
+): Uint32Array {
+  const indices = new Uint32Array(unbound);
+  for (let i = 0, k = 0; i < kept.length; i++) {
+    if (kept[i] === 1 && specificEnergy[i] >= 0) indices[k++] = i;
+  }
+  const most = Math.max(1, Math.floor(LARGEST_SHARE * particles));
+  if (unbound <= most) return indices;
+  // Few bodies go at the end: when hardly any are left, all of them.
+  if (particles <= 8) return indices;
+  const energies = Float64Array.from(indices, (i) => specificEnergy[i]).sort();
+  const limit = energies[unbound - most];
+  return indices.filter((i) => specificEnergy[i] >= limit);
+}
+
+function copied(field: SetField): SetField {
+  const copy = (column: Float64Array) => {
+    const to = new Float64Array(new SharedArrayBuffer(column.length * 8));
+    to.set(column);
+    return to;
+  };
+  const potential = copy(field.potential);
+  const clausiusShare =
+    field.clausiusShare === field.potential ? potential : copy(field.clausiusShare);
+  return { ...field, potential, clausiusShare };
+}
+
+/** Sums the field of the kept bodies on themselves from the start. */
+async function sumAgain(
+  bodies: Bodies,
+  kept: Uint8Array,
+  forces: Forces,
+  field: SetField,
+  crew: Crew,
+): Promise<void> {
+  const indices = new Uint32Array(kept.length);
+  let size = 0;
+  for (let i = 0; i < kept.length; i++) if (kept[i] === 1) indices[size++] = i;
+  const pick = (column: ArrayLike<number>) => {
+    const picked = new Float64Array(new SharedArrayBuffer(size * 8));
+    for (let k = 0; k < size; k++) picked[k] = column[indices[k]];
+    return picked;
+  };
+  const columns = {
+    x: pick(bodies.x),
+    y: pick(bodies.y),
+    z: pick(bodies.z),
+    mass: pick(bodies.mass),
+  };
+  const { gravity, softening, level } = forces;
+  const again = await sumForces(
+    columns,
+    { gravity, softening, errorWanted: 1, ...(level ? { level } : {}), exact: level === null },
+    crew,
+  );
+  for (let k = 0; k < size; k++) {
+    field.potential[indices[k]] = again.potential[k];
+    if (field.softened) field.clausiusShare[indices[k]] = again.clausiusShare[k];
+  }
+}

@@ -1,0 +1,193 @@
+/** Particles → record: the order of the work, and nothing else. */
+import { InputError } from '../errors.ts';
+import { sumForces } from '../octree/forces.ts';
+import type { Crew } from '../parallel/crew.ts';
+import type { Particles } from '../snapshot/particles.ts';
+import { balanceOf, fieldOf } from './balance.ts';
+import { boundSet } from './bound.ts';
+import { findCentre } from './centre.ts';
+import { coincidentPairs, duplicateIds } from './duplicates.ts';
+import { lagrangianRadii } from './lagrangian.ts';
+import { RECORD_VERSION, type MeasureRecord, type Vector } from './record.ts';
+import { findRemarks } from './remarks.ts';
+import { settle, type MeasureOptions } from './settings.ts';
+import { PROMISED_SIGMAS } from '../octree/forces.ts';
+import { coulombLogarithm, crossingTime, halfMassRelaxationTime, virialRadius } from './times.ts';
+
+/** Pairs of coincident bodies that a remark names. */
+const PAIRS_NAMED = 3;
+
+export interface MeasureContext {
+  /** Seconds that reading took, for the engine's report. */
+  readonly readSeconds?: number;
+  readonly onStage?: ((stage: 'forces' | 'dynamics', fraction: number | null) => void) | undefined;
+}
+
+/**
+ * Measures one snapshot.
+ * @param particles - screened bodies; not changed
+ * @throws UsageError for options that contradict each other or the snapshot; InputError
+ *   `input.coincident` if bodies lie at one point, nothing is softened and refusal was asked for;
+ *   InputError `input.comoving` for coordinates that are not physical
+ */
+export async function measureParticles(
+  particles: Particles,
+  options: MeasureOptions,
+  crew: Crew,
+  context: MeasureContext = {},
+): Promise<MeasureRecord> {
+  const start = performance.now();
+  const { file } = particles.origin;
+  if (particles.frame.kind !== 'physical') {
+    throw new InputError(
+      'input.comoving',
+      `${file}: coordinates are comoving, and this version measures physical ones`,
+      'convert positions and velocities to physical ones before measuring',
+    );
+  }
+  const settings = settle(options, particles);
+  const gravity = settings.gravity.value;
+  const { kernel, length } = settings.softening.value;
+  context.onStage?.('forces', null);
+  const forces = await sumForces(
+    particles,
+    {
+      gravity,
+      softening: { kernel, length },
+      errorWanted: settings.error.value,
+      exact: settings.exact.value,
+      accelerations: options.accelerations === true,
+    },
+    crew,
+  );
+  if (!Number.isFinite(forces.potentialEnergy)) {
+    throw new InputError(
+      'input.overflow',
+      `${file}: the potential energy is beyond the range of double precision`,
+      'check byte order, types and units: masses and lengths this extreme are rarely meant',
+    );
+  }
+  const summed = performance.now();
+  context.onStage?.('dynamics', null);
+  const coincident =
+    forces.coincidentPairs > 0
+      ? coincidentPairs(particles.x, particles.y, particles.z, PAIRS_NAMED)
+      : [];
+  if (coincident.length > 0 && options.coincident === 'refuse') {
+    const [a, b] = coincident[0];
+    throw new InputError(
+      'input.coincident',
+      `${file}: bodies ${a} and ${b} lie at one point, and ${forces.coincidentPairs} such pairs are in the file`,
+      'state the softening of the run, or leave these pairs out with --coincident leave-out',
+    );
+  }
+
+  const whole = await balanceOf({ bodies: particles, member: null }, fieldOf(forces), crew);
+  const bound = await boundSet(particles, forces, crew);
+  const boundBalance =
+    bound.set.member === null ? whole : await balanceOf(bound.set, bound.field, crew);
+  const centreAsked = settings.centre.value;
+  const centre = await findCentre(particles, whole.frame, forces, centreAsked, crew);
+  const fractions = settings.fractions.value;
+  const scratch = new Float64Array(new SharedArrayBuffer(particles.count * 8));
+  const radiiOf = (result: typeof whole, set: typeof bound.set) =>
+    lagrangianRadii(set, result.frame, centre.centre, fractions, scratch, crew);
+  const lagrangian = await radiiOf(whole, { bodies: particles, member: null });
+  const boundLagrangian =
+    bound.set.member === null ? lagrangian : await radiiOf(boundBalance, bound.set);
+
+  const { frame, sums, balance } = whole;
+  const halfMassRadius = lagrangian.radii[fractions.indexOf(0.5)] ?? 0;
+  const virial = virialRadius(gravity, balance.mass, balance.potential);
+  const meanSquareVelocity = (2 * balance.kinetic) / balance.mass;
+  const coulombFactor = settings.coulombFactor.value;
+  const logarithm = coulombLogarithm({
+    particles: frame.heavy,
+    coulombFactor,
+    gravity,
+    mass: balance.mass,
+    halfMassRadius,
+    meanSquareVelocity,
+    softening: length,
+  });
+  const record = {
+    record: RECORD_VERSION,
+    file,
+    time: particles.time,
+    settings,
+    frame: {
+      centreOfMass: vector(frame.frame, 0),
+      meanVelocity: vector(frame.frame, 3),
+      centre: centre.centre,
+      centreMethod: centre.method,
+      angularMomentum: sums.angularMomentum,
+    },
+    whole: balance,
+    bound: boundBalance.balance,
+    lagrangian,
+    boundLagrangian,
+    halfMassRadius,
+    virialRadius: virial,
+    coreRadius: centre.coreRadius,
+    velocityDispersion: Math.sqrt(meanSquareVelocity / 3),
+    effectiveNumber: (balance.mass * balance.mass) / frame.squaredMass,
+    momentOfInertia: sums.momentOfInertia,
+    momentOfInertiaRate: sums.momentOfInertiaRate,
+    crossingTime: crossingTime(gravity, balance.mass, virial),
+    relaxation: {
+      time: halfMassRelaxationTime(frame.heavy, balance.mass, gravity, halfMassRadius, logarithm),
+      coulombFactor,
+      coulombLogarithm: logarithm,
+    },
+  } as const;
+  const remarks = findRemarks({
+    particles,
+    record,
+    frame,
+    forces,
+    bound,
+    centreAsked,
+    largestMass: largest(particles.mass),
+    duplicates: duplicateIds(particles.columns.id),
+    coincident,
+  });
+  const end = performance.now();
+  const { costs } = forces;
+  const read = context.readSeconds ?? 0;
+  return {
+    ...record,
+    engine: {
+      origin: forces.origin,
+      order: forces.level?.order ?? null,
+      tolerance: forces.level?.tolerance ?? null,
+      errorWanted: settings.error.value,
+      errorMeasured:
+        forces.potentialEnergy === 0
+          ? 0
+          : (PROMISED_SIGMAS * forces.potentialError) / Math.abs(forces.potentialEnergy),
+      interactions: costs.cellInteractions + costs.pairInteractions,
+      threads: crew.threads,
+      seconds: {
+        read,
+        tree: costs.seconds.tree,
+        forces: costs.seconds.forces,
+        error: costs.seconds.error,
+        dynamics: (end - summed) / 1000,
+        total: read + (end - start) / 1000,
+      },
+    },
+    remarks,
+  };
+}
+
+const vector = (numbers: ArrayLike<number>, at: number): Vector => [
+  numbers[at],
+  numbers[at + 1],
+  numbers[at + 2],
+];
+
+function largest(column: ArrayLike<number>): number {
+  let most = 0;
+  for (let i = 0; i < column.length; i++) if (column[i] > most) most = column[i];
+  return most;
+}
