@@ -1,0 +1,73 @@
+/** Text on a page of 80 columns: words wrapped, names shortened, columns lined up. */
+import Table from 'cli-table3';
+
+/** No line of ours is wider; a terminal of this width wraps none of them. */
+export const PAGE_WIDTH = 80;
+
+/** Replaces characters that would move a terminal's cursor or change its colours. */
+export function printable(text: string): string {
+  // eslint-disable-next-line no-control-regex
+  return text.replace(/[\u0000-\u001f\u007f-\u009f]/g, '?');
+}
+
+/** A name that fits into `width`, with its middle left out if it must be. */
+export function shorten(name: string, width: number): string {
+  const characters = [...printable(name)];
+  if (characters.length <= width) return characters.join('');
+  const tail = Math.ceil((width - 1) * 0.6);
+  return [...characters.slice(0, width - 1 - tail), '…', ...characters.slice(-tail)].join('');
+}
+
+/**
+ * Wraps words to lines of at most {@link PAGE_WIDTH}, each after `indent`; a word longer than a line
+ * is broken.
+ * @param first - what the first line begins with instead of the indent; as wide as the indent
+ */
+export function wrap(text: string, indent = '', first = indent): string {
+  const width = PAGE_WIDTH - indent.length;
+  const lines: string[] = [];
+  let line = '';
+  for (const word of printable(text).split(/ +/)) {
+    let rest = word;
+    if (line !== '' && line.length + 1 + rest.length > width) {
+      lines.push(line);
+      line = '';
+    }
+    while (rest.length > width) {
+      lines.push(rest.slice(0, width));
+      rest = rest.slice(width);
+    }
+    line = line === '' ? rest : `${line} ${rest}`;
+  }
+  lines.push(line);
+  return lines.map((each, index) => (index === 0 ? first : indent) + each).join('\n');
+}
+
+export type Align = 'left' | 'right';
+
+/** Rows in columns, two spaces between them, no rules; no space at the ends of lines. */
+export function columns(
+  rows: readonly (readonly string[])[],
+  aligns: readonly Align[],
+  indent = '',
+): string {
+  const nothing = ['top', 'top-mid', 'top-left', 'top-right', 'bottom', 'bottom-mid'];
+  const more = ['bottom-left', 'bottom-right', 'left', 'left-mid', 'mid', 'mid-mid', 'right'];
+  const names = [...nothing, ...more, 'right-mid', 'middle'];
+  const table = new Table({
+    chars: Object.fromEntries(names.map((name) => [name, ''])),
+    style: { 'padding-left': 0, 'padding-right': 2, head: [], border: [] },
+    colAligns: [...aligns],
+  });
+  table.push(...rows.map((row) => [...row]));
+  return table
+    .toString()
+    .split('\n')
+    .map((line) => (indent + line).trimEnd())
+    .join('\n');
+}
+
+/** Room for a minus sign before figures that have none, so that digits stand below digits. */
+export function signRoom(text: string): string {
+  return /^[-(]/.test(text) ? text : ` ${text}`;
+}

@@ -1,0 +1,120 @@
+/** `settlemark measure`: one record a snapshot. */
+import {
+  findSnapshots,
+  InterruptedError,
+  measureFile,
+  parseColumns,
+  startCrew,
+  type CentreMethod,
+  type ExitCode,
+  type MeasureRecord,
+  type SofteningKernel,
+  type SurveyOptions,
+} from '../index.ts';
+import { eachPath } from './many.ts';
+import { formatOf, refuseOverwriting, withOutput, type Format } from './output.ts';
+import { startProgress } from './progress.ts';
+import { remarksText } from './remarks.ts';
+import { paintFor, NO_PAINT } from './style.ts';
+import { write, type Streams } from './streams.ts';
+
+export interface MeasureCommandOptions {
+  readonly layout?: string;
+  readonly columns?: string;
+  readonly units?: string;
+  readonly gravity?: number;
+  readonly softening?: number;
+  readonly softeningKernel?: SofteningKernel;
+  readonly error?: number;
+  readonly exact?: boolean;
+  readonly fractions?: readonly number[];
+  readonly centre?: CentreMethod;
+  readonly coulombFactor?: number;
+  readonly coincident?: 'leave-out' | 'refuse';
+  readonly threads?: number;
+  readonly format?: Format;
+  readonly out?: string;
+  readonly quiet?: boolean;
+}
+
+/** Measures each snapshot; one that fails is told on standard error and the rest are still measured. */
+export async function measure(
+  args: readonly string[],
+  options: MeasureCommandOptions,
+  streams: Streams,
+): Promise<ExitCode> {
+  const { layout, columns, threads, format: asked, out, quiet = false, ...measurement } = options;
+  const survey: SurveyOptions = {
+    ...measurement,
+    read: {
+      ...(layout !== undefined && { layout }),
+      ...(columns !== undefined && { columns: await parseColumns(columns) }),
+      signal: streams.interrupt,
+    },
+  };
+  const files: string[] = [];
+  const before = await eachPath(args, streams, async (arg) => {
+    files.push(...(await findSnapshots([arg])));
+  });
+  await refuseOverwriting(out, files);
+  const format = formatOf(asked, out);
+  const isSeveral = args.length > 1 || files.length > 1;
+  const remarksApart = !quiet && (format !== 'table' || out !== undefined);
+
+  const crew = startCrew(threads);
+  const progress = startProgress(streams.stderr, quiet, crew);
+  const stop = (): void => void crew.close();
+  streams.interrupt.addEventListener('abort', stop, { once: true });
+  try {
+    return await withOutput(out, streams, async (sink) => {
+      const records: MeasureRecord[] = [];
+      const form = await formatter(format, isSeveral, out === undefined ? streams : null);
+      const code = await eachPath(
+        files,
+        streams,
+        async (file) => {
+          // Timers and signals get their turn even if all the work is done on this thread.
+          await new Promise((resolve) => setImmediate(resolve));
+          if (streams.interrupt.aborted) throw new InterruptedError();
+          const record = await measureFile(
+            file,
+            { ...survey, onStage: (stage, fraction) => progress.stage(file, stage, fraction) },
+            crew,
+          ).finally(() => progress.clear());
+          if (format === 'json') records.push(record);
+          else await sink(form(record));
+          if (remarksApart && record.remarks.length > 0) {
+            const text = remarksText(record.remarks, paintFor(streams.stderr, streams.env));
+            await write(streams.stderr, `${file}\n${text}\n`);
+          }
+        },
+        before,
+      );
+      if (format === 'json') {
+        await sink(`${JSON.stringify(isSeveral ? records : records[0], null, 2)}\n`);
+      }
+      return code;
+    });
+  } finally {
+    streams.interrupt.removeEventListener('abort', stop);
+    progress.close();
+    await crew.close();
+  }
+}
+
+/** Text of one record in a format that is written record by record. */
+async function formatter(
+  format: Format,
+  isSeveral: boolean,
+  screen: Streams | null,
+): Promise<(record: MeasureRecord) => string> {
+  if (format !== 'table') return (record) => `${JSON.stringify(record)}\n`;
+  const { recordTable } = await import('./recordTable.ts');
+  const paint = screen === null ? NO_PAINT : paintFor(screen.stdout, screen.env);
+  let isFirst = true;
+  return (record) => {
+    const between = isSeveral && !isFirst ? `\n${paint.faint('─'.repeat(80))}\n\n` : '';
+    isFirst = false;
+    return between + recordTable(record, paint);
+  };
+}

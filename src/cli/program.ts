@@ -1,0 +1,146 @@
+/** The commands and their options; each command's work is loaded when it is called. */
+import { readFileSync } from 'node:fs';
+import { Command, Option } from 'commander';
+import type { DemoOptions } from './demo.ts';
+import type { DescribeOptions } from './describe.ts';
+import type { MakeCommandOptions } from './make.ts';
+import type { MeasureCommandOptions } from './measure.ts';
+import { listOf, numberOf, vectorOf, wholeOf } from './parse.ts';
+import type { Streams } from './streams.ts';
+import type { ExitCode } from '../errors.ts';
+
+const KERNELS = ['none', 'plummer', 'spline'] as const;
+const ANSWERS = `Exit codes: 0 done, 2 wrong usage, 3 input unusable, 4 no answer from this input,
+5 internal error, 130 interrupted.`;
+
+/**
+ * Builds the program.
+ * @param done - gets the exit code of the command that ran
+ */
+export function buildProgram(streams: Streams, done: (code: ExitCode) => void): Command {
+  const program = new Command('settlemark')
+    .description(
+      'Is an N-body run in virial equilibrium, and can it be trusted? Measures T, U and 2T/|U| of snapshots, with errors.',
+    )
+    .version(packageVersion(), '--version', 'print the version')
+    .helpOption('--help', 'print this help')
+    .helpCommand('help [command]', 'print the help of a command')
+    .exitOverride()
+    .configureOutput({
+      writeOut: (text) => void streams.stdout.write(text),
+      writeErr: (text) => void streams.stderr.write(text),
+      outputError: () => undefined, // Told by reportFailure, like all other errors.
+      getOutHelpWidth: () => 80,
+      getErrHelpWidth: () => 80,
+    })
+    .addHelpText('after', `\n${ANSWERS}`);
+
+  reading(program.command('describe <file...>'))
+    .description('say what is in a file: columns, types, count, time, units, first findings')
+    .addOption(formats(['table', 'json']))
+    .addOption(new Option('--out <file>', 'write to a file instead of standard output'))
+    .action(async (files: string[], options: DescribeOptions) => {
+      done(await (await import('./describe.ts')).describe(files, options, streams));
+    });
+
+  measuring(reading(program.command('measure <snapshot...>')))
+    .description('measure snapshots: energies, virial ratio, radii, times, each with its error')
+    .addOption(formats(['table', 'json', 'ndjson']))
+    .addOption(new Option('--out <file>', 'write to a file; its ending may name the format'))
+    .option('--quiet', 'no progress and no remarks on standard error')
+    .action(async (snapshots: string[], options: MeasureCommandOptions) => {
+      done(await (await import('./measure.ts')).measure(snapshots, options, streams));
+    });
+
+  making(program.command('make <model>'))
+    .description('make a snapshot of an equilibrium model: plummer, hernquist or uniform')
+    .action(async (model: string, options: MakeCommandOptions) => {
+      done(await (await import('./make.ts')).make(model, options, streams));
+    });
+
+  program
+    .command('demo')
+    .description('measure the solar system over twelve years, then a sphere of 100,000 stars')
+    .option('--quiet', 'no progress on standard error')
+    .addOption(threads())
+    .action(async (options: DemoOptions) => {
+      done(await (await import('./demo.ts')).demo(options, streams));
+    });
+  return program;
+}
+
+function reading(command: Command): Command {
+  return command
+    .option('--layout <file>', 'layout of a raw binary snapshot (JSON)')
+    .option('--columns <name=column,...>', 'which column of the file is meant by which name');
+}
+
+function measuring(command: Command): Command {
+  return command
+    .option('--units <name>', 'unit system: natural, kpc-kms-msun, ...; sets G')
+    .option('--gravity <G>', 'constant of gravitation', numberOf('--gravity'))
+    .option('--softening <length>', 'Plummer-equivalent length', numberOf('--softening'))
+    .addOption(kernel())
+    .option('--error <E>', 'relative error wanted of U (1e-5)', numberOf('--error'))
+    .option('--exact', 'direct sums over all pairs')
+    .option('--fractions <f,...>', 'mass fractions of Lagrangian radii', listOf('--fractions'))
+    .addOption(
+      new Option('--centre <method>', 'what radii are about (density)').choices([
+        'density',
+        'shrinking',
+        'mass',
+        'potential',
+      ]),
+    )
+    .option('--coulomb-factor <γ>', 'γ in Λ = γN (0.11)', numberOf('--coulomb-factor'))
+    .addOption(
+      new Option(
+        '--coincident <what>',
+        'bodies at one point, unsoftened: leave those pairs out, or refuse',
+      ).choices(['leave-out', 'refuse']),
+    )
+    .addOption(threads());
+}
+
+function making(command: Command): Command {
+  return command
+    .option('--count <n>', 'number of bodies (needed)', wholeOf('--count', 1))
+    .option('--seed <n>', 'seed; the same gives the same bodies (1)', wholeOf('--seed', 0))
+    .option('--virial-ratio <q>', 'scale velocities to 2T/|W| = q', numberOf('--virial-ratio'))
+    .addOption(
+      new Option('--masses <law>', 'all equal, or drawn from m^-2.35').choices([
+        'equal',
+        'salpeter',
+      ]),
+    )
+    .option('--cut <R>', 'no bodies beyond this radius', numberOf('--cut'))
+    .option('--offset <x,y,z>', 'added to all positions', vectorOf('--offset'))
+    .option('--velocity <vx,vy,vz>', 'added to all velocities', vectorOf('--velocity'))
+    .option('--scale-radius <a>', 'scale radius of the model (1)', numberOf('--scale-radius'))
+    .option('--mass <M>', 'mass of the model before any cut (1)', numberOf('--mass'))
+    .option('--units <name>', 'unit system: natural, pc-kms-msun, ...; sets G')
+    .option('--gravity <G>', 'constant of gravitation (1)', numberOf('--gravity'))
+    .option('--softening <length>', 'Plummer-equivalent, for scaling', numberOf('--softening'))
+    .addOption(kernel())
+    .addOption(
+      new Option('--format <name>', 'format of the file; its ending may name it').choices([
+        'raw',
+        'arrow',
+      ]),
+    )
+    .option('--out <file>', 'file to write (needed)')
+    .addOption(threads())
+    .option('--quiet', 'say nothing about the file written');
+}
+
+const formats = (names: readonly string[]): Option =>
+  new Option('--format <name>', 'form of the output (table)').choices([...names]);
+const kernel = (): Option =>
+  new Option('--softening-kernel <kernel>', 'kernel of the softening').choices([...KERNELS]);
+const threads = (): Option =>
+  new Option('--threads <n>', 'worker threads (all)').argParser(wholeOf('--threads', 1));
+
+function packageVersion(): string {
+  const text = readFileSync(new URL('../../package.json', import.meta.url), 'utf8');
+  return (JSON.parse(text) as { version: string }).version;
+}

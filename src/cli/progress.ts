@@ -1,0 +1,65 @@
+/** One line on a terminal that says what is going on, once the work has taken a second. */
+import type { Crew, Stage } from '../index.ts';
+import { shorten } from './layout.ts';
+import type { OutStream } from './streams.ts';
+
+const SHOW_AFTER_MS = 1000;
+const EVERY_MS = 150;
+const ERASE = '\r\u001b[2K';
+const NAME_WIDTH = 40;
+
+const DOING: Record<Stage, string> = {
+  reading: 'reading',
+  tree: 'building the tree',
+  forces: 'summing forces',
+  error: 'measuring the error',
+  dynamics: 'centre, radii and bound set',
+};
+
+export interface Progress {
+  /** A stage has begun or got further; may be called as often as one likes. */
+  stage(name: string, stage: Stage, fraction: number | null): void;
+  /** Takes the line away, so that other text can be printed. */
+  clear(): void;
+  close(): void;
+}
+
+/** Progress on `stream` if it is a terminal and `quiet` is not wanted; else one that says nothing. */
+export function startProgress(stream: OutStream, quiet: boolean, crew: Crew): Progress {
+  if (quiet || stream.isTTY !== true) {
+    return { stage: () => undefined, clear: () => undefined, close: () => undefined };
+  }
+  const start = performance.now();
+  let label = '';
+  let share: number | null = null;
+  let last = 0;
+  let shown = false;
+  const draw = (now: number): void => {
+    if (label === '' || now - start < SHOW_AFTER_MS || now - last < EVERY_MS) return;
+    const { done, jobs } = crew.progress();
+    const part = share ?? (jobs > 0 ? done / jobs : null);
+    const percent = part === null ? '' : ` ${Math.floor(100 * Math.min(1, part))} %`;
+    stream.write(`${ERASE}${label}${percent}`);
+    last = now;
+    shown = true;
+  };
+  // The crew's counter moves without telling; a timer that keeps no process alive looks at it.
+  const timer = setInterval(() => draw(performance.now()), EVERY_MS).unref();
+  const clear = (): void => {
+    if (shown) stream.write(ERASE);
+    shown = false;
+  };
+  return {
+    stage(name, stage, fraction) {
+      label = `${shorten(name, NAME_WIDTH)}: ${DOING[stage]}`;
+      share = fraction;
+      draw(performance.now());
+    },
+    clear,
+    close() {
+      clearInterval(timer);
+      clear();
+      label = '';
+    },
+  };
+}

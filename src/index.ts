@@ -1,0 +1,190 @@
+/**
+ * Settlemark as a library: files of particles → T, U, W with measured errors → records.
+ *
+ * Importing this module is cheap: the functions load what they need when they are first called.
+ *
+ * ```ts
+ * import { measure } from 'settlemark';
+ * const record = await measure('cluster.bin', { softening: 0.01 });
+ * console.log(record.whole.clausiusRatio, '±', record.whole.noise);
+ * ```
+ */
+import type { MeasureRecord } from './dynamics/record.ts';
+import type { MeasureOptions } from './dynamics/settings.ts';
+import type { MakeOptions } from './models/make.ts';
+import { defaultThreads, startCrew, type Crew } from './parallel/crew.ts';
+import type { Particles } from './snapshot/particles.ts';
+import type { FieldName, ReadOptions, SnapshotDescription } from './snapshot/reading.ts';
+import type { AveragedBalance } from './survey/average.ts';
+import type { MakeSnapshotOptions } from './survey/make.ts';
+import type { Stage, SurveyOptions } from './survey/measure.ts';
+
+export {
+  EXIT,
+  exitCodeOf,
+  InputError,
+  InterruptedError,
+  SettlemarkError,
+  UnanswerableError,
+  UsageError,
+  type ExitCode,
+} from './errors.ts';
+export { defaultThreads, startCrew, type Crew } from './parallel/crew.ts';
+export { UNIT_SYSTEMS, type Dimension, type UnitName, type UnitSystem } from './snapshot/units.ts';
+export { unitText, yearsPerTimeUnit } from './snapshot/unitText.ts';
+export { findQuantity, QUANTITIES, type Quantity } from './dynamics/registry.ts';
+export type {
+  Balance,
+  CentreMethod,
+  EngineReport,
+  LagrangianRadii,
+  MeasureRecord,
+  RecordSettings,
+  Setting,
+  SettingOrigin,
+  SofteningSetting,
+  Vector,
+} from './dynamics/record.ts';
+export type { MeasureOptions } from './dynamics/settings.ts';
+export type { SofteningKernel } from './octree/softening.ts';
+export type { MakeOptions, ModelName } from './models/make.ts';
+export type {
+  FloatColumn,
+  Frame,
+  IdColumn,
+  OptionalColumns,
+  ParticleOrigin,
+  Particles,
+  Remark,
+} from './snapshot/particles.ts';
+export type {
+  DescribedColumn,
+  FieldName,
+  ReadOptions,
+  SnapshotDescription,
+} from './snapshot/reading.ts';
+export type { AveragedBalance } from './survey/average.ts';
+export type { MakeSnapshotOptions } from './survey/make.ts';
+export type { Stage, SurveyOptions } from './survey/measure.ts';
+
+/** Options of {@link measure}: those of the measurement, of the reader, and the number of threads. */
+export interface MeasureCall extends SurveyOptions {
+  /** Worker threads; as many as the machine offers if not given. */
+  readonly threads?: number;
+}
+
+/**
+ * Reads and measures one snapshot with a crew of its own, which ends with the call. For many
+ * snapshots start one crew and use {@link measureFile}.
+ * @param path - a file, or `-` for an Arrow stream on standard input
+ * @returns the record, in the units of the snapshot
+ * @throws UsageError, InputError; InterruptedError if `options.read.signal` is aborted
+ */
+export async function measure(path: string, options: MeasureCall = {}): Promise<MeasureRecord> {
+  const { threads, ...survey } = options;
+  const crew = startCrew(threads ?? defaultThreads());
+  const signal = options.read?.signal;
+  const stop = (): void => void crew.close();
+  signal?.addEventListener('abort', stop, { once: true });
+  try {
+    return await measureFile(path, survey, crew);
+  } finally {
+    signal?.removeEventListener('abort', stop);
+    await crew.close();
+  }
+}
+
+/** Reads and measures one snapshot with a crew that the caller has started; errors as {@link measure}. */
+export async function measureFile(
+  path: string,
+  options: SurveyOptions,
+  crew: Crew,
+): Promise<MeasureRecord> {
+  return (await import('./survey/measure.ts')).measureFile(path, options, crew);
+}
+
+/**
+ * Measures particles that are already in memory.
+ * @throws UsageError for options out of their domain; InputError for particles that cannot be measured
+ */
+export async function measureSnapshot(
+  particles: Particles,
+  options: MeasureOptions & Pick<SurveyOptions, 'onStage'>,
+  crew: Crew,
+): Promise<MeasureRecord> {
+  const { onStage, ...measurement } = options;
+  const { measureParticles } = await import('./dynamics/measure.ts');
+  return measureParticles(particles, measurement, crew, {
+    readSeconds: 0,
+    ...(onStage && {
+      onStage: (stage: Stage, fraction: number | null) => onStage(stage, fraction),
+    }),
+  });
+}
+
+/**
+ * Time averages of T, U and W over records of one system, and 2⟨T⟩/|⟨W⟩|.
+ * @throws UnanswerableError with fewer than two times
+ */
+export async function averageBalance(records: readonly MeasureRecord[]): Promise<AveragedBalance> {
+  return (await import('./survey/average.ts')).averageBalance(records);
+}
+
+/**
+ * Reads a snapshot, raw or Arrow, into shared memory and screens its values.
+ * @param path - a file, or `-` for an Arrow stream on standard input
+ * @throws InputError, UsageError, InterruptedError
+ */
+export async function readSnapshot(path: string, options: ReadOptions = {}): Promise<Particles> {
+  return (await import('./snapshot/read.ts')).readSnapshot(path, options);
+}
+
+/** Says what is in a snapshot and reads no more of it than that takes; errors as {@link readSnapshot}. */
+export async function describeSnapshot(
+  path: string,
+  options: ReadOptions = {},
+): Promise<SnapshotDescription> {
+  return (await import('./snapshot/read.ts')).describeSnapshot(path, options);
+}
+
+/**
+ * The snapshots that files and folders mean, in the natural order of names.
+ * @throws InputError `input.notFound`; UnanswerableError for a folder without snapshots
+ */
+export async function findSnapshots(paths: readonly string[]): Promise<string[]> {
+  return (await import('./snapshot/series.ts')).expandPaths(paths);
+}
+
+/** Parses `name=column,…` for {@link ReadOptions.columns}. @throws UsageError */
+export async function parseColumns(text: string): Promise<Partial<Record<FieldName, string>>> {
+  return (await import('./snapshot/columns.ts')).parseColumns(text);
+}
+
+/** Draws bodies from an equilibrium model, as they come. @throws UsageError */
+export async function makeModel(options: MakeOptions): Promise<Particles> {
+  return (await import('./models/make.ts')).makeModel(options);
+}
+
+/**
+ * Makes a model snapshot: drawn, scaled to a virial ratio if wanted, moved.
+ * @throws UsageError; UnanswerableError if there is nothing to scale
+ */
+export async function makeSnapshot(options: MakeSnapshotOptions, crew: Crew): Promise<Particles> {
+  return (await import('./survey/make.ts')).makeSnapshot(options, crew);
+}
+
+/**
+ * Writes particles; the file appears whole or not at all.
+ * @param format - `arrow` (a stream if the name ends in `.arrows`), or `raw`: little-endian float64
+ *   mass x y z vx vy vz, body after body
+ * @throws InputError `input.cannotWrite`
+ */
+export async function writeSnapshot(
+  path: string,
+  particles: Particles,
+  format: 'raw' | 'arrow',
+): Promise<void> {
+  if (format === 'arrow')
+    await (await import('./snapshot/arrow/write.ts')).writeArrow(path, particles);
+  else await (await import('./snapshot/raw/write.ts')).writeRaw(path, particles);
+}

@@ -1,0 +1,52 @@
+/** A dimension in the symbols of a unit system, for print: energy in `pc-kms-msun` is `Msun (km/s)²`. */
+import { PARSEC_PER_KMS_IN_MYR, type Dimension, type UnitSystem } from './units.ts';
+
+const SUPERSCRIPTS = ['⁰', '¹', '²', '³', '⁴', '⁵', '⁶', '⁷', '⁸', '⁹'];
+
+/**
+ * The unit of a quantity.
+ *
+ * Powers of time go with lengths into powers of the velocity where that is possible, since a system
+ * states mass, length and velocity; else the symbol of time is used.
+ * @returns text such as `Msun (km/s)²`; empty for pure numbers and in systems without symbols
+ */
+export function unitText(dimension: Dimension, units: UnitSystem): string {
+  if (units.mass === '' && units.length === '' && units.velocity === '') return '';
+  const { mass, length, time } = dimension;
+  const viaVelocity = time < 0 && length + time >= 0;
+  const factors: readonly (readonly [symbol: string, power: number])[] = viaVelocity
+    ? [
+        [units.mass, mass],
+        [units.length, length + time],
+        [units.velocity, -time],
+      ]
+    : [
+        [units.mass, mass],
+        [units.length, length],
+        [units.time, time],
+      ];
+  return factors
+    .filter(([, power]) => power !== 0)
+    .map(([symbol, power]) => raise(symbol, power))
+    .join(' ');
+}
+
+function raise(symbol: string, power: number): string {
+  if (power === 1) return symbol;
+  const exponent = String(Math.abs(power))
+    .split('')
+    .map((digit) => SUPERSCRIPTS[Number(digit)] ?? digit)
+    .join('');
+  const base = symbol.includes('/') ? `(${symbol})` : symbol;
+  return `${base}${power < 0 ? '⁻' : ''}${exponent}`;
+}
+
+/**
+ * Years in the system's unit of time, to print a time that people can grasp; null where the unit is
+ * a year or has no length.
+ */
+export function yearsPerTimeUnit(units: UnitSystem): number | null {
+  if (units.name === 'pc-kms-msun') return PARSEC_PER_KMS_IN_MYR * 1e6;
+  if (units.name === 'kpc-kms-msun') return PARSEC_PER_KMS_IN_MYR * 1e9;
+  return null;
+}
