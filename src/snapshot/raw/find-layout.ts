@@ -26,8 +26,11 @@ export async function findLayout(path: string, given: string | undefined): Promi
   if (given !== undefined) {
     return { layout: await loadLayout(given), file: given, remarks: [] };
   }
-  const file = await besideData(path);
-  if (file === null) return { layout: DEFAULT_LAYOUT, file: null, remarks: [] };
+  const { file, candidates } = await besideData(path);
+  if (file === null) {
+    const remarks = candidates.length > 1 ? [ambiguous(path, candidates)] : [];
+    return { layout: DEFAULT_LAYOUT, file: null, remarks };
+  }
   const remark: Remark = {
     code: 'layout.found',
     text: `${path} was read with the layout ${file}, found beside it`,
@@ -36,19 +39,40 @@ export async function findLayout(path: string, given: string | undefined): Promi
   return { layout: await loadLayout(file), file, remarks: [remark] };
 }
 
-async function besideData(path: string): Promise<string | null> {
+function ambiguous(path: string, candidates: readonly string[]): Remark {
+  return {
+    code: 'layout.ambiguous',
+    text: `${path} was read as 7 little-endian float64 a body: of the ${candidates.length} layouts beside it (${candidates.slice(0, 3).join(', ')}${candidates.length > 3 ? ', ...' : ''}) none bears its name`,
+    remedy: 'Name the right one with --layout FILE.',
+  };
+}
+
+interface Beside {
+  readonly file: string | null;
+  /** Names of the layouts in the folder that bear the name of some data. */
+  readonly candidates: readonly string[];
+}
+
+async function besideData(path: string): Promise<Beside> {
   const folder = dirname(path);
   let names: string[];
   try {
     names = await readdir(folder);
   } catch {
-    return null; // Files in it may still be readable by name, or the data's own error tells.
+    return { file: null, candidates: [] }; // Files in it may still be readable by name, or the data's own error tells.
   }
   const own = `${basename(path, extname(path))}.layout.json`;
-  if (names.includes(own)) return join(folder, own);
-  const all = names.filter((name) => name.endsWith('.layout.json') && !name.startsWith('.'));
-  if (all.length === 1) return join(folder, all[0]);
-  return names.includes('layout.json') ? join(folder, 'layout.json') : null;
+  const candidates = names
+    .filter((name) => name.endsWith('.layout.json') && !name.startsWith('.'))
+    .sort();
+  const name = candidates.includes(own)
+    ? own
+    : candidates.length === 1
+      ? candidates[0]
+      : names.includes('layout.json')
+        ? 'layout.json'
+        : null;
+  return { file: name === null ? null : join(folder, name), candidates };
 }
 
 /** Reads and checks a layout file. */

@@ -280,6 +280,20 @@ describe('which layout', () => {
     ]);
   });
 
+  it('takes the default and says so when several layouts could be meant', async () => {
+    const path = await put(folder, 'larkhill.bin', bodies('little', 3));
+    await putLayout(folder, layout, 'a.layout.json');
+    await putLayout(folder, layout, 'b.layout.json');
+    const particles = await readRaw(path, {});
+    expectBodies(particles, 3);
+    expect(particles.origin.remarks).toMatchObject([
+      {
+        code: 'layout.ambiguous',
+        text: expect.stringContaining('(a.layout.json, b.layout.json)') as string,
+      },
+    ]);
+  });
+
   it('says that a field is nearly named like one it knows', async () => {
     const path = await put(folder, 'a.bin', f64('little', ...body(0), 9));
     const named = await putLayout(folder, {
