@@ -91,14 +91,14 @@ export class BatchPlanner {
       const isVector = column.targets.length === 3;
       const leaf = isVector ? own.children[0] : own;
       const values = rows * column.targets.length;
+      const missing = isVector ? own.nulls + leaf.nulls : own.nulls;
+      if (missing > 0 && this.refuseNulls) throw this.missingValues(column, missing, place);
       if (leaf.rows !== values)
         throw damaged(
           this.file,
           place,
           `${leaf.rows} numbers in "${column.fileName}", not ${values}`,
         );
-      const missing = isVector ? own.nulls + leaf.nulls : own.nulls;
-      if (missing > 0 && this.refuseNulls) throw this.missingValues(column, missing, place);
       nulls.push(missing);
       const region = leaf.buffers[1];
       await this.checkLength(region, values * BYTES_OF[column.kind], codec, body, place);
