@@ -55,13 +55,12 @@ async function solarSystem(
   paint: Paint,
 ): Promise<string> {
   const records: MeasureRecord[] = [];
-  for (const file of await solarFiles()) {
+  const files = await solarFiles();
+  for (const [index, file] of files.entries()) {
     await new Promise((resolve) => setImmediate(resolve));
     if (streams.interrupt.aborted) throw new InterruptedError();
-    const onStage: Parameters<Progress['stage']> extends [string, ...infer Rest]
-      ? (...rest: Rest) => void
-      : never = (stage, fraction) => progress.stage('solar system', stage, fraction);
-    records.push(await measureFile(file, { read: { signal: streams.interrupt }, onStage }, crew));
+    progress.say('the solar system over twelve years', index / files.length);
+    records.push(await measureFile(file, { read: { signal: streams.interrupt } }, crew));
   }
   progress.clear();
   const average = await averageBalance(records);
@@ -70,7 +69,7 @@ async function solarSystem(
   const lines = [
     paint.strong('1. Nine real bodies: the Sun and its planets'),
     wrap(
-      `${average.records} snapshots, one every 30 days over ${short(average.to - average.from, 3)} years. At single moments 2T/|U| lies anywhere from ${figure(average.smallest, 0.001)} to ${figure(average.largest, 0.001)}: the planets, above all Jupiter, come nearer to the Sun and go away again, and a swing of ${short(swing, 1)} % says nothing about balance.`,
+      `${average.records} snapshots, one every 30 days over ${short(average.to - average.from, 3)} years. At single moments 2T/|U| lies anywhere from ${significant(average.smallest, 4)} to ${significant(average.largest, 4)}: the planets, above all Jupiter, come nearer to the Sun and go away again, and a swing of ${short(swing, 1)} % says nothing about balance.`,
       '   ',
     ),
     wrap('The virial theorem speaks of averages over time, and they agree with it:', '   '),

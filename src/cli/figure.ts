@@ -41,7 +41,9 @@ export function significant(value: number, digits = DIGITS_WITHOUT_ERROR): strin
 
 /** A number as briefly as it can be said, to `digits` digits: settings, errors, factors. */
 export function short(value: number, digits = 2): string {
-  return String(Number(value.toPrecision(digits)));
+  const rounded = Number(value.toPrecision(digits));
+  const isSmall = rounded !== 0 && Math.abs(rounded) < 10 ** LEAST_PLAIN;
+  return isSmall ? rounded.toExponential() : String(rounded);
 }
 
 /** A whole number with separators of thousands, the same in every locale. */
@@ -65,12 +67,13 @@ export function vectorText(vector: readonly number[], scale: number | null): str
   return plain ? joined : `(${joined})e${power < 0 ? '-' : '+'}${Math.abs(power)}`;
 }
 
-/** Seconds as people say them: `0.4 s`, `12 s`, `3 min 20 s`. */
+/** Seconds as people say them, `0.4 s`, `12 s`, `3 min 20 s`, with spaces that wrap() does not break. */
 export function duration(seconds: number): string {
-  if (seconds < 0.0095) return `${short(seconds * 1000, 1)} ms`;
-  if (seconds < 10) return `${short(seconds)} s`;
-  if (seconds < 100) return `${Math.round(seconds)} s`;
-  return `${Math.floor(seconds / 60)} min ${Math.round(seconds % 60)} s`;
+  if (seconds < 0.0095) return `${short(seconds * 1000, 1)}\u00a0ms`;
+  if (seconds < 9.95) return `${short(seconds)}\u00a0s`;
+  const whole = Math.round(seconds);
+  if (whole < 100) return `${whole}\u00a0s`;
+  return `${Math.floor(whole / 60)}\u00a0min\u00a0${whole % 60}\u00a0s`;
 }
 
 /** Years in the unit that keeps the number small. */

@@ -20,7 +20,7 @@ export function shorten(name: string, width: number): string {
 
 /**
  * Wraps words to lines of at most {@link PAGE_WIDTH}, each after `indent`; a word longer than a line
- * is broken.
+ * is broken. Lines do not end at a no-break space (U+00A0), which becomes a plain one.
  * @param first - what the first line begins with instead of the indent; as wide as the indent
  */
 export function wrap(text: string, indent = '', first = indent): string {
@@ -40,7 +40,10 @@ export function wrap(text: string, indent = '', first = indent): string {
     line = line === '' ? rest : `${line} ${rest}`;
   }
   lines.push(line);
-  return lines.map((each, index) => (index === 0 ? first : indent) + each).join('\n');
+  return lines
+    .map((each, index) => (index === 0 ? first : indent) + each)
+    .join('\n')
+    .replaceAll('\u00a0', ' ');
 }
 
 export type Align = 'left' | 'right';

@@ -68,6 +68,7 @@ export async function measure(
   try {
     return await withOutput(out, streams, async (sink) => {
       const records: MeasureRecord[] = [];
+      let begun = 0;
       const form = await formatter(format, isSeveral, out === undefined ? streams : null);
       const code = await eachPath(
         files,
@@ -76,9 +77,10 @@ export async function measure(
           // Timers and signals get their turn even if all the work is done on this thread.
           await new Promise((resolve) => setImmediate(resolve));
           if (streams.interrupt.aborted) throw new InterruptedError();
+          const name = files.length > 1 ? `${++begun} of ${files.length}, ${file}` : file;
           const record = await measureFile(
             file,
-            { ...survey, onStage: (stage, fraction) => progress.stage(file, stage, fraction) },
+            { ...survey, onStage: (stage, fraction) => progress.stage(name, stage, fraction) },
             crew,
           ).finally(() => progress.clear());
           if (format === 'json') records.push(record);

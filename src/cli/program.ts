@@ -10,8 +10,8 @@ import type { Streams } from './streams.ts';
 import type { ExitCode } from '../errors.ts';
 
 const KERNELS = ['none', 'plummer', 'spline'] as const;
-const ANSWERS = `Exit codes: 0 done, 2 wrong usage, 3 input unusable, 4 no answer from this input,
-5 internal error, 130 interrupted.`;
+const ANSWERS = `Exit codes: 0 done, 2 wrong usage, 3 input unusable, 4 no answer from
+this input, 5 internal error, 130 interrupted.`;
 
 /**
  * Builds the program.

@@ -17,7 +17,9 @@ const DOING: Record<Stage, string> = {
 };
 
 export interface Progress {
-  /** A stage has begun or got further; may be called as often as one likes. */
+  /** What is being done, and which share of it is done; null if the crew's counter tells. */
+  say(text: string, share: number | null): void;
+  /** A stage of one snapshot has begun or got further; may be called as often as one likes. */
   stage(name: string, stage: Stage, fraction: number | null): void;
   /** Takes the line away, so that other text can be printed. */
   clear(): void;
@@ -27,7 +29,8 @@ export interface Progress {
 /** Progress on `stream` if it is a terminal and `quiet` is not wanted; else one that says nothing. */
 export function startProgress(stream: OutStream, quiet: boolean, crew: Crew): Progress {
   if (quiet || stream.isTTY !== true) {
-    return { stage: () => undefined, clear: () => undefined, close: () => undefined };
+    const nothing = (): void => undefined;
+    return { say: nothing, stage: nothing, clear: nothing, close: nothing };
   }
   const start = performance.now();
   let label = '';
@@ -49,11 +52,15 @@ export function startProgress(stream: OutStream, quiet: boolean, crew: Crew): Pr
     if (shown) stream.write(ERASE);
     shown = false;
   };
+  const say = (text: string, fraction: number | null): void => {
+    label = text;
+    share = fraction;
+    draw(performance.now());
+  };
   return {
-    stage(name, stage, fraction) {
-      label = `${shorten(name, NAME_WIDTH)}: ${DOING[stage]}`;
-      share = fraction;
-      draw(performance.now());
+    say,
+    stage: (name, stage, fraction) => {
+      say(`${shorten(name, NAME_WIDTH)}: ${DOING[stage]}`, fraction);
     },
     clear,
     close() {

@@ -28,29 +28,31 @@ export function ratioOf(record: MeasureRecord, set: 'whole' | 'bound'): number |
 export function ratioWords(record: MeasureRecord): RatioWords {
   const name = isSoftened(record) ? '2T/|W|' : '2T/|U|';
   const ratio = ratioOf(record, 'whole');
-  const { noise } = record.whole;
+  const noise = noiseOf(record, 'whole');
   if (ratio === null) {
     return { name, figure: figure(null), words: 'there is nothing to divide by', tone: 'bad' };
   }
   const text = noise === null ? figure(ratio) : `${figure(ratio, noise)} (finite N)`;
-  if (ratio >= UNBOUND_RATIO) {
-    return {
-      name,
-      figure: text,
-      words: 'more motion than gravity can hold: unbound as a whole',
-      tone: 'bad',
-    };
-  }
-  if (noise === null || noise === 0) return { name, figure: text, words: '', tone: 'warn' };
-  const distance = Math.abs(ratio - 1) / noise;
-  if (distance <= WITHIN_NOISE) {
-    return { name, figure: text, words: '1, as in equilibrium, within the noise', tone: 'good' };
-  }
-  const side = ratio > 1 ? 'above 1: too much motion' : 'below 1: too little motion';
-  return {
-    name,
-    figure: text,
-    words: `${short(distance)} × the noise ${side} for balance`,
-    tone: 'warn',
+  const say = (words: string, tone: RatioWords['tone']): RatioWords => {
+    return { name, figure: text, words, tone };
   };
+  if (ratio >= UNBOUND_RATIO) {
+    return say('more motion than gravity can hold: unbound as a whole', 'bad');
+  }
+  if (ratio === 0) return say('nothing moves: a cold start that will collapse', 'bad');
+  if (noise === null || noise === 0) {
+    return say('bodies too few or too unequal for one moment to tell: average over orbits', 'warn');
+  }
+  const distance = Math.abs(ratio - 1) / noise;
+  if (distance <= WITHIN_NOISE) return say('1, as in equilibrium, within the noise', 'good');
+  const times = `by ${short(distance)} times the noise`;
+  return ratio > 1
+    ? say(`above 1 ${times}: more motion than equilibrium has`, 'warn')
+    : say(`below 1 ${times}: less motion than equilibrium has`, 'warn');
+}
+
+/** The noise of finite N, or null where so few bodies carry the mass that it has no meaning. */
+export function noiseOf(record: MeasureRecord, set: 'whole' | 'bound'): number | null {
+  const isDominated = record.remarks.some(({ code }) => code === 'dominantBody');
+  return isDominated ? null : record[set].noise;
 }

@@ -9,7 +9,7 @@ import {
 } from '../index.ts';
 import { duration, figure, short, vectorText, wholeNumber, yearsText } from './figure.ts';
 import { columns, PAGE_WIDTH, shorten, signRoom, wrap } from './layout.ts';
-import { isSoftened, ratioWords } from './ratioWords.ts';
+import { isSoftened, noiseOf, ratioWords } from './ratioWords.ts';
 import { remarksText } from './remarks.ts';
 import { NO_PAINT, type Paint } from './style.ts';
 
@@ -49,9 +49,8 @@ function heading(record: MeasureRecord, paint: Paint): string {
     record.time === null
       ? 'time not stated'
       : `time ${withUnit(short(record.time, 8), unitText(TIME, unitSystemOf(record)))}`;
-  const from =
-    units.from === gravity.from ? `(${units.from})` : `(${units.from}; G from ${gravity.from})`;
-  const facts = `${bodies(record.whole.particles)}, ${time}, units ${units.value} with G = ${short(gravity.value, 9)} ${from}, ${softened}`;
+  const said = `units ${units.value} (${units.from}), G = ${short(gravity.value, 9)} (${gravity.from})`;
+  const facts = `${bodies(record.whole.particles)}, ${time}, ${said}, ${softened}`;
   return `${paint.strong(shorten(record.file, PAGE_WIDTH))}\n${wrap(facts, '  ')}`;
 }
 
@@ -59,7 +58,7 @@ const TIME = { mass: 0, length: 0, time: 1 } as const;
 
 function ratio(record: MeasureRecord, paint: Paint): string {
   const { name, figure: text, words, tone } = ratioWords(record);
-  const lines = [`${paint.strong(`${name}  ${text}`)}${words ? `   ${paint[tone](words)}` : ''}`];
+  const lines = [paint.strong(`${name}  ${text}`), `  ${paint[tone](words)}`];
   if (isSoftened(record)) {
     const { potential, clausius, virialRatio } = record.whole;
     const share = potential === 0 ? null : Math.abs(clausius / potential);
@@ -73,29 +72,40 @@ function ratio(record: MeasureRecord, paint: Paint): string {
   return lines.join('\n');
 }
 
+type Sets = 'whole' | 'bound';
+
 function energies(record: MeasureRecord, units: UnitSystem, paint: Paint): string {
   const { whole, bound } = record;
   const same = bound.particles === whole.particles;
-  const sets = same ? [whole] : [whole, bound];
-  const row = (label: string, cell: (set: typeof whole) => string): string[] => [
+  const sets: Sets[] = same ? ['whole'] : ['whole', 'bound'];
+  const row = (label: string, cell: (name: Sets) => string): string[] => [
     label,
-    ...sets.map((set) => signRoom(cell(set))),
+    ...sets.map((name) => signRoom(cell(name))),
   ];
+  const softened = isSoftened(record);
   const rows = [
     ['', ...(same ? [' all bodies (all are bound)'] : [' all bodies', ' bound bodies'])],
-    row('bodies', (set) => wholeNumber(set.particles)),
-    row(labelled('mass', 'whole.mass', units), (set) => figure(set.mass)),
-    row(labelled('T', 'whole.kinetic', units), (set) => figure(set.kinetic)),
-    row(labelled('U', 'whole.potential', units), (set) =>
-      figure(set.potential, set.potentialError),
+    row('bodies', (name) => wholeNumber(record[name].particles)),
+    row('mass', (name) => figure(record[name].mass)),
+    row('T', (name) => figure(record[name].kinetic)),
+    // Without softening the two are one.
+    row(softened ? 'U' : 'U = W', (name) =>
+      figure(record[name].potential, record[name].potentialError),
     ),
-    row(labelled('W', 'whole.clausius', units), (set) => figure(set.clausius, set.clausiusError)),
-    row(labelled('T + U', 'whole.energy', units), (set) => figure(set.energy, set.potentialError)),
-    row('2T/|U|', (set) => figure(set.virialRatio, set.noise)),
-    row('2T/|W|', (set) => figure(set.clausiusRatio, set.noise)),
+    ...(softened
+      ? [row('W', (name) => figure(record[name].clausius, record[name].clausiusError))]
+      : []),
+    row('T + U', (name) => figure(record[name].energy, record[name].potentialError)),
+    row('2T/|U|', (name) => figure(record[name].virialRatio, noiseOf(record, name))),
+    ...(softened
+      ? [row('2T/|W|', (name) => figure(record[name].clausiusRatio, noiseOf(record, name)))]
+      : []),
   ];
   const table = columns(rows, ['left', 'left', 'left'], '  ').split('\n');
-  return [paint.faint(table[0]), ...table.slice(1)].join('\n');
+  // Beside the labels they would make the lines of two sets too wide for a page.
+  const [mass, energy] = ['whole.mass', 'whole.kinetic'].map((key) => unitOf(key, units));
+  const unitLine = mass === '' ? [] : [paint.faint(`  masses in ${mass}, energies in ${energy}`)];
+  return [paint.faint(table[0]), ...table.slice(1), ...unitLine].join('\n');
 }
 
 function radii(record: MeasureRecord, units: UnitSystem, paint: Paint): string {
@@ -184,15 +194,19 @@ function engine(record: MeasureRecord, paint: Paint): string {
     direct: 'direct sum over all pairs',
     file: 'potentials from the file',
   }[origin];
-  const text = `${how}; U to ${short(errorMeasured)} (asked for ${short(errorWanted)}); ${threads} thread${threads === 1 ? '' : 's'}, ${duration(seconds.total)}`;
+  const text = `${how}; U to ${short(errorMeasured)} of itself (asked for ${short(errorWanted)}); ${threads} thread${threads === 1 ? '' : 's'}, ${duration(seconds.total)}`;
   return paint.faint(wrap(text, '  '));
 }
 
-/** `T [Msun (km/s)²]`: a label and the unit that the registry's dimension has in these units. */
+/** `virial radius [pc]`: a label and the unit that the registry's dimension has in these units. */
 function labelled(label: string, key: string, units: UnitSystem): string {
-  const quantity = findQuantity(key);
-  const unit = quantity === undefined ? '' : unitText(quantity.dimension, units);
+  const unit = unitOf(key, units);
   return unit === '' ? label : `${label} [${unit}]`;
+}
+
+function unitOf(key: string, units: UnitSystem): string {
+  const quantity = findQuantity(key);
+  return quantity === undefined ? '' : unitText(quantity.dimension, units);
 }
 
 function withUnit(text: string, unit: string): string {

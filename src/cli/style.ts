@@ -19,12 +19,16 @@ export const NO_PAINT: Paint = {
   bad: plain,
 };
 
+/** The stream is looked at here, and may be another than the one Node would ask. */
+const style = (format: Parameters<typeof util.styleText>[0]) => (text: string) =>
+  util.styleText(format, text, { validateStream: false });
+
 const COLOURS: Paint = {
-  strong: (text) => util.styleText('bold', text),
-  faint: (text) => util.styleText('dim', text),
-  good: (text) => util.styleText('green', text),
-  warn: (text) => util.styleText('yellow', text),
-  bad: (text) => util.styleText('red', text),
+  strong: style('bold'),
+  faint: style('dim'),
+  good: style('green'),
+  warn: style('yellow'),
+  bad: style('red'),
 };
 
 /** Colours for a stream; none unless it is a terminal, under NO_COLOR (no-color.org), or on a dumb one. */

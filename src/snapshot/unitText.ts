@@ -13,11 +13,18 @@ const SUPERSCRIPTS = ['⁰', '¹', '²', '³', '⁴', '⁵', '⁶', '⁷', '⁸'
 export function unitText(dimension: Dimension, units: UnitSystem): string {
   if (units.mass === '' && units.length === '' && units.velocity === '') return '';
   const { mass, length, time } = dimension;
-  const viaVelocity = time < 0 && length + time >= 0;
+  const lengths = length + time;
+  // au (au/yr) is better said as au²/yr, but kpc km/s has no shorter form.
+  const isQuotient = units.velocity === `${units.length}/${units.time}`;
+  if (isQuotient && time < 0 && lengths > 0) {
+    const above = [raise(units.mass, mass), raise(units.length, length)].filter(Boolean).join(' ');
+    return `${above}/${raise(units.time, -time)}`;
+  }
+  const viaVelocity = time < 0 && lengths >= 0;
   const factors: readonly (readonly [symbol: string, power: number])[] = viaVelocity
     ? [
         [units.mass, mass],
-        [units.length, length + time],
+        [units.length, lengths],
         [units.velocity, -time],
       ]
     : [
@@ -26,12 +33,13 @@ export function unitText(dimension: Dimension, units: UnitSystem): string {
         [units.time, time],
       ];
   return factors
-    .filter(([, power]) => power !== 0)
     .map(([symbol, power]) => raise(symbol, power))
+    .filter(Boolean)
     .join(' ');
 }
 
 function raise(symbol: string, power: number): string {
+  if (power === 0) return '';
   if (power === 1) return symbol;
   const exponent = String(Math.abs(power))
     .split('')
