@@ -17,7 +17,7 @@ import type { Particles } from './snapshot/particles.ts';
 import type { FieldName, ReadOptions, SnapshotDescription } from './snapshot/reading.ts';
 import type { AveragedBalance } from './survey/average.ts';
 import type { MakeSnapshotOptions } from './survey/make.ts';
-import type { Stage, SurveyOptions } from './survey/measure.ts';
+import type { SurveyOptions } from './survey/measure.ts';
 
 export {
   EXIT,
@@ -114,12 +114,7 @@ export async function measureSnapshot(
 ): Promise<MeasureRecord> {
   const { onStage, ...measurement } = options;
   const { measureParticles } = await import('./dynamics/measure.ts');
-  return measureParticles(particles, measurement, crew, {
-    readSeconds: 0,
-    ...(onStage && {
-      onStage: (stage: Stage, fraction: number | null) => onStage(stage, fraction),
-    }),
-  });
+  return measureParticles(particles, measurement, crew, { onStage });
 }
 
 /**

@@ -5,15 +5,14 @@ import {
   EXIT,
   findSnapshots,
   InputError,
-  InterruptedError,
   makeSnapshot,
   measureFile,
   measureSnapshot,
-  startCrew,
   type Crew,
   type ExitCode,
   type MeasureRecord,
 } from '../index.ts';
+import { turn, withCrew } from './crew.ts';
 import { duration, figure, short, significant, wholeNumber } from './figure.ts';
 import { wrap } from './layout.ts';
 import { startProgress, type Progress } from './progress.ts';
@@ -32,19 +31,16 @@ const STARS = 100_000;
 const SEED = 7;
 
 export async function demo(options: DemoOptions, streams: Streams): Promise<ExitCode> {
-  const crew = startCrew(options.threads);
-  const progress = startProgress(streams.stderr, options.quiet === true, crew);
-  const stop = (): void => void crew.close();
-  streams.interrupt.addEventListener('abort', stop, { once: true });
   const paint = paintFor(streams.stdout, streams.env);
-  try {
-    await write(streams.stdout, await solarSystem(crew, progress, streams, paint));
-    await write(streams.stdout, await shoal(crew, progress, paint));
-  } finally {
-    streams.interrupt.removeEventListener('abort', stop);
-    progress.close();
-    await crew.close();
-  }
+  await withCrew(options.threads, streams.interrupt, async (crew) => {
+    const progress = startProgress(streams.stderr, options.quiet === true, crew);
+    try {
+      await write(streams.stdout, await solarSystem(crew, progress, streams, paint));
+      await write(streams.stdout, await shoal(crew, progress, paint));
+    } finally {
+      progress.close();
+    }
+  });
   return EXIT.done;
 }
 
@@ -57,8 +53,7 @@ async function solarSystem(
   const records: MeasureRecord[] = [];
   const files = await solarFiles();
   for (const [index, file] of files.entries()) {
-    await new Promise((resolve) => setImmediate(resolve));
-    if (streams.interrupt.aborted) throw new InterruptedError();
+    await turn(streams.interrupt);
     progress.say('the solar system over twelve years', index / files.length);
     records.push(await measureFile(file, { read: { signal: streams.interrupt } }, crew));
   }

@@ -1,15 +1,14 @@
 /** `settlemark make`: writes a snapshot of a model. */
 import {
   EXIT,
-  InterruptedError,
   makeSnapshot,
-  startCrew,
   UsageError,
   writeSnapshot,
   type ExitCode,
   type ModelName,
   type SofteningKernel,
 } from '../index.ts';
+import { turn, withCrew } from './crew.ts';
 import { short, wholeNumber } from './figure.ts';
 import { write, type Streams } from './streams.ts';
 
@@ -46,19 +45,13 @@ export async function make(
   const count = required('--count', 'the number of bodies', options.count);
   const out = required('--out', 'the file to write', options.out);
   const format = asked ?? formatByEnding(out);
-  const crew = startCrew(threads);
-  const stop = (): void => void crew.close();
-  streams.interrupt.addEventListener('abort', stop, { once: true });
-  try {
+  await withCrew(threads, streams.interrupt, async (crew) => {
     // The model's name is checked by the library, which knows the models.
-    const particles = await makeSnapshot({ ...rest, count, model: model as ModelName, seed }, crew);
-    await new Promise((resolve) => setImmediate(resolve));
-    if (streams.interrupt.aborted) throw new InterruptedError();
+    const wanted = { ...rest, count, model: model as ModelName, seed };
+    const particles = await makeSnapshot(wanted, crew);
+    await turn(streams.interrupt);
     await writeSnapshot(out, particles, format);
-  } finally {
-    streams.interrupt.removeEventListener('abort', stop);
-    await crew.close();
-  }
+  });
   if (!quiet) {
     await write(streams.stderr, summary(model, format, { ...options, count, out, seed }));
   }

@@ -1,16 +1,15 @@
 /** `settlemark measure`: one record a snapshot. */
 import {
   findSnapshots,
-  InterruptedError,
   measureFile,
   parseColumns,
-  startCrew,
   type CentreMethod,
   type ExitCode,
   type MeasureRecord,
   type SofteningKernel,
   type SurveyOptions,
 } from '../index.ts';
+import { turn, withCrew } from './crew.ts';
 import { eachPath } from './many.ts';
 import { formatOf, refuseOverwriting, withOutput, type Format } from './output.ts';
 import { startProgress } from './progress.ts';
@@ -61,12 +60,9 @@ export async function measure(
   const isSeveral = args.length > 1 || files.length > 1;
   const remarksApart = !quiet && (format !== 'table' || out !== undefined);
 
-  const crew = startCrew(threads);
-  const progress = startProgress(streams.stderr, quiet, crew);
-  const stop = (): void => void crew.close();
-  streams.interrupt.addEventListener('abort', stop, { once: true });
-  try {
-    return await withOutput(out, streams, async (sink) => {
+  return withCrew(threads, streams.interrupt, async (crew) => {
+    const progress = startProgress(streams.stderr, quiet, crew);
+    return withOutput(out, streams, async (sink) => {
       const records: MeasureRecord[] = [];
       let begun = 0;
       const form = await formatter(format, isSeveral, out === undefined ? streams : null);
@@ -74,9 +70,7 @@ export async function measure(
         files,
         streams,
         async (file) => {
-          // Timers and signals get their turn even if all the work is done on this thread.
-          await new Promise((resolve) => setImmediate(resolve));
-          if (streams.interrupt.aborted) throw new InterruptedError();
+          await turn(streams.interrupt);
           const name = files.length > 1 ? `${++begun} of ${files.length}, ${file}` : file;
           const record = await measureFile(
             file,
@@ -96,12 +90,8 @@ export async function measure(
         await sink(`${JSON.stringify(isSeveral ? records : records[0], null, 2)}\n`);
       }
       return code;
-    });
-  } finally {
-    streams.interrupt.removeEventListener('abort', stop);
-    progress.close();
-    await crew.close();
-  }
+    }).finally(() => progress.close());
+  });
 }
 
 /** Text of one record in a format that is written record by record. */

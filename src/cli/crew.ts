@@ -1,0 +1,40 @@
+/** A crew for the time of one command, which ends when the user wants the work to end. */
+import { InterruptedError, startCrew, type Crew } from '../index.ts';
+
+/**
+ * Runs `work` with a crew and closes it after.
+ *
+ * Before each round the event loop gets its turn: a crew of one works on this thread, where signals
+ * and the progress line would otherwise wait until all is done.
+ * @throws InterruptedError once `interrupt` is aborted
+ */
+export async function withCrew<T>(
+  threads: number | undefined,
+  interrupt: AbortSignal,
+  work: (crew: Crew) => Promise<T>,
+): Promise<T> {
+  const crew = startCrew(threads);
+  const stop = (): void => void crew.close();
+  interrupt.addEventListener('abort', stop, { once: true });
+  const polite: Crew = {
+    threads: crew.threads,
+    run: async (module, name, argument, jobs) => {
+      await turn(interrupt);
+      return crew.run(module, name, argument, jobs);
+    },
+    progress: () => crew.progress(),
+    close: () => crew.close(),
+  };
+  try {
+    return await work(polite);
+  } finally {
+    interrupt.removeEventListener('abort', stop);
+    await crew.close();
+  }
+}
+
+/** Lets signals and timers have their turn. @throws InterruptedError if one of them was the user's */
+export async function turn(interrupt: AbortSignal): Promise<void> {
+  await new Promise((resolve) => setImmediate(resolve));
+  if (interrupt.aborted) throw new InterruptedError();
+}
