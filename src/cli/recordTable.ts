@@ -24,7 +24,11 @@ export function recordTable(record: MeasureRecord, paint: Paint = NO_PAINT): str
     scalars(record, units),
     frame(record, units),
     engine(record, paint),
-    remarksText(record.remarks, paint),
+    // What softening does to the ratio stands beside the ratio already.
+    remarksText(
+      record.remarks.filter(({ code }) => code !== 'softenedRatio'),
+      paint,
+    ),
   ];
   return `${parts.filter((part) => part !== '').join('\n\n')}\n`;
 }
@@ -49,7 +53,7 @@ function heading(record: MeasureRecord, paint: Paint): string {
     record.time === null
       ? 'time not stated'
       : `time ${withUnit(short(record.time, 8), unitText(TIME, unitSystemOf(record)))}`;
-  const said = `units ${units.value} (${units.from}), G = ${short(gravity.value, 9)} (${gravity.from})`;
+  const said = `units ${units.value} (${units.from}), G\u00a0=\u00a0${short(gravity.value, 9)} (${gravity.from})`;
   const facts = `${bodies(record.whole.particles)}, ${time}, ${said}, ${softened}`;
   return `${paint.strong(shorten(record.file, PAGE_WIDTH))}\n${wrap(facts, '  ')}`;
 }
@@ -194,7 +198,7 @@ function engine(record: MeasureRecord, paint: Paint): string {
     direct: 'direct sum over all pairs',
     file: 'potentials from the file',
   }[origin];
-  const text = `${how}; U to ${short(errorMeasured)} of itself (asked for ${short(errorWanted)}); ${threads} thread${threads === 1 ? '' : 's'}, ${duration(seconds.total)}`;
+  const text = `${how}; U to ${short(errorMeasured)} of itself (asked for ${short(errorWanted)}); ${threads}\u00a0thread${threads === 1 ? '' : 's'}, ${duration(seconds.total)}`;
   return paint.faint(wrap(text, '  '));
 }
 
