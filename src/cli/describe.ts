@@ -6,7 +6,8 @@ import {
   type SnapshotDescription,
 } from '../index.ts';
 import { bytesText, short, wholeNumber } from './figure.ts';
-import { columns, PAGE_WIDTH, printable, shorten, wrap } from './layout.ts';
+import { columns } from './columns.ts';
+import { PAGE_WIDTH, printable, shorten, wrap } from './layout.ts';
 import { eachPath } from './many.ts';
 import { formatOf, refuseOverwriting, withOutput } from './output.ts';
 import { remarksText } from './remarks.ts';

@@ -8,7 +8,8 @@ import {
   type UnitSystem,
 } from '../index.ts';
 import { duration, figure, short, vectorText, wholeNumber, yearsText } from './figure.ts';
-import { columns, PAGE_WIDTH, shorten, signRoom, wrap } from './layout.ts';
+import { columns, signRoom } from './columns.ts';
+import { PAGE_WIDTH, shorten, wrap } from './layout.ts';
 import { isSoftened, noiseOf, ratioWords } from './ratioWords.ts';
 import { remarksText } from './remarks.ts';
 import { NO_PAINT, type Paint } from './style.ts';

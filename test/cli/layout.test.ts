@@ -1,5 +1,6 @@
 import { expect, it } from 'vitest';
-import { columns, printable, shorten, signRoom, wrap } from '../../src/cli/layout.ts';
+import { columns, signRoom } from '../../src/cli/columns.ts';
+import { printable, shorten, wrap } from '../../src/cli/layout.ts';
 
 it('wraps words and breaks only those that are longer than a line', () => {
   const text = `${'word '.repeat(30)}${'x'.repeat(200)} end`;
