@@ -54,8 +54,11 @@ class Candidates {
 const candidates = new Candidates();
 let stack = new Int32Array(4096);
 
-/** Collects all bodies within `radius` of a point. */
-function collect(tree: Octree, px: number, py: number, pz: number, radius: number): void {
+/** A group whose sphere holds more bodies than this is searched body by body instead. */
+const MOST_CANDIDATES = 768;
+
+/** Collects all bodies within `radius` of a point; false if they are more than {@link MOST_CANDIDATES}. */
+function collect(tree: Octree, px: number, py: number, pz: number, radius: number): boolean {
   const { geometry: G, topology: T, bodies } = tree;
   const { x, y, z, mass } = bodies;
   const radius2 = radius * radius;
@@ -74,15 +77,14 @@ function collect(tree: Octree, px: number, py: number, pz: number, radius: numbe
     const children = T[t + NODE_CHILDREN];
     if (children > 0) {
       if (depth + 8 > stack.length) {
-        const longer = new Int32Array(stack.length * 2);
-        longer.set(stack);
-        stack = longer;
+        stack = doubled(stack);
       }
       const first = T[t + NODE_CHILD];
       for (let child = first + children - 1; child >= first; child--) stack[depth++] = child;
       continue;
     }
     const end = T[t + NODE_END];
+    if (count > MOST_CANDIDATES) return false;
     candidates.hold(count + end - T[t + NODE_BEGIN]);
     const { x: cx, y: cy, z: cz, mass: cm } = candidates;
     for (let i = T[t + NODE_BEGIN]; i < end; i++) {
@@ -98,6 +100,7 @@ function collect(tree: Octree, px: number, py: number, pz: number, radius: numbe
     }
   }
   candidates.count = count;
+  return true;
 }
 
 /** Squared distances and masses of the nearest bodies so far, nearest first; the body itself is one. */
@@ -105,7 +108,7 @@ const nearest2 = new Float64Array(64);
 const nearestMass = new Float64Array(64);
 
 /** Finds the `wanted` nearest candidates of a point, itself included; returns how many were found. */
-function findNearest(px: number, py: number, pz: number, wanted: number): number {
+function nearestCandidates(px: number, py: number, pz: number, wanted: number): number {
   const { x, y, z, mass, count } = candidates;
   let found = 0;
   let worst = Infinity;
@@ -115,92 +118,128 @@ function findNearest(px: number, py: number, pz: number, wanted: number): number
     const dz = z[k] - pz;
     const d2 = dx * dx + dy * dy + dz * dz;
     if (d2 >= worst) continue;
-    let at = found < wanted ? found++ : wanted - 1;
-    for (; at > 0 && nearest2[at - 1] > d2; at--) {
-      nearest2[at] = nearest2[at - 1];
-      nearestMass[at] = nearestMass[at - 1];
-    }
-    nearest2[at] = d2;
-    nearestMass[at] = mass[k];
+    found = insertNearest(d2, mass[k], found, wanted);
     if (found === wanted) worst = nearest2[wanted - 1];
   }
   return found;
 }
 
-/** Mean density of a leaf seen coarsely: its mass over the sphere of its radius, or its parent's. */
-export function coarseDensity(tree: Octree, slot: number, parent: number): number {
-  const { geometry: G, topology: T } = tree;
-  const few = T[slot * TOPOLOGY + NODE_END] - T[slot * TOPOLOGY + NODE_BEGIN] < 4;
-  const g = (few ? parent : slot) * GEOMETRY;
-  const radius = G[g + NODE_RADIUS];
-  return radius > 0 ? G[g + NODE_MASS] / ((4 / 3) * Math.PI * radius ** 3) : 0;
+/** Puts a body into the list of the nearest, which grows up to `wanted`; returns its length. */
+function insertNearest(d2: number, mass: number, found: number, wanted: number): number {
+  let at = found < wanted ? found : wanted - 1;
+  for (; at > 0 && nearest2[at - 1] > d2; at--) {
+    nearest2[at] = nearest2[at - 1];
+    nearestMass[at] = nearestMass[at - 1];
+  }
+  nearest2[at] = d2;
+  nearestMass[at] = mass;
+  return Math.min(found + 1, wanted);
 }
 
-/** Searched about a leaf: its radius plus this many times the expected distance of the j-th neighbour. */
-const SEARCH_MARGIN = 1.35;
+const childOrder = new Int32Array(8);
+const childDistance2 = new Float64Array(8);
+
+/** The same for a point and all bodies of the tree, nearest cells first. */
+function nearestInTree(tree: Octree, px: number, py: number, pz: number, wanted: number): number {
+  const { geometry: G, topology: T, bodies } = tree;
+  const { x, y, z, mass } = bodies;
+  let found = 0;
+  let worst = Infinity;
+  let depth = 1;
+  stack[0] = 0;
+  while (depth > 0) {
+    const slot = stack[--depth];
+    const t = slot * TOPOLOGY;
+    const children = T[t + NODE_CHILDREN];
+    if (children === 0) {
+      for (let i = T[t + NODE_BEGIN]; i < T[t + NODE_END]; i++) {
+        const dx = x[i] - px;
+        const dy = y[i] - py;
+        const dz = z[i] - pz;
+        const d2 = dx * dx + dy * dy + dz * dz;
+        if (d2 >= worst) continue;
+        found = insertNearest(d2, mass[i], found, wanted);
+        if (found === wanted) worst = nearest2[wanted - 1];
+      }
+      continue;
+    }
+    if (depth + 8 > stack.length) stack = doubled(stack);
+    const reachWorst = Math.sqrt(worst);
+    const first = T[t + NODE_CHILD];
+    let open = 0;
+    for (let child = first; child < first + children; child++) {
+      const g = child * GEOMETRY;
+      const dx = G[g] - px;
+      const dy = G[g + 1] - py;
+      const dz = G[g + 2] - pz;
+      const d2 = dx * dx + dy * dy + dz * dz;
+      const reach = G[g + NODE_RADIUS] + reachWorst;
+      if (d2 > reach * reach) continue;
+      let at = open++;
+      for (; at > 0 && childDistance2[at - 1] < d2; at--) {
+        childDistance2[at] = childDistance2[at - 1];
+        childOrder[at] = childOrder[at - 1];
+      }
+      childDistance2[at] = d2;
+      childOrder[at] = child;
+    }
+    for (let k = 0; k < open; k++) stack[depth++] = childOrder[k];
+  }
+  return found;
+}
+
+function doubled(old: Int32Array): Int32Array<ArrayBuffer> {
+  const longer = new Int32Array(old.length * 2);
+  longer.set(old);
+  return longer;
+}
+
+/** Bodies are measured group by group: the largest nodes with at most this many. */
+const GROUP = 32;
+/** Searched about a group: its radius plus this many times the expected distance of the j-th neighbour. */
+const SEARCH_MARGIN = 1.05;
 
 export function sumDensities(round: DensityRound, takeJob: TakeJob): void {
   const { tree, threshold, neighbours: j, density } = round;
   const { geometry: G, topology: T, bodies } = tree;
+  const { x, y, z, input } = bodies;
   const [ox, oy, oz] = round.origin;
-  // A search that starts from nothing (coincident bodies) starts from here and grows.
-  const smallest = (1e-3 * G[NODE_RADIUS]) / Math.cbrt(bodies.count);
   for (let job = takeJob(); job >= 0; job = takeJob()) {
     const sums = round.sums.subarray(job * DENSITY_SUMS, (job + 1) * DENSITY_SUMS);
-    const add = (rho: number, px: number, py: number, pz: number) => {
-      const dx = px - ox;
-      const dy = py - oy;
-      const dz = pz - oz;
-      sums[0] += rho;
-      sums[1] += rho * dx;
-      sums[2] += rho * dy;
-      sums[3] += rho * dz;
-      const q = rho * rho;
-      sums[4] += q;
-      sums[5] += q * dx;
-      sums[6] += q * dy;
-      sums[7] += q * dz;
-      sums[8] += q * (dx * dx + dy * dy + dz * dz);
-    };
-    eachLeaf(tree, job, (slot, parent) => {
-      const coarse = coarseDensity(tree, slot, parent);
+    eachGroup(tree, job, (slot, coarse) => {
+      if (coarse < threshold) return;
       const t = slot * TOPOLOGY;
       const g = slot * GEOMETRY;
       const begin = T[t + NODE_BEGIN];
       const end = T[t + NODE_END];
-      if (coarse < threshold) return;
-      const few = end - begin < 4;
-      const size = few
-        ? T[parent * TOPOLOGY + NODE_END] - T[parent * TOPOLOGY + NODE_BEGIN]
-        : end - begin;
-      const radius = G[(few ? parent : slot) * GEOMETRY + NODE_RADIUS];
-      const margin = radius * SEARCH_MARGIN * Math.cbrt((j + 1) / Math.max(size, 1));
-      const searched = G[g + NODE_RADIUS] + margin;
-      collect(tree, G[g], G[g + 1], G[g + 2], searched);
-      let collectedFor = slot;
+      const radius = G[g + NODE_RADIUS];
+      const searched = radius * (1 + SEARCH_MARGIN * Math.cbrt((j + 1) / (end - begin)));
+      const together = collect(tree, G[g], G[g + 1], G[g + 2], searched);
       for (let i = begin; i < end; i++) {
-        const px = bodies.x[i];
-        const py = bodies.y[i];
-        const pz = bodies.z[i];
-        if (collectedFor !== slot) {
-          collect(tree, G[g], G[g + 1], G[g + 2], searched);
-          collectedFor = slot;
-        }
-        const fromCentre = Math.hypot(px - G[g], py - G[g + 1], pz - G[g + 2]);
-        let sure = searched - fromCentre;
-        let found = findNearest(px, py, pz, j + 1);
-        while (found <= j || nearest2[j] > sure * sure) {
-          sure = Math.max(sure * 1.6, smallest);
-          collect(tree, px, py, pz, sure);
-          collectedFor = -1;
-          found = findNearest(px, py, pz, j + 1);
-        }
+        const px = x[i];
+        const py = y[i];
+        const pz = z[i];
+        const sure = searched - Math.hypot(px - G[g], py - G[g + 1], pz - G[g + 2]);
+        const found = together ? nearestCandidates(px, py, pz, j + 1) : 0;
+        if (found <= j || !(nearest2[j] <= sure * sure)) nearestInTree(tree, px, py, pz, j + 1);
         let mass = 0;
         for (let k = 1; k < j; k++) mass += nearestMass[k];
         const r3 = nearest2[j] * Math.sqrt(nearest2[j]);
         const rho = r3 > 0 ? mass / ((4 / 3) * Math.PI * r3) : 0;
-        if (density.length > 0) density[bodies.input[i]] = rho;
-        add(rho, px, py, pz);
+        if (density.length > 0) density[input[i]] = rho;
+        const dx = px - ox;
+        const dy = py - oy;
+        const dz = pz - oz;
+        const q = rho * rho;
+        sums[0] += rho;
+        sums[1] += rho * dx;
+        sums[2] += rho * dy;
+        sums[3] += rho * dz;
+        sums[4] += q;
+        sums[5] += q * dx;
+        sums[6] += q * dy;
+        sums[7] += q * dz;
+        sums[8] += q * (dx * dx + dy * dy + dz * dz);
         if (coarse < 4 * threshold) {
           sums[9] += rho;
           sums[10] += coarse;
@@ -210,21 +249,37 @@ export function sumDensities(round: DensityRound, takeJob: TakeJob): void {
   }
 }
 
-/** Calls `visit` for each leaf of a branch with its slot and its parent's (itself, for a lone root). */
-export function eachLeaf(
+/** Mean density of a node: its mass over the sphere of its radius; of a lone body 0. */
+function coarseDensity(tree: Octree, slot: number): number {
+  const radius = tree.geometry[slot * GEOMETRY + NODE_RADIUS];
+  const mass = tree.geometry[slot * GEOMETRY + NODE_MASS];
+  return radius > 0 ? mass / ((4 / 3) * Math.PI * radius ** 3) : 0;
+}
+
+/**
+ * Calls `visit` for each group of a branch (its largest nodes with at most {@link GROUP} bodies, and
+ * leaves) with its slot and coarse density; a small group takes the density of the cell above it.
+ */
+export function eachGroup(
   tree: Octree,
   branch: number,
-  visit: (slot: number, parent: number) => void,
+  visit: (slot: number, coarse: number) => void,
 ): void {
   const { topology: T, branchRoots, branchSlots } = tree;
+  const size = (slot: number) => T[slot * TOPOLOGY + NODE_END] - T[slot * TOPOLOGY + NODE_BEGIN];
   const root = branchRoots[branch];
   const first = branchSlots[2 * branch];
-  if (T[root * TOPOLOGY + NODE_CHILDREN] === 0) visit(root, root);
+  if (size(root) <= GROUP || T[root * TOPOLOGY + NODE_CHILDREN] === 0) {
+    visit(root, coarseDensity(tree, root));
+    return;
+  }
   for (let k = first - 1; k < branchSlots[2 * branch + 1]; k++) {
     const parent = k < first ? root : k;
+    if (size(parent) <= GROUP) continue;
     const child = T[parent * TOPOLOGY + NODE_CHILD];
     for (let c = child; c < child + T[parent * TOPOLOGY + NODE_CHILDREN]; c++) {
-      if (T[c * TOPOLOGY + NODE_CHILDREN] === 0) visit(c, parent);
+      if (size(c) > GROUP && T[c * TOPOLOGY + NODE_CHILDREN] > 0) continue;
+      visit(c, coarseDensity(tree, size(c) < 6 ? parent : c));
     }
   }
 }

@@ -7,7 +7,7 @@
  */
 import { compensatedSum } from '../numerics/compensated.ts';
 import { crewOfOne, type Crew, type TaskModule } from '../parallel/crew.ts';
-import { coarseDensity, DENSITY_SUMS, eachLeaf } from './neighbours.task.ts';
+import { DENSITY_SUMS, eachGroup } from './neighbours.task.ts';
 import { GEOMETRY, NODE_BEGIN, NODE_END, TOPOLOGY, type Octree } from './tree.ts';
 
 const TASK: TaskModule<typeof import('./neighbours.task.ts')> = {
@@ -74,7 +74,7 @@ export async function densityCentre(
 function survey(tree: Octree, all: boolean): { origin: Float64Array; threshold: number } {
   const { geometry: G, topology: T } = tree;
   const sums = new Float64Array(4);
-  everyLeaf(tree, (slot, rho) => {
+  everyGroup(tree, (slot, rho) => {
     const g = slot * GEOMETRY;
     const w = rho * (T[slot * TOPOLOGY + NODE_END] - T[slot * TOPOLOGY + NODE_BEGIN]);
     sums[0] += w;
@@ -91,7 +91,7 @@ function survey(tree: Octree, all: boolean): { origin: Float64Array; threshold: 
     rho > 0 ? Math.min(bins - 1, Math.max(1, Math.floor(Math.log2(rho) * 4) + bins / 2)) : 0;
   const centreWeight = new Float64Array(bins);
   const coreWeight = new Float64Array(bins);
-  everyLeaf(tree, (slot, rho) => {
+  everyGroup(tree, (slot, rho) => {
     const g = slot * GEOMETRY;
     const n = T[slot * TOPOLOGY + NODE_END] - T[slot * TOPOLOGY + NODE_BEGIN];
     const bin = binOf(rho);
@@ -123,7 +123,7 @@ function addCoarse(
 ): number[] {
   const { geometry: G, topology: T } = tree;
   const sums = [...measured];
-  everyLeaf(tree, (slot, coarse) => {
+  everyGroup(tree, (slot, coarse) => {
     if (coarse >= threshold) return;
     const g = slot * GEOMETRY;
     const n = T[slot * TOPOLOGY + NODE_END] - T[slot * TOPOLOGY + NODE_BEGIN];
@@ -142,8 +142,8 @@ function addCoarse(
   return sums;
 }
 
-function everyLeaf(tree: Octree, visit: (slot: number, coarse: number) => void): void {
+function everyGroup(tree: Octree, visit: (slot: number, coarse: number) => void): void {
   for (let branch = 0; branch < tree.branchRoots.length; branch++) {
-    eachLeaf(tree, branch, (slot, parent) => visit(slot, coarseDensity(tree, slot, parent)));
+    eachGroup(tree, branch, visit);
   }
 }
