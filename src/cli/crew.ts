@@ -3,9 +3,6 @@ import { InterruptedError, startCrew, type Crew } from '../index.ts';
 
 /**
  * Runs `work` with a crew and closes it after.
- *
- * Before each round the event loop gets its turn: a crew of one works on this thread, where signals
- * and the progress line would otherwise wait until all is done.
  * @throws InterruptedError once `interrupt` is aborted
  */
 export async function withCrew<T>(
@@ -16,17 +13,8 @@ export async function withCrew<T>(
   const crew = startCrew(threads);
   const stop = (): void => void crew.close();
   interrupt.addEventListener('abort', stop, { once: true });
-  const polite: Crew = {
-    threads: crew.threads,
-    run: async (module, name, argument, jobs) => {
-      await turn(interrupt);
-      return crew.run(module, name, argument, jobs);
-    },
-    progress: () => crew.progress(),
-    close: () => crew.close(),
-  };
   try {
-    return await work(polite);
+    return await work(crew);
   } finally {
     interrupt.removeEventListener('abort', stop);
     await crew.close();

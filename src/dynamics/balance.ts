@@ -25,6 +25,9 @@ export function fieldOf(forces: Forces): SetField {
   };
 }
 
+/** Effective bodies, (Σm)²/Σm², below which an expansion for large N says nothing. */
+export const FEWEST_FOR_NOISE = 10;
+
 export interface BalanceResult {
   readonly balance: Balance;
   readonly frame: SetFrame;
@@ -48,7 +51,8 @@ export async function balanceOf(set: BodySet, field: SetField, crew: Crew): Prom
   const depthTwice = field.softened ? sums.clausiusTwice : sums.potentialTwice;
   const leading = field.softened ? clausiusRatio : virialRatio;
   let noise: number | null = null;
-  if (leading !== null && leading > 0 && frame.heavy > 2) {
+  const effective = (frame.mass * frame.mass) / frame.squaredMass;
+  if (leading !== null && leading > 0 && effective >= FEWEST_FOR_NOISE) {
     const depth = field.softened ? field.clausiusShare : field.potential;
     const sum = await noiseSum(set, frame, sums.kinetic, depth, depthTwice, crew);
     noise = (leading * Math.sqrt(sum)) / frame.mass;

@@ -27,18 +27,33 @@ const LARGEST_SHARE = 0.25;
 /** A removal of more than this share of the set is summed again rather than subtracted. */
 const SUM_AGAIN_ABOVE = 0.3;
 
-export async function boundSet(bodies: Bodies, forces: Forces, crew: Crew): Promise<BoundSet> {
+/**
+ * Finds the bound set.
+ * @param specificEnergy - room for one number a body, overwritten
+ */
+export async function boundSet(
+  bodies: Bodies,
+  forces: Forces,
+  specificEnergy: Float64Array,
+  crew: Crew,
+): Promise<BoundSet> {
   const whole = fieldOf(forces);
   const { count } = bodies;
-  const specificEnergy = new Float64Array(new SharedArrayBuffer(count * 8));
   let set: BodySet = { bodies, member: null };
   let field = whole;
   let kept: Uint8Array | null = null;
   for (let round = 0; round < MOST_ROUNDS; round++) {
     const frame = await frameOf(set, crew);
     if (frame.particles === 0) return { set, field, rounds: round, settled: true };
-    const unbound = await countUnbound(set, frame, field.potential, specificEnergy, crew);
+    const countIn = (velocityFrame: typeof frame) =>
+      countUnbound(set, velocityFrame, field.potential, specificEnergy, crew);
+    let unbound = await countIn(frame);
     if (unbound === 0) return { set, field, rounds: round, settled: true };
+    if (round === 0) {
+      // A few fast bodies shift the mean velocity and with it everybody's energy, but not the median.
+      const inMedianFrame = await countIn({ ...frame, frame: medianVelocity(bodies, frame.frame) });
+      unbound = inMedianFrame > 0 ? inMedianFrame : await countIn(frame);
+    }
     if (kept === null) {
       kept = new Uint8Array(new SharedArrayBuffer(count)).fill(1);
       field = copied(whole);
@@ -52,6 +67,22 @@ export async function boundSet(bodies: Bodies, forces: Forces, crew: Crew): Prom
     if (!done) await sumAgain(bodies, kept, forces, field, crew);
   }
   return { set, field, rounds: MOST_ROUNDS, settled: false };
+}
+
+const MEDIAN_SAMPLE = 4095;
+
+/** The frame with its velocity replaced by medians, component by component, over a sample of bodies. */
+function medianVelocity(bodies: Bodies, frame: Float64Array): Float64Array {
+  const robust = frame.slice();
+  const size = Math.min(bodies.count, MEDIAN_SAMPLE);
+  [bodies.vx, bodies.vy, bodies.vz].forEach((column, axis) => {
+    const sample = Float64Array.from(
+      { length: size },
+      (_, k) => column[Math.floor(((k + 0.5) * bodies.count) / size)],
+    ).sort();
+    robust[3 + axis] = sample[size >> 1];
+  });
+  return robust;
 }
 
 /** Unbound members, or the least bound quarter of the set if they are more than that. */

@@ -4,12 +4,13 @@
  * Convention (common practice): cumulative mass with half of each body's own mass, linear between
  * bodies; below the first midpoint the first body's radius, above the last the last one's.
  */
+import type * as LagrangianTask from './lagrangian.task.ts';
 import { crewOfOne, type Crew, type TaskModule } from '../parallel/crew.ts';
 import { addSlices, SLICES, type Bins } from './lagrangian.task.ts';
 import type { LagrangianRadii, Vector } from './record.ts';
 import type { BodySet, SetFrame } from './sums.ts';
 
-const TASK: TaskModule<typeof import('./lagrangian.task.ts')> = {
+const TASK: TaskModule<typeof LagrangianTask> = {
   url: new URL('./lagrangian.task.js', import.meta.url),
   load: () => import('./lagrangian.task.ts'),
 };

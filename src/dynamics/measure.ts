@@ -1,6 +1,6 @@
 /** Particles → record: the order of the work, and nothing else. */
 import { InputError } from '../errors.ts';
-import { sumForces } from '../octree/forces.ts';
+import { PROMISED_SIGMAS, sumForces, type ForceStage } from '../octree/forces.ts';
 import type { Crew } from '../parallel/crew.ts';
 import type { Particles } from '../snapshot/particles.ts';
 import { balanceOf, fieldOf } from './balance.ts';
@@ -11,7 +11,6 @@ import { lagrangianRadii } from './lagrangian.ts';
 import { RECORD_VERSION, type MeasureRecord, type Vector } from './record.ts';
 import { findRemarks } from './remarks.ts';
 import { settle, type MeasureOptions } from './settings.ts';
-import { PROMISED_SIGMAS } from '../octree/forces.ts';
 import { coulombLogarithm, crossingTime, halfMassRelaxationTime, virialRadius } from './times.ts';
 
 /** Pairs of coincident bodies that a remark names. */
@@ -20,7 +19,8 @@ const PAIRS_NAMED = 3;
 export interface MeasureContext {
   /** Seconds that reading took, for the engine's report. */
   readonly readSeconds?: number;
-  readonly onStage?: ((stage: 'forces' | 'dynamics', fraction: number | null) => void) | undefined;
+  readonly onStage?:
+    ((stage: ForceStage | 'dynamics', fraction: number | null) => void) | undefined;
 }
 
 /**
@@ -48,7 +48,6 @@ export async function measureParticles(
   const settings = settle(options, particles);
   const gravity = settings.gravity.value;
   const { kernel, length } = settings.softening.value;
-  context.onStage?.('forces', null);
   const forces = await sumForces(
     particles,
     {
@@ -57,6 +56,7 @@ export async function measureParticles(
       errorWanted: settings.error.value,
       exact: settings.exact.value,
       accelerations: options.accelerations === true,
+      onStage: (stage) => context.onStage?.(stage, null),
     },
     crew,
   );
@@ -77,19 +77,19 @@ export async function measureParticles(
     const [a, b] = coincident[0];
     throw new InputError(
       'input.coincident',
-      `${file}: bodies ${a} and ${b} lie at one point, and ${forces.coincidentPairs} such pairs are in the file`,
+      `${file}: bodies ${a} and ${b} lie at one point (pairs at one point in all: ${forces.coincidentPairs})`,
       'state the softening of the run, or leave these pairs out with --coincident leave-out',
     );
   }
 
   const whole = await balanceOf({ bodies: particles, member: null }, fieldOf(forces), crew);
-  const bound = await boundSet(particles, forces, crew);
+  const scratch = new Float64Array(new SharedArrayBuffer(particles.count * 8));
+  const bound = await boundSet(particles, forces, scratch, crew);
   const boundBalance =
     bound.set.member === null ? whole : await balanceOf(bound.set, bound.field, crew);
   const centreAsked = settings.centre.value;
   const centre = await findCentre(particles, whole.frame, forces, centreAsked, crew);
   const fractions = settings.fractions.value;
-  const scratch = new Float64Array(new SharedArrayBuffer(particles.count * 8));
   const radiiOf = (result: typeof whole, set: typeof bound.set) =>
     lagrangianRadii(set, result.frame, centre.centre, fractions, scratch, crew);
   const lagrangian = await radiiOf(whole, { bodies: particles, member: null });

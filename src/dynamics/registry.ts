@@ -62,12 +62,12 @@ function balance(set: string, whose: string): Quantity[] {
   const forces: Rest = { needs: ['forces'] };
   const both: Rest = { needs: ['velocities', 'forces'] };
   return [
-    quantity(key('particles'), NUMBER, `number of bodies ${whose}`, 'count', { kind: 'integer' }),
+    quantity(key('particles'), NUMBER, `number ${whose}`, 'count', { kind: 'integer' }),
     quantity(key('mass'), MASS, `mass ${whose}`, 'sum'),
     quantity(
       key('kinetic'),
       ENERGY,
-      `kinetic energy T ${whose}, about its own mean velocity`,
+      `kinetic energy T ${whose}, about their own mean velocity`,
       TEXTBOOK,
       { needs: ['velocities'] },
     ),
@@ -119,6 +119,7 @@ function lagrangian(set: string, whose: string): Quantity[] {
     quantity(`${set}.fractions`, NUMBER, `mass fractions ${whose}`, 'setting', list),
     quantity(`${set}.radii`, LENGTH, `radii about the centre that hold them`, 'common practice', {
       ...list,
+      nullable: true,
       error: `${set}.errors`,
     }),
     quantity(`${set}.errors`, LENGTH, '1σ sampling errors of the radii', OURS, {

@@ -3,6 +3,7 @@ import type { Forces } from '../octree/forces.ts';
 import { PROMISED_SIGMAS } from '../octree/forces.ts';
 import type { Particles, Remark } from '../snapshot/particles.ts';
 import { UNIT_SYSTEMS } from '../snapshot/units.ts';
+import { FEWEST_FOR_NOISE } from './balance.ts';
 import type { BoundSet } from './bound.ts';
 import type { Duplicates } from './duplicates.ts';
 import type { CentreMethod, MeasureRecord } from './record.ts';
@@ -43,6 +44,7 @@ const FINDERS: readonly Finder[] = [
   precision,
   scale,
   dominantBody,
+  noNoise,
   softeningTooLarge,
   softenedRatio,
   unbound,
@@ -169,6 +171,19 @@ function dominantBody({ largestMass, frame }: Findings): Remark[] {
   ];
 }
 
+function noNoise({ record, frame, largestMass }: Findings): Remark[] {
+  const { noise, virialRatio, kinetic } = record.whole;
+  if (noise !== null || virialRatio === null || kinetic === 0) return [];
+  if (largestMass > 0.5 * frame.mass && frame.heavy > 2) return []; // said by dominantBody
+  return [
+    {
+      code: 'noNoise',
+      text: `There is no noise of the ratio: ${short(record.effectiveNumber)} effective bodies are too few for statistics (at least ${FEWEST_FOR_NOISE}).`,
+      remedy: 'Average the ratio over many orbits instead of judging one moment.',
+    },
+  ];
+}
+
 function softeningTooLarge({ record }: Findings): Remark[] {
   const { length } = record.settings.softening.value;
   const { coreRadius } = record;
@@ -201,7 +216,8 @@ function unbound({ record, bound }: Findings): Remark[] {
   const remarks: Remark[] = [];
   const { whole } = record;
   const lost = whole.mass > 0 ? 1 - record.bound.mass / whole.mass : 0;
-  if (record.bound.particles === 0 && whole.virialRatio !== null) {
+  if (whole.virialRatio === null) return remarks;
+  if (record.bound.particles === 0) {
     remarks.push({
       code: 'nothingBound',
       text: 'No body is bound to the others: the system is dispersing, or units or G are wrong.',

@@ -2,7 +2,7 @@
 import { UsageError } from '../errors.ts';
 import { SPLINE_SUPPORT, type SofteningKernel } from '../octree/softening.ts';
 import type { Particles } from '../snapshot/particles.ts';
-import { UNIT_SYSTEMS, type UnitSystem } from '../snapshot/units.ts';
+import { UNIT_SYSTEMS, unitSystemNamed, type UnitSystem } from '../snapshot/units.ts';
 import type { CentreMethod, RecordSettings, Setting, SettingOrigin } from './record.ts';
 
 /** What the user may set; everything is optional. */
@@ -65,7 +65,7 @@ function settleGravity(
   particles: Particles,
 ): { gravity: Setting<number>; units: Setting<string> } {
   const stated = positive('--gravity', options.gravity);
-  const named = options.units === undefined ? undefined : unitSystem(options.units);
+  const named = options.units === undefined ? undefined : unitSystemNamed(options.units);
   const levels: { units: UnitSystem | null; gravity: number | null; from: SettingOrigin }[] = [
     { units: named ?? null, gravity: stated ?? null, from: 'option' },
     { units: particles.units, gravity: particles.gravity, from: 'snapshot' },
@@ -93,18 +93,6 @@ function settleGravity(
       from: gravityLevel?.from ?? 'default',
     },
   };
-}
-
-function unitSystem(name: string): UnitSystem {
-  const known = UNIT_SYSTEMS as Readonly<Record<string, UnitSystem>>;
-  if (!Object.hasOwn(known, name)) {
-    throw new UsageError(
-      'usage.units',
-      `--units ${name} is not a known unit system`,
-      `known are ${Object.keys(known).join(', ')}`,
-    );
-  }
-  return known[name];
 }
 
 function settleSoftening(

@@ -1,9 +1,10 @@
 /** Sums over a set of bodies, run by the crew and added in one order. */
+import type * as SumsTask from './sums.task.ts';
 import { CompensatedSum } from '../numerics/compensated.ts';
 import { crewOfOne, type Crew, type TaskModule } from '../parallel/crew.ts';
 import { FIRST_SUMS, SECOND_SUMS, SUM_CHUNK, type Bodies } from './sums.task.ts';
 
-const TASK: TaskModule<typeof import('./sums.task.ts')> = {
+const TASK: TaskModule<typeof SumsTask> = {
   url: new URL('./sums.task.js', import.meta.url),
   load: () => import('./sums.task.ts'),
 };

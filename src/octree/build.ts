@@ -1,4 +1,5 @@
 /** Particles → octree: plan buckets, move bodies, grow branches, join them under a shared top. */
+import type * as BuildTask from './build.task.ts';
 import { CHUNK, type Positions } from './build.task.ts';
 import { weighParent } from './branch.ts';
 import { keyBox, mortonKey, planBuckets, type BucketPlan, type Octant } from './partition.ts';
@@ -14,7 +15,7 @@ import {
 } from './tree.ts';
 import type { Crew, TaskModule } from '../parallel/crew.ts';
 
-const TASK: TaskModule<typeof import('./build.task.ts')> = {
+const TASK: TaskModule<typeof BuildTask> = {
   url: new URL('./build.task.js', import.meta.url),
   load: () => import('./build.task.ts'),
 };

@@ -6,6 +6,7 @@
  * mean of (narrow walk − direct) estimates the mean error of Σ m/r per unit mass, and so the error of
  * the total; the two sampling variances add.
  */
+import type * as ForcesTask from './forces.task.ts';
 import type { Crew, TaskModule } from '../parallel/crew.ts';
 import { DIRECT_SLICE } from './forces.task.ts';
 import type { FieldColumns } from './forces.task.ts';
@@ -22,7 +23,7 @@ import {
 } from './tree.ts';
 import type { SourceTree } from './walk.ts';
 
-const TASK: TaskModule<typeof import('./forces.task.ts')> = {
+const TASK: TaskModule<typeof ForcesTask> = {
   url: new URL('./forces.task.js', import.meta.url),
   load: () => import('./forces.task.ts'),
 };

@@ -2,6 +2,7 @@
  * Particles → Forces: potential, Clausius share and, if asked, acceleration of every body, with
  * measured errors, by direct sums where those are cheaper and by the cell–cell walk elsewhere.
  */
+import type * as ForcesTask from './forces.task.ts';
 import { crewOfOne, type Crew, type TaskModule } from '../parallel/crew.ts';
 import { buildOctree, type BodyColumns } from './build.ts';
 import { CompensatedSum } from '../numerics/compensated.ts';
@@ -14,7 +15,7 @@ import { supportOf, type Softening } from './softening.ts';
 import { NODE_CHILDREN, TOPOLOGY, type Octree } from './tree.ts';
 import type { Acceptance, SourceTree, WalkCounts } from './walk.ts';
 
-const TASK: TaskModule<typeof import('./forces.task.ts')> = {
+const TASK: TaskModule<typeof ForcesTask> = {
   url: new URL('./forces.task.js', import.meta.url),
   load: () => import('./forces.task.ts'),
 };
@@ -23,6 +24,9 @@ const TASK: TaskModule<typeof import('./forces.task.ts')> = {
 export const DIRECT_COUNT = 4096;
 /** The promise `--error E` is kept if this many σ of the measured error stay below E |U|. */
 export const PROMISED_SIGMAS = 2.6;
+
+/** Parts of the work, in order; `forces` and `error` come again when a level missed the error wanted. */
+export type ForceStage = 'tree' | 'forces' | 'error';
 
 export interface ForceOptions {
   /** G [length · velocity² / mass]. */
@@ -33,6 +37,8 @@ export interface ForceOptions {
   /** Direct sums for any number of bodies. */
   readonly exact?: boolean;
   readonly accelerations?: boolean;
+  /** Called when a part of the work begins. */
+  readonly onStage?: (stage: ForceStage) => void;
   /** Fixed level of the walk instead of one chosen by the error wanted: for benchmarks and tests. */
   readonly level?: Level;
 }
@@ -103,6 +109,7 @@ async function sumAllDirectly(
   crew: Crew,
 ): Promise<Forces> {
   const start = performance.now();
+  options.onStage?.('forces');
   const count = columns.mass.length;
   const field = allocateField(count, options);
   const round = {
@@ -140,6 +147,7 @@ async function sumByTree(
 ): Promise<Forces> {
   const { softening } = options;
   const start = performance.now();
+  options.onStage?.('tree');
   const tree = await buildOctree(columns, crew);
   const soft2 = softening.kernel === 'plummer' ? softening.length ** 2 : 0;
   await crew.run(TASK, 'estimateBranches', { tree, soft2 }, tree.branchRoots.length);
@@ -150,12 +158,14 @@ async function sumByTree(
   let sampled = 0;
   let errorSeconds = 0;
   for (let level = first; ;) {
+    options.onStage?.('forces');
     const source = await gatherMultipoles(tree, level.order, softening, crew);
     const done = await walkAll(source, level, softening, field, crew);
     counts.cellInteractions += done.cellInteractions;
     counts.pairInteractions += done.pairInteractions;
     counts.coincidentPairs = done.coincidentPairs;
     const walked = performance.now();
+    options.onStage?.('error');
     const error = await sampleError(source, field, level.order, softening, level.narrowAngle, crew);
     errorSeconds += (performance.now() - walked) / 1000;
     sampled += error.interactions;

@@ -5,12 +5,13 @@
  * and the j-th are not counted, which makes ρ unbiased. Centre Σρx/Σρ, core radius √(Σρ²d²/Σρ²).
  * Source: Casertano & Hut 1985, ApJ 298, 80; the squared form of the core radius is later practice.
  */
+import type * as NeighboursTask from './neighbours.task.ts';
 import { compensatedSum } from '../numerics/compensated.ts';
 import { crewOfOne, type Crew, type TaskModule } from '../parallel/crew.ts';
 import { DENSITY_SUMS, eachGroup } from './neighbours.task.ts';
 import { GEOMETRY, NODE_BEGIN, NODE_END, TOPOLOGY, type Octree } from './tree.ts';
 
-const TASK: TaskModule<typeof import('./neighbours.task.ts')> = {
+const TASK: TaskModule<typeof NeighboursTask> = {
   url: new URL('./neighbours.task.js', import.meta.url),
   load: () => import('./neighbours.task.ts'),
 };

@@ -4,17 +4,19 @@
  * Few bodies are subtracted by direct sums; more through a tree of their own, walked against the tree
  * of all. Values at the removed bodies themselves become meaningless.
  */
+import type * as ForcesTask from './forces.task.ts';
+import type * as SubtractTask from './subtract.task.ts';
 import { crewOfOne, type Crew, type TaskModule } from '../parallel/crew.ts';
 import { buildOctree, type BodyColumns } from './build.ts';
 import { acceptanceOf, gatherMultipoles, type Forces } from './forces.ts';
 import { LEVELS } from './levels.ts';
 import { FEW_CHUNK } from './subtract.task.ts';
 
-const TASK: TaskModule<typeof import('./subtract.task.ts')> = {
+const TASK: TaskModule<typeof SubtractTask> = {
   url: new URL('./subtract.task.js', import.meta.url),
   load: () => import('./subtract.task.ts'),
 };
-const FORCES: TaskModule<typeof import('./forces.task.ts')> = {
+const FORCES: TaskModule<typeof ForcesTask> = {
   url: new URL('./forces.task.js', import.meta.url),
   load: () => import('./forces.task.ts'),
 };

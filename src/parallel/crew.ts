@@ -61,9 +61,13 @@ export function defaultThreads(): number {
 export function crewOfOne(): Crew {
   let next = 0;
   let total = 0;
+  let closed = false;
   return {
     threads: 1,
     async run(module, name, argument, jobs) {
+      // Signals and timers get their turn: all else in a round happens on this thread.
+      await new Promise((resolve) => setImmediate(resolve));
+      if (closed) throw new InterruptedError();
       next = 0;
       total = jobs;
       const loaded = await module.load();
@@ -71,7 +75,10 @@ export function crewOfOne(): Crew {
       return [task(argument, () => (next < jobs ? next++ : -1))];
     },
     progress: () => ({ done: next, jobs: total }),
-    close: () => Promise.resolve(),
+    close: () => {
+      closed = true;
+      return Promise.resolve();
+    },
   };
 }
 
@@ -94,7 +101,7 @@ class WorkerCrew implements Crew {
     const ending = import.meta.url.endsWith('.ts') ? '.ts' : '.js';
     const entry = new URL(`./worker${ending}`, import.meta.url);
     for (let i = 0; i < threads; i++) {
-      const worker = new Worker(entry);
+      const worker = new Worker(entry, { execArgv: [] }); // not the caller's --input-type and the like
       worker.on('message', (reply: Reply) => this.settle(reply));
       worker.on('error', (error) => this.end(error));
       worker.on('messageerror', (error) => this.end(error));

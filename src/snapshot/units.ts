@@ -7,6 +7,8 @@
  * GM of the Sun, never from G times a rounded solar mass.
  */
 
+import { UsageError } from '../errors.ts';
+
 /** Names of the built-in systems, and `own` for one that a file or user states. */
 export type UnitName =
   'natural' | 'henon' | 'kpc-kms-msun' | 'pc-kms-msun' | 'au-year-msun' | 'si' | 'own';
@@ -73,3 +75,14 @@ export const PARSEC_PER_KMS_IN_MYR = PARSEC / 1000 / (JULIAN_YEAR * 1e6);
 
 /** G in pc³ / (Msun Myr²): the same constant with megayears as the unit of time. */
 export const GRAVITY_PC_MYR = G_PC_KMS / PARSEC_PER_KMS_IN_MYR ** 2;
+
+/** The built-in system of a name. @throws UsageError `usage.units`, which lists the known ones */
+export function unitSystemNamed(name: string): UnitSystem {
+  const known: Readonly<Record<string, UnitSystem>> = UNIT_SYSTEMS;
+  if (Object.hasOwn(known, name)) return known[name];
+  throw new UsageError(
+    'usage.units',
+    `--units ${name} is not a known unit system`,
+    `known are ${Object.keys(known).join(', ')}`,
+  );
+}

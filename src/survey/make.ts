@@ -7,7 +7,7 @@ import { sumForces } from '../octree/forces.ts';
 import type { SofteningKernel } from '../octree/softening.ts';
 import type { Crew } from '../parallel/crew.ts';
 import type { Particles } from '../snapshot/particles.ts';
-import { UNIT_SYSTEMS, type UnitSystem } from '../snapshot/units.ts';
+import { unitSystemNamed } from '../snapshot/units.ts';
 
 export interface MakeSnapshotOptions extends MakeOptions {
   /** Name of a unit system; sets G unless `gravity` is given. */
@@ -33,7 +33,7 @@ const ERROR_OF_SCALING = 1e-6;
  */
 export async function makeSnapshot(options: MakeSnapshotOptions, crew: Crew): Promise<Particles> {
   const { units: name, virialRatio, softening: length = 0, offset, velocity, ...model } = options;
-  const units = name === undefined ? null : unitSystem(name);
+  const units = name === undefined ? null : unitSystemNamed(name);
   const gravity = options.gravity ?? units?.gravity ?? 1;
   const kernel = options.softeningKernel ?? (length > 0 ? 'plummer' : 'none');
   requireSoftening(length, kernel);
@@ -60,16 +60,6 @@ function kineticOf({ count, mass, vx, vy, vz }: Particles): number {
   const sum = new CompensatedSum();
   for (let i = 0; i < count; i++) sum.add(0.5 * mass[i] * (vx[i] ** 2 + vy[i] ** 2 + vz[i] ** 2));
   return sum.value();
-}
-
-function unitSystem(name: string): UnitSystem {
-  const known = UNIT_SYSTEMS as Readonly<Record<string, UnitSystem>>;
-  if (Object.hasOwn(known, name)) return known[name];
-  throw new UsageError(
-    'usage.units',
-    `--units ${name} is not a known unit system`,
-    `known are ${Object.keys(known).join(', ')}`,
-  );
 }
 
 function requireSoftening(length: number, kernel: SofteningKernel): void {

@@ -1,0 +1,134 @@
+/**
+ * The form of a record as a schema, for validation here and as JSON Schema for programs outside.
+ *
+ * Quantities come from the registry; what is no quantity (settings, engine, remarks) is written here.
+ * Nothing that measures imports this module, and it loads zod only when called.
+ */
+import type { z as ZodNamespace, ZodType } from 'zod';
+import { RECORD_VERSION } from './record.ts';
+import { QUANTITIES, type Quantity } from './registry.ts';
+import { dimensionText } from './registryText.ts';
+
+/**
+ * The schema of a record. Numbers must be finite; keys that it does not know pass, since later
+ * versions of the same record number may add some.
+ */
+export async function recordSchema(): Promise<ZodType> {
+  const { z } = await import('zod');
+  const atLeast0 = (text: string) => z.number().min(0).describe(text);
+  const origin = z
+    .enum(['option', 'run file', 'snapshot', 'default'])
+    .describe('where the value came from');
+  const setting = (value: ZodType, text: string) =>
+    z.object({ value, from: origin }).describe(text);
+  const centreMethod = z.enum(['density', 'shrinking', 'mass', 'potential']);
+
+  const settings = z.object({
+    gravity: setting(
+      z.number().positive(),
+      'constant of gravitation G [length³ mass⁻¹ time⁻²] that was used',
+    ),
+    units: setting(z.string(), 'name of the unit system'),
+    softening: setting(
+      z.object({
+        length: atLeast0('Plummer-equivalent length [length]; 0 without softening'),
+        support: z
+          .number()
+          .min(0)
+          .nullable()
+          .describe(
+            'distance beyond which the force is Newtonian [length]; null where it never is exactly (plummer)',
+          ),
+        kernel: z.enum(['none', 'plummer', 'spline']),
+      }),
+      'softening of the pair force',
+    ),
+    coulombFactor: setting(z.number().positive(), 'γ in Λ = γN'),
+    error: setting(z.number().positive(), 'relative error that was wanted of U'),
+    centre: setting(centreMethod, 'method of the centre that was asked for'),
+    fractions: setting(z.array(z.number()), 'mass fractions of the Lagrangian radii'),
+    exact: setting(z.boolean(), 'direct sums whatever they cost'),
+  });
+
+  const seconds = z.object({
+    read: atLeast0('reading the file'),
+    tree: atLeast0('building the tree'),
+    forces: atLeast0('summing potentials'),
+    error: atLeast0('measuring the error of the sums'),
+    dynamics: atLeast0('everything after the sums'),
+    total: atLeast0('all of it'),
+  });
+  const engine = z.object({
+    origin: z.enum(['tree', 'direct', 'file']).describe('how the potentials were had'),
+    order: z.int().nullable().describe('order of the expansions; null for direct sums'),
+    tolerance: z.number().nullable().describe('tolerance of the walk; null for direct sums'),
+    errorWanted: atLeast0('relative error of U that was asked for'),
+    errorMeasured: atLeast0('2.6 σ of the measured error of U, over |U|'),
+    interactions: atLeast0('pairs of cells and of bodies summed, each direction counted'),
+    threads: z.int().min(1).describe('worker threads'),
+    seconds: seconds.describe('wall-clock seconds'),
+  });
+  const remark = z.object({
+    code: z.string().describe('stable name of the finding'),
+    text: z.string().describe('the finding, one sentence'),
+    remedy: z.string().describe('what to do about it'),
+  });
+
+  const tree: Branch = {
+    record: z.literal(RECORD_VERSION).describe('version of the form of the record'),
+    file: z.string().describe('the snapshot as it was named; - for standard input'),
+    time: z.number().nullable().describe('time of the snapshot [time]; null if it is not stated'),
+    settings: settings.describe('what was used, and where it came from'),
+    frame: { centreMethod: centreMethod.describe('method of frame.centre that was used') },
+  };
+  for (const quantity of QUANTITIES) {
+    place(tree, quantity.key.split('.'), quantitySchema(quantity, z));
+  }
+  tree.engine = engine.describe('how the sums were done and what they cost');
+  tree.remarks = z.array(remark).describe('findings beside the figures');
+  return asObject(tree, z).meta({
+    title: 'Settlemark record of one snapshot',
+    description:
+      'All that is measured of one snapshot, in the units of the snapshot. Dimensions stand in brackets; no brackets: a pure number.',
+  });
+}
+
+/** JSON Schema (draft 2020-12) of a record, for `docs/record.schema.json`. */
+export async function recordJsonSchema(): Promise<Record<string, unknown>> {
+  const { z } = await import('zod');
+  return z.toJSONSchema(await recordSchema(), { target: 'draft-2020-12', io: 'input' });
+}
+
+type Zod = typeof ZodNamespace;
+
+function quantitySchema(quantity: Quantity, z: Zod): ZodType {
+  const single = quantity.kind === 'integer' ? z.int().min(0) : z.number();
+  const item = quantity.nullable ? single.nullable() : single;
+  const schema =
+    quantity.kind === 'vector'
+      ? z.array(single).length(3)
+      : quantity.kind === 'list'
+        ? z.array(item)
+        : item;
+  const unit = dimensionText(quantity.dimension);
+  const error = quantity.error === null ? '' : `; 1σ error in ${quantity.error}`;
+  return schema.describe(`${quantity.text}${unit === '' ? '' : ` [${unit}]`}${error}`);
+}
+
+/** Schemas by key, nested as the record is. */
+interface Branch {
+  [key: string]: ZodType | Branch;
+}
+
+function place(branch: Branch, [key, ...rest]: readonly string[], schema: ZodType): void {
+  if (rest.length === 0) branch[key] = schema;
+  else place((branch[key] ??= {}) as Branch, rest, schema);
+}
+
+function asObject(branch: Branch, z: Zod): ZodType {
+  const shape = Object.entries(branch).map(([key, value]) => [
+    key,
+    value instanceof z.ZodType ? value : asObject(value, z),
+  ]);
+  return z.object(Object.fromEntries(shape) as Record<string, ZodType>);
+}
