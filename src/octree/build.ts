@@ -23,7 +23,7 @@ const TASK: TaskModule<typeof BuildTask> = {
 type Column = Float64Array | Float32Array;
 
 /** Default number of bodies up to which a cell is not cut. */
-export const LEAF_CAPACITY = 16;
+export const LEAF_CAPACITY = 20;
 /** Branches and with them the work of the crew are cut to about this part of all bodies. */
 const BRANCHES = 96;
 const SMALLEST_BRANCH = 2048;

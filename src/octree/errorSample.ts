@@ -31,9 +31,9 @@ const TASK: TaskModule<typeof ForcesTask> = {
 /** Up to this many bodies the whole sample is summed directly: that is cheaper than the narrow walk. */
 const DIRECT_UP_TO = 32768;
 const DIRECT_SAMPLE = 384;
-const WALK_SAMPLE = 2048;
-const DIRECT_OF_WALK = 40;
-const SAMPLES_PER_JOB = 32;
+const WALK_SAMPLE = 512;
+const DIRECT_OF_WALK = 32;
+const SAMPLES_PER_JOB = 16;
 
 /** Error of the mass-weighted mean of one sum, as a mean offset and the 1σ of its estimate. */
 export interface SampledError {

@@ -35,8 +35,8 @@ function indices(low: number, high: number): Index[] {
   return list;
 }
 
-/** Highest order that expansions are written for. */
-export const HIGHEST_ORDER = 8;
+/** Highest order that expansions are written for: longer functions than its are no longer optimised. */
+export const HIGHEST_ORDER = 6;
 
 export interface Expansion {
   readonly order: number;

@@ -1,5 +1,8 @@
 /** The ladder of accuracies that the engine climbs to keep its promise, and what each costs. */
 
+/** Number of bodies that {@link Level.reaches} is stated for. */
+const REACHES_AT = 1e5;
+
 /** One setting of the cell–cell walk. */
 export interface Level {
   readonly order: number;
@@ -11,23 +14,31 @@ export interface Level {
   readonly narrowAngle: number;
   /** Nanoseconds of one thread a body takes, roughly: to choose between levels and direct sums. */
   readonly cost: number;
-  /** Relative error of U that is usually met at a million bodies: to choose the first level. */
+  /** Measured error of U over |U| that is usual at {@link REACHES_AT} bodies: to choose the first level. */
   readonly reaches: number;
 }
 
 export const LEVELS: readonly Level[] = [
-  { order: 3, openingAngle: 0.95, tolerance: 2e-3, narrowAngle: 0.4, cost: 1400, reaches: 1e-5 },
-  { order: 4, openingAngle: 0.9, tolerance: 5e-4, narrowAngle: 0.35, cost: 2000, reaches: 1.5e-6 },
-  { order: 5, openingAngle: 0.85, tolerance: 5e-5, narrowAngle: 0.3, cost: 4000, reaches: 2e-7 },
-  { order: 6, openingAngle: 0.8, tolerance: 3e-6, narrowAngle: 0.25, cost: 9000, reaches: 2e-8 },
-  { order: 8, openingAngle: 0.7, tolerance: 1e-7, narrowAngle: 0.25, cost: 25000, reaches: 1e-9 },
+  { order: 2, openingAngle: 1, tolerance: 6e-3, narrowAngle: 0.5, cost: 1500, reaches: 1.5e-4 },
+  { order: 3, openingAngle: 0.95, tolerance: 2e-3, narrowAngle: 0.45, cost: 1700, reaches: 2e-5 },
+  { order: 4, openingAngle: 0.95, tolerance: 1e-3, narrowAngle: 0.4, cost: 2100, reaches: 7e-6 },
+  { order: 5, openingAngle: 0.9, tolerance: 2e-4, narrowAngle: 0.4, cost: 4000, reaches: 1.5e-6 },
+  {
+    order: 6,
+    openingAngle: 0.85,
+    tolerance: 2e-5,
+    narrowAngle: 0.35,
+    cost: 12000,
+    reaches: 2.5e-7,
+  },
+  { order: 6, openingAngle: 0.75, tolerance: 1e-6, narrowAngle: 0.3, cost: 30000, reaches: 3e-8 },
 ];
 
 /** The cheapest level that usually meets an error of U at this number of bodies. */
 export function firstLevel(errorWanted: number, count: number): Level {
-  // The mean of N independent errors: fewer bodies, larger error.
-  const scaled = errorWanted * Math.min(1, Math.sqrt(count / 1e6) * 3);
-  return LEVELS.find((level) => level.reaches <= scaled * 1.001) ?? LEVELS[LEVELS.length - 1];
+  // Cells shrink as bodies grow in number, and single errors with them.
+  const scaled = errorWanted * Math.cbrt(count / REACHES_AT);
+  return LEVELS.find((level) => level.reaches <= scaled) ?? LEVELS[LEVELS.length - 1];
 }
 
 /** The level to try after one that missed the error wanted by a factor, or null at the top. */
