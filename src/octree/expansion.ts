@@ -12,33 +12,23 @@
  * local expansion of order p − 1 gives it at little cost.
  */
 import { compile } from './compile.ts';
-
-/** A multi-index: powers of x, y and z. */
-type Index = readonly [number, number, number];
-
-const orderOf = ([i, j, k]: Index): number => i + j + k;
-const factorial = (n: number): number => (n <= 1 ? 1 : n * factorial(n - 1));
-const factorialOf = ([i, j, k]: Index): number => factorial(i) * factorial(j) * factorial(k);
-const plus = (a: Index, b: Index): Index => [a[0] + b[0], a[1] + b[1], a[2] + b[2]];
-const minus = (a: Index, b: Index): Index => [a[0] - b[0], a[1] - b[1], a[2] - b[2]];
-const within = (a: Index, b: Index): boolean => a[0] <= b[0] && a[1] <= b[1] && a[2] <= b[2];
-const nameOf = ([i, j, k]: Index): string => `${i}${j}${k}`;
-
-/** All multi-indices with order from `low` to `high`, by order, x before y before z. */
-function indices(low: number, high: number): Index[] {
-  const list: Index[] = [];
-  for (let order = low; order <= high; order++) {
-    for (let i = order; i >= 0; i--) {
-      for (let j = order - i; j >= 0; j--) list.push([i, j, order - i - j]);
-    }
-  }
-  return list;
-}
+import { writeInteractions, type Interactions } from './interaction.ts';
+import {
+  factorialOf,
+  indices,
+  minus,
+  nameOf,
+  orderOf,
+  plus,
+  slot,
+  within,
+  type Index,
+} from './multiIndex.ts';
 
 /** Highest order that expansions are written for: longer functions than its are no longer optimised. */
 export const HIGHEST_ORDER = 6;
 
-export interface Expansion {
+export interface Expansion extends Interactions {
   readonly order: number;
   /** Reals a node of multipoles: all M_n with 2 ≤ |n| ≤ p. */
   readonly multipoles: number;
@@ -63,31 +53,6 @@ export interface Expansion {
     dy: number,
     dz: number,
   ) => void;
-  /** Adds the source's field to the target's locals. `gt`, `gs` index geometry, `ms` multipoles, `lt` locals. */
-  readonly interact: (
-    tG: Float64Array,
-    gt: number,
-    L: Float64Array,
-    lt: number,
-    sG: Float64Array,
-    gs: number,
-    sM: Float64Array,
-    ms: number,
-    soft2: number,
-  ) => void;
-  /** The same in both directions, for two cells of one tree. */
-  readonly interactBoth: (
-    G: Float64Array,
-    M: Float64Array,
-    L: Float64Array,
-    ga: number,
-    ma: number,
-    la: number,
-    gb: number,
-    mb: number,
-    lb: number,
-    soft2: number,
-  ) => void;
   /** Adds the parent's locals to a child's, its centre at (x, y, z) from the parent's. */
   readonly passDown: (
     L: Float64Array,
@@ -108,18 +73,6 @@ export interface Expansion {
     x: number,
     y: number,
     z: number,
-    out: Float64Array,
-  ) => void;
-  /** Adds to `out[0]` the source cell's Σ m/√(r²+ε²) at a point, and to `out[1]` the Clausius part. */
-  readonly pointValue: (
-    G: Float64Array,
-    g: number,
-    M: Float64Array,
-    ms: number,
-    x: number,
-    y: number,
-    z: number,
-    soft2: number,
     out: Float64Array,
   ) => void;
 }
@@ -148,42 +101,7 @@ function writeExpansion(p: number, softened: boolean): Expansion {
   const localAt = new Map(localList.map((n, at) => [nameOf(n), at]));
   const clausiusAt = new Map(clausiusList.map((n, at) => [nameOf(n), localList.length + at]));
   const locals = localList.length + clausiusList.length;
-  const slot = (array: string, base: string, at: number) =>
-    `${array}[${base}${at ? `+${at}` : ''}]`;
   const named = `order${p}${softened ? 'softened' : ''}`;
-
-  /** Terms of L_k: the multipole's index and the tensor's, with sign (−1)^|n|. */
-  const terms = (k: Index, highest: number) =>
-    indices(0, highest - orderOf(k))
-      .filter((n) => orderOf(n) !== 1)
-      .map((n) => ({ n, d: plus(n, k), sign: orderOf(n) % 2 ? '-' : '+' }));
-
-  const loadMoments = (prefix: string, array: string, base: string) =>
-    momentList.map((n, at) => `const ${prefix}${nameOf(n)}=${slot(array, base, at)};`).join('');
-
-  /** Code of all L_k for one direction; `flip` turns R into −R. */
-  const accumulate = (source: string, mass: string, L: string, base: string, flip: boolean) => {
-    const lines: string[] = [];
-    const add = (k: Index, at: number, tensor: string, highest: number, negate: boolean) => {
-      const sum = terms(k, highest)
-        .map(({ n, d, sign }) => {
-          const odd = flip && orderOf(d) % 2 === 1;
-          const positive = (sign === '+') !== odd;
-          const factor = orderOf(n) === 0 ? mass : `${source}${nameOf(n)}`;
-          return `${positive !== negate ? '+' : '-'}${factor}*${tensor}${nameOf(d)}`;
-        })
-        .join('');
-      return `${slot(L, base, at)}+=${softScale(tensor)}(${sum});`;
-    };
-    for (const k of localList)
-      lines.push(add(k, localAt.get(nameOf(k)) as number, 'd0_', p, false));
-    for (const k of clausiusList) {
-      lines.push(add(k, clausiusAt.get(nameOf(k)) as number, 'd1_', p - 1, true));
-    }
-    return lines.join('\n');
-  };
-  const softScale = (tensor: string) => (tensor === 'd1_' ? 'soft2*' : '');
-  const tensors = tensorCode(p);
 
   const powers = (x: string, y: string, z: string, highest: number) => {
     const lines: string[] = [];
@@ -251,19 +169,6 @@ function writeExpansion(p: number, softened: boolean): Expansion {
           })
           .join('\n'),
     ),
-    interact: compile(
-      `${named}interact`,
-      ['tG', 'gt', 'L', 'lt', 'sG', 'gs', 'sM', 'ms', 'soft2'],
-      `const x=tG[gt]-sG[gs],y=tG[gt+1]-sG[gs+1],z=tG[gt+2]-sG[gs+2],m=sG[gs+3];` +
-        `${tensors}${loadMoments('a', 'sM', 'ms')}\n${accumulate('a', 'm', 'L', 'lt', false)}`,
-    ),
-    interactBoth: compile(
-      `${named}interactBoth`,
-      ['G', 'M', 'L', 'ga', 'ma', 'la', 'gb', 'mb', 'lb', 'soft2'],
-      `const x=G[ga]-G[gb],y=G[ga+1]-G[gb+1],z=G[ga+2]-G[gb+2],massA=G[ga+3],massB=G[gb+3];` +
-        `${tensors}${loadMoments('b', 'M', 'mb')}\n${accumulate('b', 'massB', 'L', 'la', false)}` +
-        `${loadMoments('a', 'M', 'ma')}\n${accumulate('a', 'massA', 'L', 'lb', true)}`,
-    ),
     passDown: compile(
       `${named}passDown`,
       ['L', 'parent', 'child', 'x', 'y', 'z'],
@@ -307,47 +212,6 @@ function writeExpansion(p: number, softened: boolean): Expansion {
           .map((k, axis) => `out[${axis}]=${taylor(k, localAt, 'at', p)};`)
           .join('\n'),
     ),
-    pointValue: compile(
-      `${named}pointValue`,
-      ['G', 'g', 'M', 'ms', 'px', 'py', 'pz', 'soft2', 'out'],
-      `const x=px-G[g],y=py-G[g+1],z=pz-G[g+2],m=G[g+3];${tensors}${loadMoments('a', 'M', 'ms')}
-      out[0]+=${pointSum(p, 'd0_', terms, false)};
-      ${softened ? `out[1]+=soft2*(${pointSum(p - 1, 'd1_', terms, true)});` : ''}`,
-    ),
+    ...writeInteractions(p, softened, named),
   };
-}
-
-function pointSum(
-  highest: number,
-  tensor: string,
-  terms: (k: Index, highest: number) => { n: Index; d: Index; sign: string }[],
-  negate: boolean,
-): string {
-  return terms([0, 0, 0], highest)
-    .map(({ n, d, sign }) => {
-      const positive = (sign === '+') !== negate;
-      const factor = orderOf(n) === 0 ? 'm' : `a${nameOf(n)}`;
-      return `${positive ? '+' : '-'}${factor}*${tensor}${nameOf(d)}`;
-    })
-    .join('');
-}
-
-/** Code that computes all D⁽ʲ⁾_n with |n| + j ≤ p from x, y, z and soft2, named d<j>_<n>. */
-function tensorCode(p: number): string {
-  const lines = ['const u=x*x+y*y+z*z+soft2,inverse=1/u,d0_000=Math.sqrt(inverse);'];
-  for (let j = 1; j <= p; j++) lines.push(`const d${j}_000=-${2 * j - 1}*inverse*d${j - 1}_000;`);
-  for (let order = 1; order <= p; order++) {
-    for (const n of indices(order, order)) {
-      // Lowering the axis with the largest power keeps the recursion's second term rare.
-      const axis = n.indexOf(Math.max(...n));
-      const e = [0, 0, 0].map((_, a) => (a === axis ? 1 : 0)) as unknown as Index;
-      const once = minus(n, e);
-      for (let j = 0; j + order <= p; j++) {
-        let code = `${'xyz'[axis]}*d${j + 1}_${nameOf(once)}`;
-        if (once[axis] > 0) code += `+${once[axis]}*d${j + 1}_${nameOf(minus(once, e))}`;
-        lines.push(`const d${j}_${nameOf(n)}=${code};`);
-      }
-    }
-  }
-  return lines.join('');
 }
