@@ -59,8 +59,8 @@ export function defaultThreads(): number {
 
 /** A crew of one: the calling thread does all jobs in order. */
 export function crewOfOne(): Crew {
-  let next = 0;
-  let total = 0;
+  // A counter for each round, since rounds may be asked for before earlier ones have begun.
+  let latest = { next: 0, jobs: 0 };
   let closed = false;
   return {
     threads: 1,
@@ -68,13 +68,13 @@ export function crewOfOne(): Crew {
       // Signals and timers get their turn: all else in a round happens on this thread.
       await new Promise((resolve) => setImmediate(resolve));
       if (closed) throw new InterruptedError();
-      next = 0;
-      total = jobs;
       const loaded = await module.load();
       const task = loaded[name] as TaskFunction<unknown, never>;
-      return [task(argument, () => (next < jobs ? next++ : -1))];
+      const round = { next: 0, jobs };
+      latest = round;
+      return [task(argument, () => (round.next < jobs ? round.next++ : -1))];
     },
-    progress: () => ({ done: next, jobs: total }),
+    progress: () => ({ done: latest.next, jobs: latest.jobs }),
     close: () => {
       closed = true;
       return Promise.resolve();
