@@ -10,6 +10,7 @@ import type * as ForcesTask from './forces.task.ts';
 import type { Crew, TaskModule } from '../parallel/crew.ts';
 import { DIRECT_SLICE } from './forces.task.ts';
 import type { FieldColumns } from './forces.task.ts';
+import { sumsAtBodies } from './pointWalk.ts';
 import type { Softening } from './softening.ts';
 import {
   GEOMETRY,
@@ -33,7 +34,6 @@ const DIRECT_UP_TO = 32768;
 const DIRECT_SAMPLE = 384;
 const WALK_SAMPLE = 512;
 const DIRECT_OF_WALK = 32;
-const SAMPLES_PER_JOB = 16;
 
 /** Error of the mass-weighted mean of one sum, as a mean offset and the 1σ of its estimate. */
 export interface SampledError {
@@ -80,14 +80,8 @@ export async function sampleError(
       interactions: places.length * count,
     };
   }
-  const narrow = shared(places.length * 2);
-  const round = { source, order, softening, openingAngle: narrowAngle, places };
-  const counts = await crew.run(
-    TASK,
-    'sampleByWalk',
-    { ...round, perJob: SAMPLES_PER_JOB, sums: narrow },
-    Math.ceil(places.length / SAMPLES_PER_JOB),
-  );
+  const options = { order, softening, openingAngle: narrowAngle };
+  const { sums: narrow, interactions } = await sumsAtBodies(source, places, options, crew);
   const step = places.length / DIRECT_OF_WALK;
   const chosen = Uint32Array.from({ length: DIRECT_OF_WALK }, (_, k) =>
     Math.floor((k + 0.5) * step),
@@ -104,7 +98,7 @@ export async function sampleError(
     phi: together(compare(engine, narrow, 0), compare(narrowChosen, exact, 0)),
     psi: together(compare(engine, narrow, 1), compare(narrowChosen, exact, 1)),
     bodies: places.length,
-    interactions: counts.reduce((sum, n) => sum + n, 0) + chosen.length * count,
+    interactions: interactions + chosen.length * count,
   };
 }
 

@@ -20,7 +20,6 @@ export interface GatherRound {
   readonly order: number;
   readonly softening: Softening;
   readonly multipoles: Float64Array;
-  /** Also estimate depths, which needs no multipoles; done once a tree. */
 }
 
 export function gatherBranches(round: GatherRound, takeJob: TakeJob): void {
@@ -100,22 +99,23 @@ export function walkBranches(round: WalkRound, takeJob: TakeJob): WalkCounts {
   return counts;
 }
 
-export interface SampleRound {
+export interface PointRound {
   readonly source: SourceTree;
+  readonly points: { readonly x: Float64Array; readonly y: Float64Array; readonly z: Float64Array };
+  /** Places in tree order of the bodies at the points, left out of their own sums; null for none. */
+  readonly places: Uint32Array | null;
   readonly order: number;
   readonly softening: Softening;
   readonly openingAngle: number;
-  /** Places in tree order of the sampled bodies. */
-  readonly places: Uint32Array;
-  /** Sampled bodies a job. */
+  /** Points a job. */
   readonly perJob: number;
-  /** Two numbers a sampled body: its sums phi and psi. */
+  /** Two numbers a point: its sums phi and psi. */
   readonly sums: Float64Array;
 }
 
-/** The classical walk at sampled bodies; returns interactions. */
-export function sampleByWalk(round: SampleRound, takeJob: TakeJob): number {
-  const { source, softening, places, perJob, sums } = round;
+/** The classical walk at points; returns interactions. */
+export function walkPoints(round: PointRound, takeJob: TakeJob): number {
+  const { source, softening, points, places, perJob, sums } = round;
   const tools = {
     expansion: expansionOf(round.order, softening.kernel === 'plummer'),
     pairs: pairKernelsOf(softening.kernel, false),
@@ -124,14 +124,14 @@ export function sampleByWalk(round: SampleRound, takeJob: TakeJob): number {
     soft2: softening.kernel === 'plummer' ? softening.length ** 2 : 0,
     support: softening.kernel === 'spline' ? supportOf(softening) : 0,
   };
-  const { x, y, z } = source.tree.bodies;
+  const { x, y, z } = points;
   let interactions = 0;
   const out = new Float64Array(5);
   for (let job = takeJob(); job >= 0; job = takeJob()) {
-    for (let k = job * perJob; k < Math.min(places.length, (job + 1) * perJob); k++) {
-      const place = places[k];
+    for (let k = job * perJob; k < Math.min(x.length, (job + 1) * perJob); k++) {
       out.fill(0);
-      interactions += sumAtPoint(source, x[place], y[place], z[place], place, tools, out);
+      const skip = places === null ? -1 : places[k];
+      interactions += sumAtPoint(source, x[k], y[k], z[k], skip, tools, out);
       sums[2 * k] = out[0];
       sums[2 * k + 1] = out[1];
     }
@@ -139,14 +139,20 @@ export function sampleByWalk(round: SampleRound, takeJob: TakeJob): number {
   return interactions;
 }
 
+export interface DirectSampleRound {
+  readonly source: SourceTree;
+  readonly softening: Softening;
+  /** Places in tree order of the sampled bodies. */
+  readonly places: Uint32Array;
+  /** Two numbers a slice of the sources and body: its sums phi and psi. */
+  readonly sums: Float64Array;
+}
+
 /** Bodies that a job of a direct sum at a sampled body runs over, to keep jobs short. */
 export const DIRECT_SLICE = 262144;
 
 /** Direct sums at sampled bodies, sliced over the sources; `sums` has two numbers a slice and body. */
-export function sampleDirectly(
-  round: Omit<SampleRound, 'order' | 'openingAngle' | 'perJob'>,
-  takeJob: TakeJob,
-): void {
+export function sampleDirectly(round: DirectSampleRound, takeJob: TakeJob): void {
   const { source, softening, places, sums } = round;
   const { x, y, z, mass, count } = source.tree.bodies;
   const pairs = pairKernelsOf(softening.kernel, false);

@@ -20,7 +20,7 @@ import {
   type Octree,
 } from './tree.ts';
 
-/** When a cell–cell interaction is accepted; the one place that knows is {@link makeAcceptance}. */
+/** What decides whether two cells interact as a whole. */
 export interface Acceptance {
   /** Opening angle: radii must sum to less than this times the distance. */
   readonly openingAngle: number;
@@ -32,6 +32,26 @@ export interface Acceptance {
   readonly soft2: number;
   /** Distance inside which the pair force is not Newtonian and cells must open (spline support); else 0. */
   readonly support: number;
+}
+
+/**
+ * The acceptance rule, the one place of it: two cells interact as a whole if their radii sum to less
+ * than the opening angle times their distance, and if the first neglected order of the expansion,
+ * (M/φ) (r/d)^(p+1)/d relative to the target's potential φ, stays below the tolerance.
+ * Called in the innermost loop with plain numbers, so that it is inlined there.
+ * @param reach - sum of the cells' radii
+ * @param relative - source mass over target depth, the larger of both directions if mutual
+ */
+function isAccepted(rule: Acceptance, reach: number, distance2: number, relative: number): boolean {
+  const { openingAngle, tolerance, soft2, support } = rule;
+  const u = distance2 + soft2;
+  const reach2 = reach * reach;
+  if (reach2 >= openingAngle * openingAngle * u) return false;
+  if (support > 0 && distance2 <= (reach + support) * (reach + support)) return false;
+  const ratio2 = reach2 / u;
+  let fall = ratio2;
+  for (let k = 0; k < rule.order; k++) fall *= ratio2;
+  return relative * relative * fall < tolerance * tolerance * u;
 }
 
 /** Sizes below which pairs are summed directly: without asking, and when cells were refused. */
@@ -171,10 +191,7 @@ class Walk {
     const sT = tree.topology;
     const tb = target.bodies;
     const sb = tree.bodies;
-    const { soft2, support } = acceptance;
-    const angle2 = acceptance.openingAngle ** 2;
-    const tolerance2 = acceptance.tolerance ** 2;
-    const power = acceptance.order + 1;
+    const { soft2 } = acceptance;
     let stack = scratch.stack;
     let cells = 0;
     let pairCount = 0;
@@ -197,21 +214,11 @@ class Walk {
         const dy = tG[gt + 1] - sG[gs + 1];
         const dz = tG[gt + 2] - sG[gs + 2];
         const d2 = dx * dx + dy * dy + dz * dz;
-        const u = d2 + soft2;
-        const reach = rt + rs;
-        const reach2 = reach * reach;
-        if (reach2 < angle2 * u && (support === 0 || d2 > (reach + support) * (reach + support))) {
-          const ratio2 = reach2 / u;
-          let fall = ratio2;
-          for (let k = 1; k < power; k++) fall *= ratio2;
-          const m = sG[gs + NODE_MASS];
-          const least = tG[gt + NODE_DEPTH];
-          if (m * m * fall < tolerance2 * least * least * u) {
-            const lt = (t === t0 ? 0 : t - firstSlot + 1) * localStride;
-            interact(tG, gt, locals, lt, sG, gs, multipoles, s * momentStride, soft2);
-            cells++;
-            continue;
-          }
+        if (isAccepted(acceptance, rt + rs, d2, sG[gs + NODE_MASS] / tG[gt + NODE_DEPTH])) {
+          const lt = (t === t0 ? 0 : t - firstSlot + 1) * localStride;
+          interact(tG, gt, locals, lt, sG, gs, multipoles, s * momentStride, soft2);
+          cells++;
+          continue;
         }
       }
       const tLeaf = tT[pt + NODE_CHILDREN] === 0;
@@ -266,10 +273,7 @@ class Walk {
     const G = tree.geometry;
     const T = tree.topology;
     const { x, y, z, mass } = tree.bodies;
-    const { soft2, support } = acceptance;
-    const angle2 = acceptance.openingAngle ** 2;
-    const tolerance2 = acceptance.tolerance ** 2;
-    const power = acceptance.order + 1;
+    const { soft2 } = acceptance;
     let stack = scratch.stack;
     let cells = 0;
     let pairCount = 0;
@@ -321,35 +325,27 @@ class Walk {
         const dy = G[ga + 1] - G[gb + 1];
         const dz = G[ga + 2] - G[gb + 2];
         const d2 = dx * dx + dy * dy + dz * dz;
-        const u = d2 + soft2;
-        const reach = ra + rb;
-        const reach2 = reach * reach;
-        if (reach2 < angle2 * u && (support === 0 || d2 > (reach + support) * (reach + support))) {
-          const ratio2 = reach2 / u;
-          let fall = ratio2;
-          for (let k = 1; k < power; k++) fall *= ratio2;
-          const relative = Math.max(
-            G[ga + NODE_MASS] / G[gb + NODE_DEPTH],
-            G[gb + NODE_MASS] / G[ga + NODE_DEPTH],
+        const relative = Math.max(
+          G[ga + NODE_MASS] / G[gb + NODE_DEPTH],
+          G[gb + NODE_MASS] / G[ga + NODE_DEPTH],
+        );
+        if (isAccepted(acceptance, ra + rb, d2, relative)) {
+          const la = (a === root ? 0 : a - firstSlot + 1) * localStride;
+          const lb = (b === root ? 0 : b - firstSlot + 1) * localStride;
+          interactBoth(
+            G,
+            multipoles,
+            locals,
+            ga,
+            a * momentStride,
+            la,
+            gb,
+            b * momentStride,
+            lb,
+            soft2,
           );
-          if (relative * relative * fall < tolerance2 * u) {
-            const la = (a === root ? 0 : a - firstSlot + 1) * localStride;
-            const lb = (b === root ? 0 : b - firstSlot + 1) * localStride;
-            interactBoth(
-              G,
-              multipoles,
-              locals,
-              ga,
-              a * momentStride,
-              la,
-              gb,
-              b * momentStride,
-              lb,
-              soft2,
-            );
-            cells += 2;
-            continue;
-          }
+          cells += 2;
+          continue;
         }
       }
       const aLeaf = T[pa + NODE_CHILDREN] === 0;

@@ -1,0 +1,15 @@
+/** Measures one file (or 1,000 made bodies) and prints the peak resident memory of this process. */
+import { measureParticles } from '../../dist/dynamics/measure.js';
+import { makeModel } from '../../dist/models/make.js';
+import { startCrew } from '../../dist/parallel/crew.js';
+import { readSnapshot } from '../../dist/snapshot/read.js';
+
+const [file, threads] = process.argv.slice(2);
+const crew = startCrew(Number(threads));
+const particles =
+  file === 'few'
+    ? makeModel({ model: 'plummer', count: 5000, seed: 1, masses: 'equal' })
+    : await readSnapshot(file, {});
+await measureParticles(particles, {}, crew);
+await crew.close();
+console.log(process.resourceUsage().maxRSS * 1024);
