@@ -1,0 +1,73 @@
+/** The same record, bit for bit, for any number of threads: work is cut by the data alone. */
+import { describe, expect, it } from 'vitest';
+import { measureParticles } from '../../dist/dynamics/measure.js';
+import type { MeasureRecord } from '../../dist/dynamics/record.js';
+import type { MeasureOptions } from '../../dist/dynamics/settings.js';
+import { makeModel } from '../../dist/models/make.js';
+import { sumForces } from '../../dist/octree/forces.js';
+import { startCrew } from '../../dist/parallel/crew.js';
+import type { Particles } from '../../dist/snapshot/particles.js';
+
+/** All of a record but what the clock and the number of threads say, as text: doubles survive JSON. */
+function bitsOf(record: MeasureRecord): string {
+  const { seconds, threads, ...engine } = record.engine;
+  expect(threads).toBeGreaterThan(0);
+  expect(Object.keys(seconds).length).toBeGreaterThan(0);
+  return JSON.stringify({ ...record, engine });
+}
+
+async function recordOf(particles: Particles, options: MeasureOptions, threads: number) {
+  const crew = startCrew(threads);
+  try {
+    const record = await measureParticles(particles, options, crew);
+    expect(record.engine.threads).toBe(threads);
+    return bitsOf(record);
+  } finally {
+    await crew.close();
+  }
+}
+
+const OPTIONS: [string, number[], MeasureOptions][] = [
+  ['unsoftened', [2, 3, 7], { error: 1e-4 }],
+  ['Plummer softening', [3, 7], { error: 1e-3, softening: 0.05 }],
+  ['a spline', [2], { error: 1e-3, softening: 0.05, softeningKernel: 'spline' }],
+];
+
+describe.each(['plummer', 'hernquist'] as const)('%s of 20,000 bodies', (model) => {
+  const particles = makeModel({ model, count: 20_000, seed: 5 });
+  // Some fast bodies, so that the bound set takes rounds of subtraction through a tree and body by body.
+  for (let i = 0; i < 20_000; i += 80) particles.vx[i] += 4;
+
+  it.each(OPTIONS)('%s: as on one thread on %j', async (_, many, options) => {
+    const one = await recordOf(particles, options, 1);
+    for (const threads of many) expect(await recordOf(particles, options, threads)).toBe(one);
+  });
+
+  it('accelerations: 1 and 3 threads', async () => {
+    const field = async (threads: number) => {
+      const crew = startCrew(threads);
+      const softening = { kernel: 'plummer', length: 0.02 } as const;
+      const options = { gravity: 1, softening, errorWanted: 1e-4, accelerations: true };
+      const forces = await sumForces(particles, options, crew);
+      await crew.close();
+      expect(forces.origin).toBe('tree');
+      return forces;
+    };
+    const [one, three] = [await field(1), await field(3)];
+    // Typed arrays, element by element.
+    expect(three.acceleration).toEqual(one.acceleration);
+    expect(three.potential).toEqual(one.potential);
+    expect(three.clausiusShare).toEqual(one.clausiusShare);
+  });
+});
+
+it('200,001 bodies, for which sums, radii and densities are spread over threads too', async () => {
+  const particles = makeModel({ model: 'plummer', count: 200_001, seed: 6, masses: 'salpeter' });
+  const options: MeasureOptions = { error: 1e-3 };
+  expect(await recordOf(particles, options, 3)).toBe(await recordOf(particles, options, 1));
+});
+
+it('direct sums of 3000 bodies', async () => {
+  const particles = makeModel({ model: 'plummer', count: 3000, seed: 7 });
+  expect(await recordOf(particles, {}, 2)).toBe(await recordOf(particles, {}, 1));
+});
