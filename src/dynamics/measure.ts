@@ -83,6 +83,13 @@ export async function measureParticles(
   }
 
   const whole = await balanceOf({ bodies: particles, member: null }, fieldOf(forces), crew);
+  if (!(whole.balance.mass > 0)) {
+    throw new InputError(
+      'input.zeroMass',
+      `${file}: no body has mass`,
+      'check which column is the mass, and its type and scale',
+    );
+  }
   const scratch = new Float64Array(new SharedArrayBuffer(particles.count * 8));
   const bound = await boundSet(particles, forces, scratch, crew);
   const boundBalance =

@@ -283,7 +283,16 @@ function tracers({ frame }: Findings): Remark[] {
 
 function centre({ centreAsked, record }: Findings): Remark[] {
   const used = record.frame.centreMethod;
-  if (used === centreAsked) return [];
+  if (used === centreAsked) {
+    if (record.coreRadius !== null) return [];
+    return [
+      {
+        code: 'noCoreRadius',
+        text: 'There is no core radius: it needs the densities of at least eight bodies.',
+        remedy: 'Nothing to do for so few bodies.',
+      },
+    ];
+  }
   return [
     {
       code: 'centreFallback',

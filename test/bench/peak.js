@@ -1,4 +1,5 @@
 /** Measures one file (or 1,000 made bodies) and prints the peak resident memory of this process. */
+import { readFile } from 'node:fs/promises';
 import { measureParticles } from '../../dist/dynamics/measure.js';
 import { makeModel } from '../../dist/models/make.js';
 import { startCrew } from '../../dist/parallel/crew.js';
@@ -12,4 +13,6 @@ const particles =
     : await readSnapshot(file, {});
 await measureParticles(particles, {}, crew);
 await crew.close();
-console.log(process.resourceUsage().maxRSS * 1024);
+// Not resourceUsage().maxRSS: a child starts with its parent's.
+const status = await readFile('/proc/self/status', 'utf8');
+console.log(Number(/VmHWM:\s+(\d+) kB/.exec(status)?.[1]) * 1024);
