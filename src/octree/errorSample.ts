@@ -30,8 +30,8 @@ const TASK: TaskModule<typeof ForcesTask> = {
 };
 
 /** Up to this many bodies the whole sample is summed directly: that is cheaper than the narrow walk. */
-const DIRECT_UP_TO = 32768;
-const DIRECT_SAMPLE = 384;
+const DIRECT_UP_TO = 131_072;
+const DIRECT_SAMPLE = 256;
 const WALK_SAMPLE = 512;
 const DIRECT_OF_WALK = 32;
 
@@ -53,25 +53,25 @@ export interface ErrorSample {
 /**
  * Measures the error of the engine's sums on a sample.
  * @param field - the engine's sums, in input order
- * @param narrowAngle - opening angle of the second walk, well below the engine's
+ * @param narrowAngle - opening angle of the second walk, well below the engine's; null: direct sums only
  */
 export async function sampleError(
   source: SourceTree,
   field: FieldColumns,
   order: number,
   softening: Softening,
-  narrowAngle: number,
+  narrowAngle: number | null,
   crew: Crew,
 ): Promise<ErrorSample> {
   const count = source.tree.bodies.count;
-  const direct = count <= DIRECT_UP_TO;
+  const direct = narrowAngle === null || count <= DIRECT_UP_TO;
   const places = drawPlaces(source.tree, direct ? DIRECT_SAMPLE : WALK_SAMPLE);
   if (places.length === 0) {
     const none = { offset: 0, sigma: 0, rms: 0 };
     return { phi: none, psi: none, bodies: 0, interactions: 0 };
   }
   const engine = engineSums(source.tree, field, places);
-  if (direct) {
+  if (narrowAngle === null || direct) {
     const exact = await directSums(source, softening, places, crew);
     return {
       phi: compare(engine, exact, 0),

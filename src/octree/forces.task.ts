@@ -155,21 +155,32 @@ export const DIRECT_SLICE = 262144;
 export function sampleDirectly(round: DirectSampleRound, takeJob: TakeJob): void {
   const { source, softening, places, sums } = round;
   const { x, y, z, mass, count } = source.tree.bodies;
-  const pairs = pairKernelsOf(softening.kernel, false);
+  const { onto, atPoint } = pairKernelsOf(softening.kernel, false);
   const soft = pairSofteningOf(softening.kernel, softening.length);
   const slices = Math.ceil(count / DIRECT_SLICE);
+  const none = new Float64Array(0);
+  const one = { phi: new Float64Array(1), psi: new Float64Array(1), ax: none, ay: none, az: none };
   const out = new Float64Array(5);
   for (let job = takeJob(); job >= 0; job = takeJob()) {
     const place = places[Math.floor(job / slices)];
     const begin = (job % slices) * DIRECT_SLICE;
     const end = Math.min(count, begin + DIRECT_SLICE);
-    out.fill(0);
     const split = Math.min(end, Math.max(begin, place));
     const after = place >= begin && place < end ? place + 1 : split;
-    pairs.atPoint(x[place], y[place], z[place], x, y, z, mass, begin, split, out, soft);
-    pairs.atPoint(x[place], y[place], z[place], x, y, z, mass, after, end, out, soft);
-    sums[2 * job] = out[0];
-    sums[2 * job + 1] = out[1];
+    one.phi[0] = 0;
+    one.psi[0] = 0;
+    onto(x, y, z, place, place + 1, x, y, z, mass, begin, split, place, one, soft);
+    onto(x, y, z, place, place + 1, x, y, z, mass, after, end, place, one, soft);
+    if (!Number.isFinite(one.phi[0])) {
+      // Another body at the same point: the slower kernel leaves it out, as the engine does.
+      out.fill(0);
+      atPoint(x[place], y[place], z[place], x, y, z, mass, begin, split, out, soft);
+      atPoint(x[place], y[place], z[place], x, y, z, mass, after, end, out, soft);
+      one.phi[0] = out[0];
+      one.psi[0] = out[1];
+    }
+    sums[2 * job] = one.phi[0];
+    sums[2 * job + 1] = one.psi[0];
   }
 }
 

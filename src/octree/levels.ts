@@ -10,8 +10,11 @@ export interface Level {
   readonly openingAngle: number;
   /** … and if the interaction's error relative to the target's potential is estimated below this. */
   readonly tolerance: number;
-  /** Opening angle of the classical walk that measures this level's error. */
-  readonly narrowAngle: number;
+  /**
+   * Opening angle of the classical walk that measures this level's error where bodies are many; null
+   * where no affordable walk is tighter than the level itself, and the error is measured directly.
+   */
+  readonly narrowAngle: number | null;
   /** Nanoseconds of one thread a body takes, roughly: to choose between levels and direct sums. */
   readonly cost: number;
   /** Measured error of U over |U| that is usual at {@link REACHES_AT} bodies: to choose the first level. */
@@ -19,19 +22,15 @@ export interface Level {
 }
 
 export const LEVELS: readonly Level[] = [
-  { order: 2, openingAngle: 1, tolerance: 6e-3, narrowAngle: 0.5, cost: 1500, reaches: 1.5e-4 },
-  { order: 3, openingAngle: 0.95, tolerance: 2e-3, narrowAngle: 0.45, cost: 1700, reaches: 2e-5 },
-  { order: 4, openingAngle: 0.95, tolerance: 1e-3, narrowAngle: 0.4, cost: 2100, reaches: 7e-6 },
-  { order: 5, openingAngle: 0.9, tolerance: 2e-4, narrowAngle: 0.4, cost: 4000, reaches: 1.5e-6 },
-  {
-    order: 6,
-    openingAngle: 0.85,
-    tolerance: 2e-5,
-    narrowAngle: 0.35,
-    cost: 12000,
-    reaches: 2.5e-7,
-  },
-  { order: 6, openingAngle: 0.75, tolerance: 1e-6, narrowAngle: 0.3, cost: 30000, reaches: 3e-8 },
+  { order: 2, openingAngle: 1, tolerance: 6e-3, narrowAngle: 0.5, cost: 1600, reaches: 1.5e-4 },
+  { order: 3, openingAngle: 0.95, tolerance: 2e-3, narrowAngle: 0.45, cost: 2100, reaches: 2.5e-5 },
+  { order: 4, openingAngle: 0.9, tolerance: 3e-4, narrowAngle: 0.4, cost: 3500, reaches: 6e-6 },
+  { order: 4, openingAngle: 0.85, tolerance: 1e-4, narrowAngle: 0.35, cost: 5000, reaches: 2.5e-6 },
+  { order: 5, openingAngle: 0.85, tolerance: 5e-5, narrowAngle: null, cost: 9e3, reaches: 1e-6 },
+  { order: 5, openingAngle: 0.8, tolerance: 1e-5, narrowAngle: null, cost: 14e3, reaches: 3e-7 },
+  { order: 5, openingAngle: 0.75, tolerance: 3e-6, narrowAngle: null, cost: 22e3, reaches: 1e-7 },
+  { order: 6, openingAngle: 0.75, tolerance: 1e-6, narrowAngle: null, cost: 50e3, reaches: 2e-8 },
+  { order: 6, openingAngle: 0.65, tolerance: 1e-7, narrowAngle: null, cost: 100e3, reaches: 3e-9 },
 ];
 
 /** The cheapest level that usually meets an error of U at this number of bodies. */
