@@ -1,15 +1,17 @@
 /**
  * The bound set by iterated unbinding: bodies with ½|v − v_c|² + φ ≥ 0 are removed, φ and v_c of the
  * rest found again, until nothing changes. A round removes at most the least bound quarter of the
- * set, since removing all at once can strip a set that is warm as a whole.
- * Source: common practice; the cap per round has no source.
+ * set, and of a few bodies only the least bound one, since removing all at once can strip a set that
+ * is warm as a whole. Fast bodies that have not been removed yet shift the mean velocity and with it
+ * everybody's energy: where it is off the median, v_c is the median while there are bodies to remove.
+ * Source: common practice; the cap per round and the median have no source.
  */
 import { sumForces, type Forces } from '../octree/forces.ts';
 import { subtractBodies } from '../octree/subtract.ts';
 import type { Crew } from '../parallel/crew.ts';
 import type { SetField } from './balance.ts';
 import { fieldOf } from './balance.ts';
-import { countUnbound, frameOf, type BodySet } from './sums.ts';
+import { countUnbound, frameOf, type BodySet, type SetFrame } from './sums.ts';
 import type { Bodies } from './sums.task.ts';
 
 export interface BoundSet {
@@ -22,8 +24,11 @@ export interface BoundSet {
   readonly settled: boolean;
 }
 
-const MOST_ROUNDS = 50;
+/** Enough to empty a set of 10⁸ bodies by quarters and at last one by one. */
+const MOST_ROUNDS = 100;
 const LARGEST_SHARE = 0.25;
+/** Of at most this many bodies one is removed a round, by the mean velocity: a median would be one body's. */
+const ONE_BY_ONE = 32;
 /** A removal of more than this share of the set is summed again rather than subtracted. */
 const SUM_AGAIN_ABOVE = 0.3;
 
@@ -49,9 +54,9 @@ export async function boundSet(
       countUnbound(set, velocityFrame, field.potential, specificEnergy, crew);
     let unbound = await countIn(frame);
     if (unbound === 0) return { set, field, rounds: round, settled: true };
-    if (round === 0) {
-      // A few fast bodies shift the mean velocity and with it everybody's energy, but not the median.
-      const inMedianFrame = await countIn({ ...frame, frame: medianVelocity(bodies, frame.frame) });
+    const robust = frame.particles > ONE_BY_ONE ? medianFrame(set, frame) : null;
+    if (robust !== null) {
+      const inMedianFrame = await countIn(robust);
       unbound = inMedianFrame > 0 ? inMedianFrame : await countIn(frame);
     }
     if (kept === null) {
@@ -70,22 +75,44 @@ export async function boundSet(
 }
 
 const MEDIAN_SAMPLE = 4095;
+/** Mean and median differ if by more than this many interquartile ranges over √sample: some 5σ. */
+const MEDIAN_OFF = 5;
 
-/** The frame with its velocity replaced by medians, component by component, over a sample of bodies. */
-function medianVelocity(bodies: Bodies, frame: Float64Array): Float64Array {
-  const robust = frame.slice();
-  const size = Math.min(bodies.count, MEDIAN_SAMPLE);
+/**
+ * The frame with its velocity replaced by medians by mass, component by component, over a sample of
+ * the set; null if the mean velocity agrees with them.
+ */
+function medianFrame({ bodies, member }: BodySet, frame: SetFrame): SetFrame | null {
+  const { mass } = bodies;
+  const size = Math.min(frame.particles, MEDIAN_SAMPLE);
+  const sample = new Uint32Array(size);
+  let sampleMass = 0;
+  for (let i = 0, k = 0, taken = 0; taken < size; i++) {
+    if (member !== null && member[i] === 0) continue;
+    if (k++ < Math.floor(((taken + 0.5) * frame.particles) / size)) continue;
+    sample[taken++] = i;
+    sampleMass += mass[i];
+  }
+  if (sampleMass === 0) return null;
+  const robust = frame.frame.slice();
+  let off = false;
   [bodies.vx, bodies.vy, bodies.vz].forEach((column, axis) => {
-    const sample = Float64Array.from(
-      { length: size },
-      (_, k) => column[Math.floor(((k + 0.5) * bodies.count) / size)],
-    ).sort();
-    robust[3 + axis] = sample[size >> 1];
+    sample.sort((a, b) => column[a] - column[b]);
+    const at = (share: number): number => {
+      let k = 0;
+      let rest = share * sampleMass - mass[sample[0]];
+      while (rest > 0 && k + 1 < size) rest -= mass[sample[++k]];
+      return column[sample[k]];
+    };
+    const median = at(0.5);
+    const range = at(0.75) - at(0.25);
+    if (Math.abs(median - robust[3 + axis]) > (MEDIAN_OFF * range) / Math.sqrt(size)) off = true;
+    robust[3 + axis] = median;
   });
-  return robust;
+  return off ? { ...frame, frame: robust } : null;
 }
 
-/** Unbound members, or the least bound quarter of the set if they are more than that. */
+/** Unbound members, or if they are more than a round may remove, the least bound of them. */
 function leastBound(
   specificEnergy: Float64Array,
   kept: Uint8Array,
@@ -96,10 +123,8 @@ function leastBound(
   for (let i = 0, k = 0; i < kept.length; i++) {
     if (kept[i] === 1 && specificEnergy[i] >= 0) indices[k++] = i;
   }
-  const most = Math.max(1, Math.floor(LARGEST_SHARE * particles));
+  const most = particles > ONE_BY_ONE ? Math.floor(LARGEST_SHARE * particles) : 1;
   if (unbound <= most) return indices;
-  // Few bodies go at the end: when hardly any are left, all of them.
-  if (particles <= 8) return indices;
   const energies = Float64Array.from(indices, (i) => specificEnergy[i]).sort();
   const limit = energies[unbound - most];
   return indices.filter((i) => specificEnergy[i] >= limit);
