@@ -60,13 +60,7 @@ export async function measureParticles(
     },
     crew,
   );
-  if (!Number.isFinite(forces.potentialEnergy)) {
-    throw new InputError(
-      'input.overflow',
-      `${file}: the potential energy is beyond the range of double precision`,
-      'check byte order, types and units: masses and lengths this extreme are rarely meant',
-    );
-  }
+  if (!Number.isFinite(forces.potentialEnergy)) throw overflow(file, 'the potential energy');
   const summed = performance.now();
   context.onStage?.('dynamics', null);
   const coincident =
@@ -147,6 +141,8 @@ export async function measureParticles(
       coulombLogarithm: logarithm,
     },
   } as const;
+  const unfit = firstNotFinite(record);
+  if (unfit !== null) throw overflow(file, unfit);
   const remarks = findRemarks({
     particles,
     record,
@@ -192,6 +188,25 @@ const vector = (numbers: ArrayLike<number>, at: number): Vector => [
   numbers[at + 1],
   numbers[at + 2],
 ];
+
+function overflow(file: string, what: string): InputError {
+  return new InputError(
+    'input.overflow',
+    `${file}: ${what} is beyond the range of double precision`,
+    'check byte order, types and units: masses, lengths and velocities this extreme are rarely meant',
+  );
+}
+
+/** Key of the first number that is not finite, or null. */
+function firstNotFinite(value: unknown, key = ''): string | null {
+  if (typeof value === 'number') return Number.isFinite(value) ? null : key;
+  if (value === null || typeof value !== 'object') return null;
+  for (const [name, inner] of Object.entries(value)) {
+    const found = firstNotFinite(inner, key === '' ? name : `${key}.${name}`);
+    if (found !== null) return found;
+  }
+  return null;
+}
 
 function largest(column: ArrayLike<number>): number {
   let most = 0;

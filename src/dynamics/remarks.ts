@@ -121,9 +121,9 @@ function duplicateIds({ duplicates }: Findings): Remark[] {
 /** Rounding of single precision against the size and speed of the system itself. */
 function precision({ particles, record, frame }: Findings): Remark[] {
   const bits = particles.origin.mantissaBits;
-  if (bits >= 53) return [];
-  const unit = 2 ** -bits;
   const { halfMassRadius, velocityDispersion } = record;
+  if (bits >= 53 || halfMassRadius === 0) return [];
+  const unit = 2 ** -bits;
   const far = Math.hypot(frame.frame[0], frame.frame[1], frame.frame[2]) + halfMassRadius;
   const fast = Math.hypot(frame.frame[3], frame.frame[4], frame.frame[5]) + velocityDispersion;
   const position = (far * unit) / halfMassRadius;
