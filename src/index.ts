@@ -12,6 +12,8 @@
 import type { MeasureRecord } from './dynamics/record.ts';
 import type { MeasureOptions } from './dynamics/settings.ts';
 import type { MakeOptions } from './models/make.ts';
+import type { BodyColumns } from './octree/build.ts';
+import type { ForceOptions, Forces } from './octree/forces.ts';
 import { defaultThreads, startCrew, type Crew } from './parallel/crew.ts';
 import type { Particles } from './snapshot/particles.ts';
 import type { FieldName, ReadOptions, SnapshotDescription } from './snapshot/reading.ts';
@@ -46,7 +48,9 @@ export type {
   Vector,
 } from './dynamics/record.ts';
 export type { MeasureOptions } from './dynamics/settings.ts';
-export type { SofteningKernel } from './octree/softening.ts';
+export type { BodyColumns } from './octree/build.ts';
+export type { ForceOptions, Forces } from './octree/forces.ts';
+export type { Softening, SofteningKernel } from './octree/softening.ts';
 export type { MakeOptions, ModelName } from './models/make.ts';
 export type {
   FloatColumn,
@@ -115,6 +119,19 @@ export async function measureSnapshot(
   const { onStage, ...measurement } = options;
   const { measureParticles } = await import('./dynamics/measure.ts');
   return measureParticles(particles, measurement, crew, { onStage });
+}
+
+/**
+ * Potential, Clausius share and, if asked, acceleration of every body, with measured errors.
+ * @param columns - positions and masses in input order, finite, masses 0 or more, as
+ *   {@link readSnapshot} sees to; particles will do
+ */
+export async function sumForces(
+  columns: BodyColumns,
+  options: ForceOptions,
+  crew: Crew,
+): Promise<Forces> {
+  return (await import('./octree/forces.ts')).sumForces(columns, options, crew);
 }
 
 /**

@@ -55,7 +55,6 @@ export async function measureParticles(
       softening: { kernel, length },
       errorWanted: settings.error.value,
       exact: settings.exact.value,
-      accelerations: options.accelerations === true,
       onStage: (stage) => context.onStage?.(stage, null),
     },
     crew,

@@ -23,7 +23,6 @@ export interface MeasureOptions {
   readonly fractions?: readonly number[];
   /** What to do with bodies at one point without softening. */
   readonly coincident?: 'leave-out' | 'refuse';
-  readonly accelerations?: boolean;
 }
 
 export const DEFAULT_ERROR = 1e-5;

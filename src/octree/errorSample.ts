@@ -8,7 +8,7 @@
  */
 import type * as ForcesTask from './forces.task.ts';
 import type { Crew, TaskModule } from '../parallel/crew.ts';
-import { DIRECT_SLICE } from './forces.task.ts';
+import { DIRECT_SLICE, DIRECT_SUMS } from './forces.task.ts';
 import type { FieldColumns } from './forces.task.ts';
 import { sumsAtBodies } from './pointWalk.ts';
 import type { Softening } from './softening.ts';
@@ -141,25 +141,60 @@ function engineSums(tree: Octree, field: FieldColumns, places: Uint32Array): Flo
   return sums;
 }
 
+/** Direct sums at bodies, {@link DIRECT_SUMS} numbers each. */
+async function sumDirectly(
+  source: SourceTree,
+  softening: Softening,
+  places: Uint32Array,
+  force: boolean,
+  crew: Crew,
+): Promise<Float64Array> {
+  const slices = Math.ceil(source.tree.bodies.count / DIRECT_SLICE);
+  const partial = shared(places.length * slices * DIRECT_SUMS);
+  const round = { source, softening, places, force, sums: partial };
+  await crew.run(TASK, 'sampleDirectly', round, places.length * slices);
+  const sums = new Float64Array(places.length * DIRECT_SUMS);
+  for (let k = 0; k < partial.length; k++) {
+    sums[DIRECT_SUMS * Math.floor(k / (DIRECT_SUMS * slices)) + (k % DIRECT_SUMS)] += partial[k];
+  }
+  return sums;
+}
+
 async function directSums(
   source: SourceTree,
   softening: Softening,
   places: Uint32Array,
   crew: Crew,
 ): Promise<Float64Array> {
-  const slices = Math.ceil(source.tree.bodies.count / DIRECT_SLICE);
-  const partial = shared(places.length * slices * 2);
-  await crew.run(
-    TASK,
-    'sampleDirectly',
-    { source, softening, places, sums: partial },
-    places.length * slices,
-  );
-  const sums = new Float64Array(places.length * 2);
-  for (let k = 0; k < partial.length; k++) {
-    sums[2 * Math.floor(k / (2 * slices)) + (k % 2)] += partial[k];
-  }
-  return sums;
+  const sums = await sumDirectly(source, softening, places, false, crew);
+  const two = { length: places.length * 2 };
+  return Float64Array.from(two, (_, k) => sums[DIRECT_SUMS * (k >> 1) + (k & 1)]);
+}
+
+const ACCELERATION_SAMPLE = 64;
+
+/**
+ * Rms over a sample of bodies of |a − a_direct|/|a_direct|, the usual measure of force errors.
+ * @param field - the engine's sums with accelerations, in input order and without G
+ */
+export async function sampleAccelerationError(
+  source: SourceTree,
+  field: FieldColumns,
+  softening: Softening,
+  crew: Crew,
+): Promise<number> {
+  const places = drawPlaces(source.tree, ACCELERATION_SAMPLE);
+  if (places.length === 0) return 0;
+  const exact = await sumDirectly(source, softening, places, true, crew);
+  let squares = 0;
+  places.forEach((place, k) => {
+    const i = source.tree.bodies.input[place];
+    const [ax, ay, az] = exact.subarray(DIRECT_SUMS * k + 2, DIRECT_SUMS * (k + 1));
+    const size = Math.hypot(ax, ay, az);
+    const error = Math.hypot(field.ax[i] - ax, field.ay[i] - ay, field.az[i] - az);
+    if (size > 0) squares += (error / size) ** 2;
+  });
+  return Math.sqrt(squares / places.length);
 }
 
 /** Mean and scatter of a − b in the given one of the two sums a body. */

@@ -144,43 +144,46 @@ export interface DirectSampleRound {
   readonly softening: Softening;
   /** Places in tree order of the sampled bodies. */
   readonly places: Uint32Array;
-  /** Two numbers a slice of the sources and body: its sums phi and psi. */
+  /** Also sum accelerations. */
+  readonly force: boolean;
+  /** {@link DIRECT_SUMS} numbers a body and slice of the sources: phi, psi, ax, ay, az. */
   readonly sums: Float64Array;
 }
+
+/** Numbers that a direct sum at a sampled body gives. */
+export const DIRECT_SUMS = 5;
 
 /** Bodies that a job of a direct sum at a sampled body runs over, to keep jobs short. */
 export const DIRECT_SLICE = 262144;
 
-/** Direct sums at sampled bodies, sliced over the sources; `sums` has two numbers a slice and body. */
+/** Direct sums at sampled bodies, sliced over the sources. */
 export function sampleDirectly(round: DirectSampleRound, takeJob: TakeJob): void {
-  const { source, softening, places, sums } = round;
+  const { source, softening, places, force, sums } = round;
   const { x, y, z, mass, count } = source.tree.bodies;
-  const { onto, atPoint } = pairKernelsOf(softening.kernel, false);
+  const { onto, atPoint } = pairKernelsOf(softening.kernel, force);
   const soft = pairSofteningOf(softening.kernel, softening.length);
   const slices = Math.ceil(count / DIRECT_SLICE);
-  const none = new Float64Array(0);
-  const one = { phi: new Float64Array(1), psi: new Float64Array(1), ax: none, ay: none, az: none };
-  const out = new Float64Array(5);
+  const [phi, psi, ax, ay, az] = Array.from({ length: DIRECT_SUMS }, () => new Float64Array(1));
+  const one = { phi, psi, ax, ay, az };
+  const out = new Float64Array(DIRECT_SUMS);
   for (let job = takeJob(); job >= 0; job = takeJob()) {
     const place = places[Math.floor(job / slices)];
     const begin = (job % slices) * DIRECT_SLICE;
     const end = Math.min(count, begin + DIRECT_SLICE);
     const split = Math.min(end, Math.max(begin, place));
     const after = place >= begin && place < end ? place + 1 : split;
-    one.phi[0] = 0;
-    one.psi[0] = 0;
+    for (const sum of [phi, psi, ax, ay, az]) sum[0] = 0;
     onto(x, y, z, place, place + 1, x, y, z, mass, begin, split, place, one, soft);
     onto(x, y, z, place, place + 1, x, y, z, mass, after, end, place, one, soft);
-    if (!Number.isFinite(one.phi[0])) {
+    if (!Number.isFinite(phi[0])) {
       // Another body at the same point: the slower kernel leaves it out, as the engine does.
       out.fill(0);
       atPoint(x[place], y[place], z[place], x, y, z, mass, begin, split, out, soft);
       atPoint(x[place], y[place], z[place], x, y, z, mass, after, end, out, soft);
-      one.phi[0] = out[0];
-      one.psi[0] = out[1];
+      sums.set(out, job * DIRECT_SUMS);
+      continue;
     }
-    sums[2 * job] = one.phi[0];
-    sums[2 * job + 1] = one.psi[0];
+    sums.set([phi[0], psi[0], ax[0], ay[0], az[0]], job * DIRECT_SUMS);
   }
 }
 

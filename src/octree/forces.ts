@@ -6,7 +6,12 @@ import type * as ForcesTask from './forces.task.ts';
 import { crewOfOne, type Crew, type TaskModule } from '../parallel/crew.ts';
 import { buildOctree, type BodyColumns } from './build.ts';
 import { CompensatedSum } from '../numerics/compensated.ts';
-import { sampleError, type ErrorSample, type SampledError } from './errorSample.ts';
+import {
+  sampleAccelerationError,
+  sampleError,
+  type ErrorSample,
+  type SampledError,
+} from './errorSample.ts';
 import { expansionOf } from './expansion.ts';
 import { DIRECT_TARGETS, type FieldColumns } from './forces.task.ts';
 import { gatherSlot, leastOfChildren } from './multipoles.ts';
@@ -73,6 +78,8 @@ export interface Forces {
   readonly clausiusError: number;
   /** Rms error of single φ_i over the mean |φ|; 0 for direct sums. */
   readonly potentialRms: number;
+  /** Rms of |δa|/|a| over a sample; 0 for direct sums, null if accelerations were not asked for. */
+  readonly accelerationError: number | null;
   readonly level: Level | null;
   /** Pairs of bodies at one point, left out of unsoftened sums. */
   readonly coincidentPairs: number;
@@ -132,6 +139,7 @@ async function sumAllDirectly(
   return finish(columns, options, field, {
     origin: 'direct',
     error: null,
+    accelerationError: options.accelerations === true ? 0 : null,
     level: null,
     coincidentPairs: left.reduce((sum, n) => sum + n, 0) / 2,
     costs,
@@ -167,12 +175,17 @@ async function sumByTree(
     const walked = performance.now();
     options.onStage?.('error');
     const error = await sampleError(source, field, level.order, softening, level.narrowAngle, crew);
+    const accelerationError =
+      options.accelerations === true
+        ? await sampleAccelerationError(source, field, softening, crew)
+        : null;
     errorSeconds += (performance.now() - walked) / 1000;
     sampled += error.interactions;
     const total = performance.now();
     const result = finish(columns, options, field, {
       origin: 'tree',
       error,
+      accelerationError,
       level,
       coincidentPairs: counts.coincidentPairs,
       costs: {
@@ -277,6 +290,7 @@ function allocateField(count: number, options: ForceOptions): FieldColumns {
 interface Outcome {
   readonly origin: 'tree' | 'direct';
   readonly error: ErrorSample | null;
+  readonly accelerationError: number | null;
   readonly level: Level | null;
   readonly coincidentPairs: number;
   readonly costs: ForceCosts;
@@ -336,6 +350,7 @@ function finish(
       what.error && potentialEnergy < 0
         ? (what.error.phi.rms * scale) / Math.abs(potentialEnergy)
         : 0,
+    accelerationError: what.accelerationError,
     level: what.level,
     coincidentPairs: what.coincidentPairs,
     costs: what.costs,
