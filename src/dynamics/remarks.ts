@@ -8,6 +8,7 @@ import type { BoundSet } from './bound.ts';
 import type { Duplicates } from './duplicates.ts';
 import type { CentreMethod, MeasureRecord } from './record.ts';
 import type { SetFrame } from './sums.ts';
+import { LEAST_LAMBDA } from './times.ts';
 
 /** All that findings are made from; figures as they will stand in the record. */
 export interface Findings {
@@ -88,7 +89,10 @@ function errorPromise({ forces, record }: Findings): Remark[] {
     {
       code: 'errorNotReached',
       text: `The relative error of U is only known to be below ${short(reached)}, not ${short(error.value)} as asked.`,
-      remedy: 'Use --exact for direct sums, or a larger --error.',
+      remedy:
+        forces.origin === 'direct'
+          ? 'Use a larger --error: these are direct sums, which double precision bounds.'
+          : 'Use --exact for direct sums, or a larger --error.',
     },
   ];
 }
@@ -305,6 +309,16 @@ function centre({ centreAsked, record }: Findings): Remark[] {
 function relaxation({ record, frame }: Findings): Remark[] {
   if (record.relaxation.time !== null) return [];
   const factor = record.relaxation.coulombFactor;
+  if (factor * frame.heavy > LEAST_LAMBDA) {
+    const { length } = record.settings.softening.value;
+    return [
+      {
+        code: 'noRelaxationTime',
+        text: `There is no relaxation time: with a softening length of ${short(length)} and a half-mass radius of ${short(record.halfMassRadius)} encounters are softened away.`,
+        remedy: 'Nothing to do if the run is meant to be collisionless; else check --softening.',
+      },
+    ];
+  }
   return [
     {
       code: 'noRelaxationTime',

@@ -23,7 +23,7 @@ export interface CoulombInput {
 }
 
 /** Least γN for which two-body relaxation by many weak encounters is a meaningful idea. */
-const LEAST_LAMBDA = 3;
+export const LEAST_LAMBDA = 3;
 
 /**
  * Coulomb logarithm ln Λ with Λ = γN, or r_h/ε where that is smaller and ε exceeds the impact

@@ -271,6 +271,19 @@ describe('odd snapshots', () => {
     expect(remark?.text).toMatch(/would be 1 with G = (0\.8|0\.9|1).*natural/);
   });
 
+  it('an error that cannot be had, and relaxation that softening ends', async () => {
+    const direct = await sound(particlesOf(cloud(500, 16)), { error: 1e-15 });
+    const remark = direct.remarks.find(({ code }) => code === 'errorNotReached');
+    expect(remark?.text).toContain('1e-15');
+    expect(remark?.remedy).not.toContain('--exact'); // it was exact
+    const few = await sound(particlesOf(cloud(9, 17)));
+    const why = (record: MeasureRecord) =>
+      record.remarks.find(({ code }) => code === 'noRelaxationTime')?.text;
+    expect(why(few)).toContain('N = 9');
+    expect(why(await sound(particlesOf(cloud(500, 17))))).toBeUndefined();
+    expect(why(await sound(particlesOf(cloud(500, 17)), { softening: 5 }))).toContain('softening');
+  });
+
   it('magnitudes near the ends of what is read', async () => {
     // Sums, squares and products of finite numbers either stay finite, or the snapshot is refused.
     const scales: [number, number, number][] = [
