@@ -19,6 +19,7 @@ import type { Particles } from './snapshot/particles.ts';
 import type { FieldName, ReadOptions, SnapshotDescription } from './snapshot/reading.ts';
 import type { AveragedBalance } from './survey/average.ts';
 import type { MakeSnapshotOptions } from './survey/make.ts';
+import type { FileOutcome } from './survey/many.ts';
 import type { SurveyOptions } from './survey/measure.ts';
 
 export {
@@ -69,6 +70,7 @@ export type {
 } from './snapshot/reading.ts';
 export type { AveragedBalance } from './survey/average.ts';
 export type { MakeSnapshotOptions } from './survey/make.ts';
+export type { FileOutcome } from './survey/many.ts';
 export type { Stage, SurveyOptions } from './survey/measure.ts';
 
 /** Options of {@link measure}: those of the measurement, of the reader, and the number of threads. */
@@ -105,6 +107,19 @@ export async function measureFile(
   crew: Crew,
 ): Promise<MeasureRecord> {
   return (await import('./survey/measure.ts')).measureFile(path, options, crew);
+}
+
+/**
+ * Reads and measures many snapshots: small ones spread whole over the crew's workers, large ones
+ * worked on by all together. Records and errors come in the order of the paths.
+ * @returns an async iterator of outcomes, each with a record or the error that kept it from one
+ */
+export async function measureFiles(
+  paths: readonly string[],
+  options: SurveyOptions,
+  crew: Crew,
+): Promise<AsyncGenerator<FileOutcome>> {
+  return (await import('./survey/many.ts')).measureMany(paths, options, crew);
 }
 
 /**

@@ -6,7 +6,7 @@ import {
   findSnapshots,
   InputError,
   makeSnapshot,
-  measureFile,
+  measureFiles,
   measureSnapshot,
   type Crew,
   type ExitCode,
@@ -52,10 +52,11 @@ async function solarSystem(
 ): Promise<string> {
   const records: MeasureRecord[] = [];
   const files = await solarFiles();
-  for (const [index, file] of files.entries()) {
+  for await (const { record, error } of await measureFiles(files, {}, crew)) {
     await turn(streams.interrupt);
-    progress.say('the solar system over twelve years', index / files.length);
-    records.push(await measureFile(file, { read: { signal: streams.interrupt } }, crew));
+    progress.say('the solar system over twelve years', records.length / files.length);
+    if (error !== null) throw error;
+    records.push(record);
   }
   progress.clear();
   const average = await averageBalance(records);

@@ -1,7 +1,7 @@
 /** `settlemark measure`: one record a snapshot. */
 import {
   findSnapshots,
-  measureFile,
+  measureFiles,
   parseColumns,
   type CentreMethod,
   type ExitCode,
@@ -66,17 +66,23 @@ export async function measure(
       const records: MeasureRecord[] = [];
       let begun = 0;
       const form = await formatter(format, isSeveral, out === undefined ? streams : null);
+      const name = () =>
+        files.length > 1 ? `${begun + 1} of ${files.length}, ${files[begun]}` : files[0];
+      const outcomes = await measureFiles(
+        files,
+        { ...survey, onStage: (stage, fraction) => progress.stage(name(), stage, fraction) },
+        crew,
+      );
       const code = await eachPath(
         files,
         streams,
         async (file) => {
           await turn(streams.interrupt);
-          const name = files.length > 1 ? `${++begun} of ${files.length}, ${file}` : file;
-          const record = await measureFile(
-            file,
-            { ...survey, onStage: (stage, fraction) => progress.stage(name, stage, fraction) },
-            crew,
-          ).finally(() => progress.clear());
+          const next = await outcomes.next().finally(() => progress.clear());
+          begun++;
+          if (next.done === true) throw new Error(`nothing came of ${file}`);
+          const { record, error } = next.value;
+          if (error !== null) throw error;
           if (format === 'json') records.push(record);
           else await sink(form(record));
           if (remarksApart && record.remarks.length > 0) {

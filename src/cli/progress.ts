@@ -9,6 +9,7 @@ const ERASE = '\r\u001b[2K';
 const NAME_WIDTH = 40;
 
 const DOING: Record<Stage, string> = {
+  together: 'and those after it',
   reading: 'reading',
   tree: 'building the tree',
   forces: 'summing forces',

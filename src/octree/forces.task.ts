@@ -196,6 +196,18 @@ export interface DirectRound {
   readonly field: FieldColumns;
 }
 
+/** Direct sums over all pairs at once, both ways: one job, half the work. Returns coincident pairs. */
+export function sumAllPairs(round: DirectRound, takeJob: TakeJob): number {
+  const { x, y, z, mass, softening, field } = round;
+  const { inside } = pairKernelsOf(softening.kernel, field.ax.length > 0);
+  const soft = pairSofteningOf(softening.kernel, softening.length);
+  let coincident = 0;
+  for (let job = takeJob(); job >= 0; job = takeJob()) {
+    coincident += inside(x, y, z, mass, 0, mass.length, 0, field, soft);
+  }
+  return coincident;
+}
+
 /** Targets a job of the full direct sum handles. */
 export const DIRECT_TARGETS = 64;
 

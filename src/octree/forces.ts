@@ -127,8 +127,12 @@ async function sumAllDirectly(
     softening: options.softening,
     field,
   };
-  const small = count < 1500 ? crewOfOne() : crew;
-  const left = await small.run(TASK, 'sumDirectly', round, Math.ceil(count / DIRECT_TARGETS));
+  // Few bodies: one thread that takes each pair once is as fast as several that take it twice.
+  const left =
+    count <= DIRECT_COUNT
+      ? await crewOfOne().run(TASK, 'sumAllPairs', round, 1)
+      : await crew.run(TASK, 'sumDirectly', round, Math.ceil(count / DIRECT_TARGETS));
+  const pairs = left.reduce((sum, n) => sum + n, 0);
   const seconds = { tree: 0, forces: (performance.now() - start) / 1000, error: 0 };
   const costs = {
     cellInteractions: 0,
@@ -141,7 +145,7 @@ async function sumAllDirectly(
     error: null,
     accelerationError: options.accelerations === true ? 0 : null,
     level: null,
-    coincidentPairs: left.reduce((sum, n) => sum + n, 0) / 2,
+    coincidentPairs: count <= DIRECT_COUNT ? pairs : pairs / 2,
     costs,
     tree: null,
   });

@@ -132,7 +132,9 @@ function writePairKernels(kernel: SofteningKernel, force: boolean, key: string):
       ['x', 'y', 'z', 'mass', 'begin', 'end', 'base', 'sums', 'soft'],
       `${open}let left=0;
       for(let i=begin;i<end;i++){${own(start)}const mi=mass[i];
-        for(let j=i+1;j<end;j++){${distance}${soft ? '' : 'if(r2===0){left++;continue;}'}${eval_}${take}${give}}
+        let j=i+1;
+        ${pairwise ? `for(;j+1<end;j+=2){${TWO_DISTANCES}if(r*q===0)break;${TAKE_TWO}}` : ''}
+        for(;j<end;j++){${distance}${soft ? '' : 'if(r2===0){left++;continue;}'}${eval_}${take}${give}}
         ${store}}
       return left;`,
     ),
@@ -141,7 +143,7 @@ function writePairKernels(kernel: SofteningKernel, force: boolean, key: string):
       ['x', 'y', 'z', 'mass', 'a', 'aEnd', 'b', 'bEnd', 'base', 'sums', 'soft'],
       `${open}
       for(let i=a;i<aEnd;i++){${own(start)}const mi=mass[i];let j=b;
-        ${pairwise ? `for(;j+1<bEnd;j+=2){${TWO_DISTANCES}const mj=mass[j],mk=mass[j+1],t=1/(r*q),f=t*q,h=t*r;s+=mj*f+mk*h;phi[j-base]+=mi*f;phi[j+1-base]+=mi*h;}` : ''}
+        ${pairwise ? `for(;j+1<bEnd;j+=2){${TWO_DISTANCES}${TAKE_TWO}}` : ''}
         for(;j<bEnd;j++){${distance}${eval_}${take}${give}}
         ${store}}`,
     ),
@@ -167,6 +169,9 @@ function writePairKernels(kernel: SofteningKernel, force: boolean, key: string):
 
 const TWO_DISTANCES = `const dx=x[j]-xi,dy=y[j]-yi,dz=z[j]-zi,ex=x[j+1]-xi,ey=y[j+1]-yi,ez=z[j+1]-zi,
   r=Math.sqrt(dx*dx+dy*dy+dz*dz),q=Math.sqrt(ex*ex+ey*ey+ez*ez);`;
+
+const TAKE_TWO = `const mj=mass[j],mk=mass[j+1],t=1/(r*q),f=t*q,h=t*r;
+  s+=mj*f+mk*h;phi[j-base]+=mi*f;phi[j+1-base]+=mi*h;`;
 
 /** Compiles a kernel that may call the spline's two functions. */
 function compileWithSpline<F>(name: string, parameters: string[], body: string): F {

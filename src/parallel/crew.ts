@@ -15,7 +15,7 @@ import type { Reply, Round } from './protocol.ts';
 export type TakeJob = () => number;
 
 /** A function of a task module: takes the round's argument, does jobs, returns what it counted. */
-export type TaskFunction<A, R> = (argument: A, takeJob: TakeJob) => R;
+export type TaskFunction<A, R> = (argument: A, takeJob: TakeJob) => R | Promise<R>;
 
 /** A task module as its owner names it: where a worker finds it, and how to load it in place. */
 export interface TaskModule<M> {
@@ -29,7 +29,7 @@ type TaskNames<M> = {
 }[keyof M] &
   string;
 type ArgumentOf<F> = F extends (argument: infer A, takeJob: TakeJob) => unknown ? A : never;
-type ResultOf<F> = F extends (...parameters: never[]) => infer R ? R : never;
+type ResultOf<F> = F extends (...parameters: never[]) => infer R ? Awaited<R> : never;
 
 export interface Crew {
   /** Number of threads that work; 1 means in place, on the calling thread. */
@@ -64,15 +64,20 @@ export function crewOfOne(): Crew {
   let closed = false;
   return {
     threads: 1,
-    async run(module, name, argument, jobs) {
+    async run<M, K extends TaskNames<M>>(
+      module: TaskModule<M>,
+      name: K,
+      argument: ArgumentOf<M[K]>,
+      jobs: number,
+    ) {
       // Signals and timers get their turn: all else in a round happens on this thread.
       await new Promise((resolve) => setImmediate(resolve));
       if (closed) throw new InterruptedError();
       const loaded = await module.load();
-      const task = loaded[name] as TaskFunction<unknown, never>;
+      const task = loaded[name] as TaskFunction<unknown, ResultOf<M[K]>>;
       const round = { next: 0, jobs };
       latest = round;
-      return [task(argument, () => (round.next < jobs ? round.next++ : -1))];
+      return [await task(argument, () => (round.next < jobs ? round.next++ : -1))];
     },
     progress: () => ({ done: latest.next, jobs: latest.jobs }),
     close: () => {

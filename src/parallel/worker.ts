@@ -19,7 +19,7 @@ async function work(round: Round): Promise<Reply> {
       module = (await import(round.module)) as Record<string, TaskFunction<unknown, unknown>>;
       loaded.set(round.module, module);
     }
-    const result = module[round.name](round.argument, () => {
+    const result = await module[round.name](round.argument, () => {
       const job = Atomics.add(counter, 0, 1);
       return job < jobs ? job : -1;
     });

@@ -6,8 +6,8 @@ import type { Crew } from '../parallel/crew.ts';
 import { readSnapshot } from '../snapshot/read.ts';
 import type { ReadOptions } from '../snapshot/reading.ts';
 
-/** Stages of one snapshot, for progress. */
-export type Stage = 'reading' | 'tree' | 'forces' | 'error' | 'dynamics';
+/** Stages of one snapshot, for progress; `together` stands for several small ones at once. */
+export type Stage = 'together' | 'reading' | 'tree' | 'forces' | 'error' | 'dynamics';
 
 export interface SurveyOptions extends MeasureOptions {
   readonly read?: ReadOptions;
