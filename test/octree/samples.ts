@@ -1,7 +1,8 @@
 /** Sets of bodies that tests of the engine run on, and plain double loops that share nothing with it. */
 import { makeModel, type ModelName } from '../../src/models/make.ts';
 import { Random } from '../../src/numerics/random.ts';
-import type { Softening } from '../../src/octree/softening.ts';
+import type { ForceOptions } from '../../src/octree/forces.ts';
+import { NO_SOFTENING, type Softening } from '../../src/octree/softening.ts';
 
 /** Positions and masses in input order, on shared memory as readers give them. */
 export interface Columns {
@@ -10,6 +11,21 @@ export interface Columns {
   readonly z: Float64Array;
   readonly mass: Float64Array;
 }
+
+/** One softening of each kernel, short against a model of size 1. */
+export const SOFTENINGS: readonly Softening[] = [
+  NO_SOFTENING,
+  { kernel: 'plummer', length: 0.05 },
+  { kernel: 'spline', length: 0.05 },
+];
+
+/** Options of the engine with G = 1. */
+export const natural = (softening: Softening, rest: Partial<ForceOptions> = {}): ForceOptions => ({
+  gravity: 1,
+  softening,
+  errorWanted: 1e-5,
+  ...rest,
+});
 
 export function emptyColumns(count: number): Columns {
   const column = () => new Float64Array(new SharedArrayBuffer(count * 8));
