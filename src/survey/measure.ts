@@ -5,6 +5,7 @@ import type { MeasureOptions } from '../dynamics/settings.ts';
 import type { Crew } from '../parallel/crew.ts';
 import { readSnapshot } from '../snapshot/read.ts';
 import type { ReadOptions } from '../snapshot/reading.ts';
+import { requireMemory } from './memory.ts';
 
 /** Stages of one snapshot, for progress; `together` stands for several small ones at once. */
 export type Stage = 'together' | 'reading' | 'tree' | 'forces' | 'error' | 'dynamics';
@@ -18,7 +19,7 @@ export interface SurveyOptions extends MeasureOptions {
 /**
  * Reads one snapshot and measures it.
  * @param path - a file, or `-` for an Arrow stream on standard input
- * @throws InputError if the file cannot be read or used, UsageError for options that contradict it
+ * @throws InputError if the file cannot be read or used or will not fit into memory, UsageError for options that contradict it
  */
 export async function measureFile(
   path: string,
@@ -34,6 +35,7 @@ export async function measureFile(
       options.onStage?.('reading', total > 0 ? done / total : null);
     },
   };
+  await requireMemory(path, options.read ?? {}, (options.softening ?? 0) > 0);
   const particles = await readSnapshot(path, read);
   const readSeconds = (performance.now() - start) / 1000;
   return measureParticles(particles, options, crew, { readSeconds, onStage: options.onStage });

@@ -1,0 +1,63 @@
+/** Memory that a measurement will take, asked for before anything is read. */
+import { stat } from 'node:fs/promises';
+import { freemem } from 'node:os';
+import { InputError } from '../errors.ts';
+import { describeSnapshot } from '../snapshot/read.ts';
+import type { ReadOptions, SnapshotDescription } from '../snapshot/reading.ts';
+
+/** Files below this size are read without asking. */
+const ASK_ABOVE_BYTES = 256 * 2 ** 20;
+/** What Node and its threads take whatever is measured. */
+const BASE_BYTES = 150 * 2 ** 20;
+
+/**
+ * Bytes a body beyond its own columns: tree copy 36, buckets 2, nodes with multipoles some 60,
+ * potential and scratch 16, bound set and its field 17; softening adds the Clausius share twice.
+ */
+const BYTES_A_BODY = 131;
+const BYTES_IF_SOFTENED = 16;
+
+/** Bytes that measuring will take at its peak, roughly. */
+export function memoryNeeded(description: SnapshotDescription, softened: boolean): number {
+  const needed = description.columns
+    .filter(({ field }) => field !== null)
+    .reduce((sum, { width, type }) => sum + width * (type === 'float32' ? 4 : 8), 0);
+  const columns = Math.min(needed, 64);
+  return (
+    BASE_BYTES + description.count * (columns + BYTES_A_BODY + (softened ? BYTES_IF_SOFTENED : 0))
+  );
+}
+
+/**
+ * Refuses a snapshot that will not fit into memory, before reading it.
+ * @param available - bytes that may be used; what the machine or container has free if not given
+ * @throws InputError `input.tooLarge`
+ */
+export async function requireMemory(
+  path: string,
+  options: ReadOptions,
+  softened: boolean,
+  available = memoryAvailable(),
+): Promise<void> {
+  const found = path === '-' ? null : await stat(path).catch(() => null);
+  if (found === null || !found.isFile() || found.size < ASK_ABOVE_BYTES) return;
+  const description = await describeSnapshot(path, options);
+  const needed = memoryNeeded(description, softened);
+  if (needed <= available) return;
+  throw new InputError(
+    'input.tooLarge',
+    `${path} holds ${description.count} bodies, which take about ${gigabytes(needed)} to measure; ${gigabytes(available)} are free`,
+    'use a machine with more memory, end other programs, or write the snapshot in single precision',
+  );
+}
+
+/** Bytes free to this process: what the machine has, or less if its container allows less. */
+function memoryAvailable(): number {
+  const limit = process.constrainedMemory();
+  const free = freemem();
+  return limit > 0 ? Math.min(free, Math.max(0, limit - process.memoryUsage().rss)) : free;
+}
+
+function gigabytes(bytes: number): string {
+  return `${(bytes / 1e9).toPrecision(3)} GB`;
+}
