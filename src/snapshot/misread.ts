@@ -18,7 +18,7 @@ const ABSURD_SHARE = 0.05;
 const ABSURD_DECADES = { double: 100, single: 40 };
 /** All coordinates and speeds at once over more than this many decades: no orbit does that. */
 const WIDE_DECADES = 8;
-const SAMPLE = 2048;
+const SAMPLE = 512;
 const LEAST_TO_JUDGE = 16;
 
 interface Spread {
