@@ -21,6 +21,40 @@ import {
   type OrderedBodies,
 } from './tree.ts';
 
+/**
+ * When a cell is a leaf: it holds few bodies, and is not wide as seen from where the mass is.
+ * Far outside a handful of bodies may fill a cell as wide as its distance; expansions about such a
+ * cell's centre would be poor for each of them, so it is cut further.
+ */
+export interface LeafRule {
+  readonly capacity: number;
+  /** Positions of some bodies of the whole set, x y z: a sketch of where the mass is. */
+  readonly sketch: Float64Array;
+  /** Half width up to which no cell is wide wherever it lies. */
+  readonly narrow: number;
+}
+
+/** Largest half width of a leaf over the harmonic mean of its distances from the mass. */
+export const WIDEST_LEAF = 0.12;
+
+/** Mean of 1/r over the sketch, seen from a cell: one over the distance that counts for the potential. */
+export function meanInverseDistance(
+  sketch: Float64Array,
+  x: number,
+  y: number,
+  z: number,
+  half: number,
+): number {
+  let sum = 0;
+  for (let k = 0; k < sketch.length; k += 3) {
+    const dx = sketch[k] - x;
+    const dy = sketch[k + 1] - y;
+    const dz = sketch[k + 2] - z;
+    sum += 1 / Math.sqrt(dx * dx + dy * dy + dz * dz + half * half);
+  }
+  return (3 * sum) / sketch.length;
+}
+
 /** Scratch of one worker, reused from branch to branch; grows when a branch needs more. */
 export class BranchScratch {
   bodies = 0;
@@ -83,14 +117,13 @@ const octantPlace = new Uint32Array(8);
 /**
  * Sorts the bodies [begin, end) into tree order and leaves the branch's nodes in `scratch`.
  * Local node 0 is the branch's root; the children of a node are neighbours and come after it.
- * @param leafCapacity - a cell with at most this many bodies is not cut further
  * @returns the number of nodes
  */
 export function growBranch(
   bodies: OrderedBodies,
   begin: number,
   end: number,
-  leafCapacity: number,
+  rule: LeafRule,
   scratch: BranchScratch,
 ): number {
   scratch.holdBodies(end - begin);
@@ -104,7 +137,7 @@ export function growBranch(
     scratch.holdNodes(count + 8);
     const size = scratch.end[node] - scratch.begin[node];
     let made = 0;
-    if (size > leafCapacity) {
+    if (size > rule.capacity || (size > 1 && isWide(scratch, node, rule))) {
       made = cutCell(bodies, scratch, begin, node, count);
       if (made === 0 && shrinkCell(bodies, scratch, begin, node)) {
         made = cutCell(bodies, scratch, begin, node, count);
@@ -116,6 +149,14 @@ export function growBranch(
     if (made === 0 && scratch.inScratch[node] === 1) bringHome(bodies, scratch, begin, node);
   }
   return count;
+}
+
+function isWide(scratch: BranchScratch, node: number, { sketch, narrow }: LeafRule): boolean {
+  const half = scratch.cellHalf[node];
+  if (half <= narrow) return false;
+  const { cellX, cellY, cellZ } = scratch;
+  const inverse = meanInverseDistance(sketch, cellX[node], cellY[node], cellZ[node], half);
+  return half * inverse > WIDEST_LEAF;
 }
 
 /** Sets the node's cell to the cube that just holds its bodies; false if all lie at one point. */
@@ -134,15 +175,15 @@ function shrinkCell(
   const z = from ? scratch.z : bodies.z;
   extentOf(x, y, z, begin, end);
   const half = Math.max(extent[3] - extent[0], extent[4] - extent[1], extent[5] - extent[2]) / 2;
-  scratch.cellX[node] = middle(extent[0], extent[3]);
-  scratch.cellY[node] = middle(extent[1], extent[4]);
-  scratch.cellZ[node] = middle(extent[2], extent[5]);
+  scratch.cellX[node] = between(extent[0], extent[3]);
+  scratch.cellY[node] = between(extent[1], extent[4]);
+  scratch.cellZ[node] = between(extent[2], extent[5]);
   scratch.cellHalf[node] = half;
   return extent[3] > extent[0] || extent[4] > extent[1] || extent[5] > extent[2];
 }
 
 /** A number m with low ≤ m < high where low < high, so that cutting at m leaves no side empty. */
-function middle(low: number, high: number): number {
+function between(low: number, high: number): number {
   const m = low + (high - low) / 2;
   return m < high ? m : low;
 }

@@ -1,6 +1,6 @@
 /** Work of the crew while a tree is built: each function does numbered jobs on shared arrays. */
 import type { TakeJob } from '../parallel/crew.ts';
-import { BranchScratch, growBranch, plantBranch } from './branch.ts';
+import { BranchScratch, growBranch, plantBranch, type LeafRule } from './branch.ts';
 import { classify, type KeyBox } from './partition.ts';
 import type { OrderedBodies } from './tree.ts';
 
@@ -123,7 +123,7 @@ export function copyBodies(round: CopyRound, takeJob: TakeJob): void {
 
 export interface GrowRound {
   readonly bodies: OrderedBodies;
-  readonly leafCapacity: number;
+  readonly rule: LeafRule;
   /** First body and end of each branch. */
   readonly ranges: Uint32Array;
   readonly rootSlots: Uint32Array;
@@ -142,13 +142,7 @@ const scratch = new BranchScratch();
 export function growBranches(round: GrowRound, takeJob: TakeJob): void {
   const { bodies, ranges, rootSlots, slots } = round;
   for (let job = takeJob(); job >= 0; job = takeJob()) {
-    const nodes = growBranch(
-      bodies,
-      ranges[2 * job],
-      ranges[2 * job + 1],
-      round.leafCapacity,
-      scratch,
-    );
+    const nodes = growBranch(bodies, ranges[2 * job], ranges[2 * job + 1], round.rule, scratch);
     const first = Atomics.add(round.nextSlot, 0, nodes - 1);
     if (first + nodes - 1 > round.slotCapacity) continue;
     slots[2 * job] = first;

@@ -1,7 +1,7 @@
 /** Particles → octree: plan buckets, move bodies, grow branches, join them under a shared top. */
 import type * as BuildTask from './build.task.ts';
 import { CHUNK, type Positions } from './build.task.ts';
-import { weighParent } from './branch.ts';
+import { meanInverseDistance, weighParent, WIDEST_LEAF, type LeafRule } from './branch.ts';
 import { keyBox, mortonKey, planBuckets, type BucketPlan, type Octant } from './partition.ts';
 import {
   GEOMETRY,
@@ -80,6 +80,7 @@ export async function buildOctree(
   const ranges = sharedUint32(branches.length * 2);
   branches.forEach((slot, k) => ranges.set([top[slot].begin, top[slot].end], 2 * k));
 
+  const rule = leafRule(columns, leafCapacity);
   for (let perLeaf = 0.35; ; perLeaf *= 2) {
     const slotCapacity =
       top.length + branches.length * 8 + Math.ceil((count * perLeaf * 16) / leafCapacity);
@@ -89,7 +90,7 @@ export async function buildOctree(
     const nextSlot = sharedUint32(1);
     nextSlot[0] = top.length;
     const rootSlots = Uint32Array.from(branches);
-    const round = { bodies, leafCapacity, ranges, rootSlots, geometry, topology, slots, nextSlot };
+    const round = { bodies, rule, ranges, rootSlots, geometry, topology, slots, nextSlot };
     await crew.run(TASK, 'growBranches', { ...round, slotCapacity }, branches.length);
     if (nextSlot[0] > slotCapacity) continue;
     for (let slot = top.length - 1; slot >= 0; slot--) {
@@ -206,6 +207,31 @@ function joinExtents(extents: Float64Array): Float64Array {
     }
   }
   return all;
+}
+
+/** Bodies in the sketch of where the mass is. */
+const SKETCH = 64;
+
+function leafRule({ x, y, z }: BodyColumns, capacity: number): LeafRule {
+  const size = Math.min(x.length, SKETCH);
+  const sketch = new Float64Array(size * 3);
+  for (let k = 0; k < size; k++) {
+    const i = Math.floor(((k + 0.5) * x.length) / size);
+    sketch.set([x[i], y[i], z[i]], 3 * k);
+  }
+  // Nowhere is the mass nearer than where it is densest; there itself the nearest body is not counted.
+  let densest = 0;
+  for (let k = 0; k < size; k++) {
+    const others = Float64Array.from(sketch);
+    others.copyWithin(3 * k, 0, 3);
+    const [px, py, pz] = sketch.subarray(3 * k, 3 * k + 3);
+    densest = Math.max(densest, meanInverseDistance(others.subarray(3), px, py, pz, 0));
+  }
+  return {
+    capacity,
+    sketch,
+    narrow: densest > 0 && densest < Infinity ? WIDEST_LEAF / densest : 0,
+  };
 }
 
 /** A sample at equal steps with a hashed offset in each, so that order in the file has no say. */

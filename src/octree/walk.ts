@@ -35,24 +35,51 @@ export interface Acceptance {
 }
 
 /**
- * The acceptance rule, the one place of it: two cells interact as a whole if their radii sum to less
- * than the opening angle times their distance, and if the first neglected order of the expansion,
- * (M/φ) (r/d)^(p+1)/d relative to the target's potential φ, stays below the tolerance.
+ * The acceptance rule, the one place of it: whether a source cell acts on a target cell as a whole.
+ * Three things must hold:
+ *
+ * - the radii sum to less than the opening angle times the distance d;
+ * - the first neglected order of the expansion, (M/φ) (r/d)^(p+1)/d relative to the target's potential
+ *   φ with r the sum of radii, is below the tolerance;
+ * - so is what all sources about as far away neglect together because the target is wide:
+ *   c (r_t/d)^(p+1), where c ≤ 1 is the share of φ that matter as dense as the source, out to d, would
+ *   give. Far outside a system these errors add up, each of them small.
+ *
  * Called in the innermost loop with plain numbers, so that it is inlined there.
- * @param reach - sum of the cells' radii
- * @param relative - source mass over target depth, the larger of both directions if mutual
  */
-function isAccepted(rule: Acceptance, reach: number, distance2: number, relative: number): boolean {
+function isAccepted(
+  rule: Acceptance,
+  targetRadius: number,
+  sourceRadius: number,
+  distance2: number,
+  sourceMass: number,
+  targetDepth: number,
+): boolean {
   const { openingAngle, tolerance, soft2, support } = rule;
+  const reach = targetRadius + sourceRadius;
   const u = distance2 + soft2;
   const reach2 = reach * reach;
   if (reach2 >= openingAngle * openingAngle * u) return false;
   if (support > 0 && distance2 <= (reach + support) * (reach + support)) return false;
   const ratio2 = reach2 / u;
-  let fall = ratio2;
-  for (let k = 0; k < rule.order; k++) fall *= ratio2;
-  return relative * relative * fall < tolerance * tolerance * u;
+  const wide2 = (targetRadius * targetRadius) / u;
+  let fall2 = ratio2;
+  let wideFall2 = wide2;
+  for (let k = 0; k < rule.order; k++) {
+    fall2 *= ratio2;
+    wideFall2 *= wide2;
+  }
+  const relative = sourceMass / targetDepth;
+  const tolerance2 = tolerance * tolerance;
+  if (!(relative * relative * fall2 < tolerance2 * u)) return false;
+  const limit2 = WIDE_TOLERANCE * WIDE_TOLERANCE * tolerance2;
+  if (wideFall2 < limit2) return true;
+  const share = (relative * u) / (sourceRadius * sourceRadius * sourceRadius);
+  return share * share * wideFall2 < limit2;
 }
+
+/** Tolerance of the third condition over that of the second. */
+const WIDE_TOLERANCE = 30;
 
 /** Sizes below which pairs are summed directly: without asking, and when cells were refused. */
 const DIRECT_AT_ONCE = 24;
@@ -214,7 +241,7 @@ class Walk {
         const dy = tG[gt + 1] - sG[gs + 1];
         const dz = tG[gt + 2] - sG[gs + 2];
         const d2 = dx * dx + dy * dy + dz * dz;
-        if (isAccepted(acceptance, rt + rs, d2, sG[gs + NODE_MASS] / tG[gt + NODE_DEPTH])) {
+        if (isAccepted(acceptance, rt, rs, d2, sG[gs + NODE_MASS], tG[gt + NODE_DEPTH])) {
           const lt = (t === t0 ? 0 : t - firstSlot + 1) * localStride;
           interact(tG, gt, locals, lt, sG, gs, multipoles, s * momentStride, soft2);
           cells++;
@@ -325,11 +352,10 @@ class Walk {
         const dy = G[ga + 1] - G[gb + 1];
         const dz = G[ga + 2] - G[gb + 2];
         const d2 = dx * dx + dy * dy + dz * dz;
-        const relative = Math.max(
-          G[ga + NODE_MASS] / G[gb + NODE_DEPTH],
-          G[gb + NODE_MASS] / G[ga + NODE_DEPTH],
-        );
-        if (isAccepted(acceptance, ra + rb, d2, relative)) {
+        if (
+          isAccepted(acceptance, ra, rb, d2, G[gb + NODE_MASS], G[ga + NODE_DEPTH]) &&
+          isAccepted(acceptance, rb, ra, d2, G[ga + NODE_MASS], G[gb + NODE_DEPTH])
+        ) {
           const la = (a === root ? 0 : a - firstSlot + 1) * localStride;
           const lb = (b === root ? 0 : b - firstSlot + 1) * localStride;
           interactBoth(

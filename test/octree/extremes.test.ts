@@ -104,7 +104,7 @@ it('costs little more where structure is extreme', async () => {
   // The limit of 1.6 leaves room for other constants; a cell that swallows the core costs 10 times more.
   expect(await cost(modelColumns('hernquist', 30_000, 5))).toBeLessThan(1.6 * sphere);
   expect(await cost(far)).toBeLessThan(1.05 * sphere);
-  expect(await cost(pair)).toBeLessThan(1.2 * sphere);
+  expect(await cost(pair)).toBeLessThan(1.6 * sphere);
   // And the sphere itself is far below the 30,000 of direct sums.
   expect(sphere).toBeLessThan(1000);
 }, 60_000);
