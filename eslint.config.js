@@ -26,7 +26,11 @@ const roomRules = ROOMS.map((room, index) => ({
       {
         patterns: [
           {
-            group: [...ROOMS.slice(index + 1).flatMap((later) => [`../${later}/*`, `../../${later}/*`]), '../index.ts', '../../index.ts'],
+            group: [
+              ...ROOMS.slice(index + 1).flatMap((later) => [`../${later}/*`, `../../${later}/*`]),
+              '../index.ts',
+              '../../index.ts',
+            ],
             message: `The room "${room}" may import only from rooms before it (see DEVELOPERS.md).`,
           },
         ],
@@ -45,11 +49,16 @@ export default tseslint.config(
   {
     files: ['**/*.ts'],
     extends: [...tseslint.configs.recommendedTypeChecked],
-    languageOptions: { parserOptions: { projectService: true, tsconfigRootDir: import.meta.dirname } },
+    languageOptions: {
+      parserOptions: { projectService: true, tsconfigRootDir: import.meta.dirname },
+    },
     rules: {
       '@typescript-eslint/consistent-type-imports': 'error',
       '@typescript-eslint/no-floating-promises': 'error',
-      '@typescript-eslint/restrict-template-expressions': ['error', { allowNumber: true, allowBoolean: true }],
+      '@typescript-eslint/restrict-template-expressions': [
+        'error',
+        { allowNumber: true, allowBoolean: true },
+      ],
       '@typescript-eslint/switch-exhaustiveness-check': 'error',
       eqeqeq: 'error',
     },
@@ -57,7 +66,15 @@ export default tseslint.config(
   {
     files: ['**/*.js', '**/*.mjs'],
     languageOptions: {
-      globals: { process: 'readonly', console: 'readonly', URL: 'readonly', performance: 'readonly', Buffer: 'readonly', setTimeout: 'readonly', SharedArrayBuffer: 'readonly' },
+      globals: {
+        process: 'readonly',
+        console: 'readonly',
+        URL: 'readonly',
+        performance: 'readonly',
+        Buffer: 'readonly',
+        setTimeout: 'readonly',
+        SharedArrayBuffer: 'readonly',
+      },
     },
   },
   ...roomRules,
