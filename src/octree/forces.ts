@@ -15,7 +15,7 @@ import {
 import { expansionOf } from './expansion.ts';
 import { DIRECT_TARGETS, type FieldColumns } from './forces.task.ts';
 import { gatherSlot, leastOfChildren } from './multipoles.ts';
-import { firstLevel, LEVELS, nextLevel, treeCost, type Level } from './levels.ts';
+import { firstLevel, nextLevel, treeCost, type Level } from './levels.ts';
 import { supportOf, type Softening } from './softening.ts';
 import { NODE_CHILDREN, TOPOLOGY, type Octree } from './tree.ts';
 import type { Acceptance, SourceTree, WalkCounts } from './walk.ts';
@@ -106,6 +106,9 @@ export async function sumForces(
       (count <= DIRECT_COUNT || treeCost(first, count) >= directCost(count)));
   return direct ? sumAllDirectly(columns, options, crew) : sumByTree(columns, options, first, crew);
 }
+
+/** Times the last level's cost that direct sums may take once that level has missed the error wanted. */
+const DIRECT_PAST_LAST = 3;
 
 /** Nanoseconds of one thread that direct sums take, roughly; only ratios to {@link treeCost} matter. */
 const directCost = (count: number): number => 2.8 * count * count;
@@ -212,12 +215,10 @@ async function sumByTree(
       (PROMISED_SIGMAS * result.potentialError) /
       (options.errorWanted * Math.abs(result.potentialEnergy));
     const next = nextLevel(level, missed);
-    if (
-      treeCost(next ?? LEVELS[LEVELS.length - 1], tree.bodies.count) >=
-      directCost(tree.bodies.count)
-    ) {
-      return sumAllDirectly(columns, options, crew);
-    }
+    const { count } = tree.bodies;
+    // Past the last level only direct sums keep the promise; they are worth some times its cost.
+    const worth = next ? treeCost(next, count) : DIRECT_PAST_LAST * treeCost(level, count);
+    if (worth >= directCost(count)) return sumAllDirectly(columns, options, crew);
     if (!next) return result;
     level = next;
   }

@@ -12,15 +12,25 @@ import {
   type Octree,
 } from './tree.ts';
 
-/** Sums a branch gives: Σρ, Σρ x y z, Σρ², Σρ² x y z, Σρ² r², then Σρ and Σρ_coarse of bodies measured near the threshold. */
-export const DENSITY_SUMS = 11;
+/** Moments of a density: Σρ, Σρ x y z, Σρ², Σρ² x y z, Σρ² r². */
+export const MOMENTS = 9;
+/** Bins of coarse density, a factor √2 each, that groups below {@link DensityRound.all} fall into. */
+export const BINS = 24;
+/** Numbers a bin: Σρ, Σρ², Σρ²r² measured, the same of the same groups coarse, and moments of groups not measured, coarse. */
+export const BIN_SUMS = 6 + MOMENTS;
+/** Sums a branch gives: moments of what was measured, then the bins. */
+export const DENSITY_SUMS = MOMENTS + BINS * BIN_SUMS;
+/** One in so many groups below {@link DensityRound.all} is measured. */
+const MEASURED_ONE_IN = 4;
 
 export interface DensityRound {
   readonly tree: Octree;
   /** The j of the estimator: distance to the j-th neighbour. */
   readonly neighbours: number;
-  /** Leaves with a lower coarse density are not measured body by body. */
-  readonly threshold: number;
+  /** Groups of at least this coarse density are all measured; 0 for every group. */
+  readonly all: number;
+  /** Groups below this are not measured, those between only one in some. */
+  readonly none: number;
   /** Positions in the sums are about this point. */
   readonly origin: Float64Array;
   readonly sums: Float64Array;
@@ -200,18 +210,43 @@ const GROUP = 32;
 const SEARCH_MARGIN = 1.05;
 
 export function sumDensities(round: DensityRound, takeJob: TakeJob): void {
-  const { tree, threshold, neighbours: j, density } = round;
+  const { tree, all, none, neighbours: j, density } = round;
   const { geometry: G, topology: T, bodies } = tree;
   const { x, y, z, input } = bodies;
   const [ox, oy, oz] = round.origin;
   for (let job = takeJob(); job >= 0; job = takeJob()) {
     const sums = round.sums.subarray(job * DENSITY_SUMS, (job + 1) * DENSITY_SUMS);
+    let group = 0;
     eachGroup(tree, job, (slot, coarse) => {
-      if (coarse < threshold) return;
       const t = slot * TOPOLOGY;
       const g = slot * GEOMETRY;
       const begin = T[t + NODE_BEGIN];
       const end = T[t + NODE_END];
+      const bin = coarse >= all ? -1 : MOMENTS + binOf(all, coarse) * BIN_SUMS;
+      if (bin >= 0) {
+        const gx = G[g] - ox;
+        const gy = G[g + 1] - oy;
+        const gz = G[g + 2] - oz;
+        const w = (end - begin) * coarse;
+        const q = w * coarse;
+        const q2 = q * (gx * gx + gy * gy + gz * gz);
+        if (coarse < none || group++ % MEASURED_ONE_IN !== 0) {
+          const at = bin + 6;
+          sums[at] += w;
+          sums[at + 1] += w * gx;
+          sums[at + 2] += w * gy;
+          sums[at + 3] += w * gz;
+          sums[at + 4] += q;
+          sums[at + 5] += q * gx;
+          sums[at + 6] += q * gy;
+          sums[at + 7] += q * gz;
+          sums[at + 8] += q2;
+          return;
+        }
+        sums[bin + 3] += w;
+        sums[bin + 4] += q;
+        sums[bin + 5] += q2;
+      }
       const radius = G[g + NODE_RADIUS];
       const searched = radius * (1 + SEARCH_MARGIN * Math.cbrt((j + 1) / (end - begin)));
       const together = collect(tree, G[g], G[g + 1], G[g + 2], searched);
@@ -239,14 +274,20 @@ export function sumDensities(round: DensityRound, takeJob: TakeJob): void {
         sums[5] += q * dx;
         sums[6] += q * dy;
         sums[7] += q * dz;
-        sums[8] += q * (dx * dx + dy * dy + dz * dz);
-        if (coarse < 4 * threshold) {
-          sums[9] += rho;
-          sums[10] += coarse;
+        const q2 = q * (dx * dx + dy * dy + dz * dz);
+        sums[8] += q2;
+        if (bin >= 0) {
+          sums[bin] += rho;
+          sums[bin + 1] += q;
+          sums[bin + 2] += q2;
         }
       }
     });
   }
+}
+
+function binOf(all: number, coarse: number): number {
+  return coarse > 0 ? Math.min(BINS - 1, Math.floor(2 * Math.log2(all / coarse))) : BINS - 1;
 }
 
 /** Mean density of a node: its mass over the sphere of its radius; of a lone body 0. */

@@ -6,9 +6,9 @@
  * Source: Casertano & Hut 1985, ApJ 298, 80; the squared form of the core radius is later practice.
  */
 import type * as NeighboursTask from './neighbours.task.ts';
-import { compensatedSum } from '../numerics/compensated.ts';
+import { CompensatedSum, compensatedSum } from '../numerics/compensated.ts';
 import { crewOfOne, type Crew, type TaskModule } from '../parallel/crew.ts';
-import { DENSITY_SUMS, eachGroup } from './neighbours.task.ts';
+import { BIN_SUMS, BINS, DENSITY_SUMS, eachGroup, MOMENTS } from './neighbours.task.ts';
 import { GEOMETRY, NODE_BEGIN, NODE_END, TOPOLOGY, type Octree } from './tree.ts';
 
 const TASK: TaskModule<typeof NeighboursTask> = {
@@ -20,8 +20,13 @@ const TASK: TaskModule<typeof NeighboursTask> = {
 export const NEIGHBOURS = 6;
 /** Up to this many bodies every one is measured. */
 const MEASURE_ALL = 200_000;
-/** Beyond, bodies of low density that carry this share of the weights enter by their leaf's mean density. */
-const COARSE_SHARE = 0.02;
+/**
+ * Beyond, one in some of the groups of low density that carry this share of the weights is measured;
+ * they calibrate the mean densities of the others, by steps of density.
+ */
+const SAMPLED_SHARE = 0.03;
+/** Groups of still lower density that carry this share are not measured at all. */
+const UNMEASURED_SHARE = 0.002;
 
 export interface DensityCentre {
   readonly centre: readonly [number, number, number];
@@ -44,22 +49,16 @@ export async function densityCentre(
   const { count } = tree.bodies;
   if (count < neighbours + 2) return null;
   const all = wantDensities || count <= MEASURE_ALL;
-  const { origin, threshold } = survey(tree, all);
+  const { origin, limits } = survey(tree, all);
   const density = new Float64Array(new SharedArrayBuffer(wantDensities ? count * 8 : 0));
   const branches = tree.branchRoots.length;
   const rows = new Float64Array(new SharedArrayBuffer(branches * DENSITY_SUMS * 8));
   const workers = count < 20_000 ? crewOfOne() : crew;
-  const round = { tree, neighbours, threshold, origin, sums: rows, density };
+  const round = { tree, neighbours, ...limits, origin, sums: rows, density };
   await workers.run(TASK, 'sumDensities', round, branches);
-  const measured = Array.from({ length: DENSITY_SUMS }, (_, k) =>
-    compensatedSum(rows.filter((_value, at) => at % DENSITY_SUMS === k)),
-  );
-  let sums = measured;
-  if (threshold > 0) {
-    // Bring the coarse densities to the scale of measured ones, as found just above the threshold.
-    const scale = measured[10] > 0 ? measured[9] / measured[10] : 1;
-    sums = addCoarse(tree, measured, origin, threshold, scale);
-  }
+  const columns = Array.from({ length: DENSITY_SUMS }, () => new CompensatedSum());
+  for (let k = 0; k < rows.length; k++) columns[k % DENSITY_SUMS].add(rows[k]);
+  const sums = withUnmeasured(columns.map((column) => column.value()));
   if (!(sums[0] > 0) || !Number.isFinite(sums[4])) return null;
   const d = [1, 2, 3].map((k) => sums[k] / sums[0]);
   const centre: [number, number, number] = [origin[0] + d[0], origin[1] + d[1], origin[2] + d[2]];
@@ -71,20 +70,42 @@ export async function densityCentre(
   return { centre, coreRadius: Math.sqrt(Math.max(0, square / sums[4])), density };
 }
 
-/** A rough centre, and the density below which leaves carry only {@link COARSE_SHARE} of the weights. */
-function survey(tree: Octree, all: boolean): { origin: Float64Array; threshold: number } {
+/** Adds the groups that were not measured: their coarse moments at the scale that measured ones of like density tell. */
+function withUnmeasured(sums: readonly number[]): number[] {
+  const moments = sums.slice(0, MOMENTS);
+  // Where a bin has no measured group, the nearest denser bin that has one stands in.
+  let scale = [1, 1, 1];
+  for (let bin = 0; bin < BINS; bin++) {
+    const b = sums.slice(MOMENTS + bin * BIN_SUMS, MOMENTS + (bin + 1) * BIN_SUMS);
+    if (b[3] > 0 && b[5] > 0) scale = [b[0] / b[3], b[1] / b[4], b[2] / b[5]];
+    for (let k = 0; k < MOMENTS; k++) {
+      moments[k] += b[6 + k] * (k < 4 ? scale[0] : k < MOMENTS - 1 ? scale[1] : scale[2]);
+    }
+  }
+  return moments;
+}
+
+interface Limits {
+  /** See {@link DensityRound}. */
+  readonly all: number;
+  readonly none: number;
+}
+
+/** A rough centre, and the densities below which groups carry only certain shares of the weights. */
+function survey(tree: Octree, all: boolean): { origin: Float64Array; limits: Limits } {
   const { geometry: G, topology: T } = tree;
+  const size = (slot: number) => T[slot * TOPOLOGY + NODE_END] - T[slot * TOPOLOGY + NODE_BEGIN];
   const sums = new Float64Array(4);
   everyGroup(tree, (slot, rho) => {
     const g = slot * GEOMETRY;
-    const w = rho * (T[slot * TOPOLOGY + NODE_END] - T[slot * TOPOLOGY + NODE_BEGIN]);
+    const w = rho * size(slot);
     sums[0] += w;
     for (let k = 0; k < 3; k++) sums[k + 1] += w * (G[g + k] - G[k]);
   });
   const origin = Float64Array.from([0, 1, 2], (k) =>
     sums[0] > 0 ? G[k] + sums[k + 1] / sums[0] : G[k],
   );
-  if (all) return { origin, threshold: 0 };
+  if (all) return { origin, limits: { all: 0, none: 0 } };
 
   // Weights of the centre and of the core radius, by density in steps of a factor 2^(1/4).
   const bins = 8192;
@@ -94,53 +115,26 @@ function survey(tree: Octree, all: boolean): { origin: Float64Array; threshold: 
   const coreWeight = new Float64Array(bins);
   everyGroup(tree, (slot, rho) => {
     const g = slot * GEOMETRY;
-    const n = T[slot * TOPOLOGY + NODE_END] - T[slot * TOPOLOGY + NODE_BEGIN];
     const bin = binOf(rho);
     let d2 = 0;
     for (let k = 0; k < 3; k++) d2 += (G[g + k] - origin[k]) ** 2;
-    centreWeight[bin] += n * rho;
-    coreWeight[bin] += n * rho * rho * d2;
+    centreWeight[bin] += size(slot) * rho;
+    coreWeight[bin] += size(slot) * rho * rho * d2;
   });
-  const enough = (weights: Float64Array) => {
+  const binBelow = (weights: Float64Array, share: number) => {
     const total = compensatedSum(weights);
     let sum = 0;
     for (let bin = 0; bin < bins; bin++) {
       sum += weights[bin];
-      if (sum > COARSE_SHARE * total) return bin;
+      if (sum > share * total) return bin;
     }
     return 0;
   };
-  const bin = Math.min(enough(centreWeight), enough(coreWeight));
-  return { origin, threshold: bin <= 1 ? 0 : 2 ** ((bin - bins / 2) / 4) };
-}
-
-/** Adds the leaves below the threshold with their coarse densities, scaled. */
-function addCoarse(
-  tree: Octree,
-  measured: readonly number[],
-  origin: Float64Array,
-  threshold: number,
-  scale: number,
-): number[] {
-  const { geometry: G, topology: T } = tree;
-  const sums = [...measured];
-  everyGroup(tree, (slot, coarse) => {
-    if (coarse >= threshold) return;
-    const g = slot * GEOMETRY;
-    const n = T[slot * TOPOLOGY + NODE_END] - T[slot * TOPOLOGY + NODE_BEGIN];
-    const rho = coarse * scale;
-    let d2 = 0;
-    sums[0] += n * rho;
-    sums[4] += n * rho * rho;
-    for (let k = 0; k < 3; k++) {
-      const d = G[g + k] - origin[k];
-      sums[1 + k] += n * rho * d;
-      sums[5 + k] += n * rho * rho * d;
-      d2 += d * d;
-    }
-    sums[8] += n * rho * rho * d2;
-  });
-  return sums;
+  const below = (share: number) => {
+    const bin = Math.min(binBelow(centreWeight, share), binBelow(coreWeight, share));
+    return bin <= 1 ? 0 : 2 ** ((bin - bins / 2) / 4);
+  };
+  return { origin, limits: { all: below(SAMPLED_SHARE), none: below(UNMEASURED_SHARE) } };
 }
 
 function everyGroup(tree: Octree, visit: (slot: number, coarse: number) => void): void {
