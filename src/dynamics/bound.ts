@@ -6,6 +6,7 @@
  * everybody's energy: where it is off the median, v_c is the median while there are bodies to remove.
  * Source: common practice; the cap per round and the median have no source.
  */
+import { takeBuffer, takeDoubles } from '../numerics/reuse.ts';
 import { sumForces, type Forces } from '../octree/forces.ts';
 import { subtractBodies } from '../octree/subtract.ts';
 import type { Crew } from '../parallel/crew.ts';
@@ -60,7 +61,7 @@ export async function boundSet(
       unbound = inMedianFrame > 0 ? inMedianFrame : await countIn(frame);
     }
     if (kept === null) {
-      kept = new Uint8Array(new SharedArrayBuffer(count)).fill(1);
+      kept = new Uint8Array(takeBuffer(count), 0, count).fill(1);
       field = copied(whole);
       set = { bodies, member: kept };
     }
@@ -132,7 +133,7 @@ function leastBound(
 
 function copied(field: SetField): SetField {
   const copy = (column: Float64Array) => {
-    const to = new Float64Array(new SharedArrayBuffer(column.length * 8));
+    const to = takeDoubles(column.length);
     to.set(column);
     return to;
   };
@@ -154,7 +155,7 @@ async function sumAgain(
   let size = 0;
   for (let i = 0; i < kept.length; i++) if (kept[i] === 1) indices[size++] = i;
   const pick = (column: ArrayLike<number>) => {
-    const picked = new Float64Array(new SharedArrayBuffer(size * 8));
+    const picked = takeDoubles(size);
     for (let k = 0; k < size; k++) picked[k] = column[indices[k]];
     return picked;
   };

@@ -1,4 +1,5 @@
 /** Particles → record: the order of the work, and nothing else. */
+import { takeDoubles } from '../numerics/reuse.ts';
 import { InputError } from '../errors.ts';
 import { PROMISED_SIGMAS, sumForces, type ForceStage } from '../octree/forces.ts';
 import type { Crew } from '../parallel/crew.ts';
@@ -83,7 +84,7 @@ export async function measureParticles(
       'check which column is the mass, and its type and scale',
     );
   }
-  const scratch = new Float64Array(new SharedArrayBuffer(particles.count * 8));
+  const scratch = takeDoubles(particles.count);
   const bound = await boundSet(particles, forces, scratch, crew);
   const boundBalance =
     bound.set.member === null ? whole : await balanceOf(bound.set, bound.field, crew);

@@ -1,4 +1,5 @@
 /** Particles → octree: plan buckets, move bodies, grow branches, join them under a shared top. */
+import { takeBuffer, takeDoubles, takeUint32 } from '../numerics/reuse.ts';
 import type * as BuildTask from './build.task.ts';
 import { CHUNK, type Positions } from './build.task.ts';
 import { meanInverseDistance, weighParent, WIDEST_LEAF, type LeafRule } from './branch.ts';
@@ -35,14 +36,14 @@ export interface BodyColumns extends Positions {
 
 /** Room for `count` bodies in tree order, in shared memory. */
 export function allocateBodies(count: number): OrderedBodies {
-  const column = () => new Float64Array(new SharedArrayBuffer(count * 8));
+  const column = () => takeDoubles(count);
   return {
     count,
     x: column(),
     y: column(),
     z: column(),
     mass: column(),
-    input: new Uint32Array(new SharedArrayBuffer(count * 4)),
+    input: takeUint32(count),
   };
 }
 
@@ -84,8 +85,8 @@ export async function buildOctree(
   for (let perLeaf = 0.35; ; perLeaf *= 2) {
     const slotCapacity =
       top.length + branches.length * 8 + Math.ceil((count * perLeaf * 16) / leafCapacity);
-    const geometry = new Float64Array(new SharedArrayBuffer(slotCapacity * GEOMETRY * 8));
-    const topology = sharedUint32(slotCapacity * TOPOLOGY);
+    const geometry = takeDoubles(slotCapacity * GEOMETRY);
+    const topology = takeUint32(slotCapacity * TOPOLOGY);
     const slots = sharedUint32(branches.length * 2);
     const nextSlot = sharedUint32(1);
     nextSlot[0] = top.length;
@@ -135,7 +136,7 @@ async function partition(
   await crew.run(TASK, 'measureExtent', { positions: pick(from), begin, end, extents }, chunks);
   const plan = planFromSample(from, begin, end, joinExtents(extents), branchSize);
   const buckets = plan.firstKeys.length;
-  const bucketOf = new Uint16Array(new SharedArrayBuffer(count * 2));
+  const bucketOf = new Uint16Array(takeBuffer(count * 2), 0, count);
   const counts = sharedUint32(chunks * buckets);
   const { box, firstKeys } = plan;
   await crew.run(

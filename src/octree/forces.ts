@@ -2,6 +2,7 @@
  * Particles → Forces: potential, Clausius share and, if asked, acceleration of every body, with
  * measured errors, by direct sums where those are cheaper and by the cell–cell walk elsewhere.
  */
+import { takeDoubles } from '../numerics/reuse.ts';
 import type * as ForcesTask from './forces.task.ts';
 import { crewOfOne, type Crew, type TaskModule } from '../parallel/crew.ts';
 import { buildOctree, type BodyColumns } from './build.ts';
@@ -232,9 +233,7 @@ export async function gatherMultipoles(
   crew: Crew,
 ): Promise<SourceTree> {
   const expansion = expansionOf(order, softening.kernel === 'plummer');
-  const multipoles = new Float64Array(
-    new SharedArrayBuffer(tree.nodeCount * expansion.multipoles * 8),
-  );
+  const multipoles = takeDoubles(tree.nodeCount * expansion.multipoles);
   const round = { tree, order, softening, multipoles };
   await crew.run(TASK, 'gatherBranches', round, tree.branchRoots.length);
   const isBranch = new Set(tree.branchRoots);
@@ -280,8 +279,7 @@ export function acceptanceOf(level: Level, softening: Softening): Acceptance {
 }
 
 function allocateField(count: number, options: ForceOptions): FieldColumns {
-  const column = (wanted: boolean) =>
-    new Float64Array(new SharedArrayBuffer(wanted ? count * 8 : 0));
+  const column = (wanted: boolean) => takeDoubles(wanted ? count : 0);
   const force = options.accelerations === true;
   return {
     phi: column(true),
@@ -368,7 +366,7 @@ const errorOf = ({ offset, sigma }: SampledError): number => Math.hypot(offset, 
 
 function asDoubles(column: Float64Array | Float32Array): Float64Array {
   if (column instanceof Float64Array && column.buffer instanceof SharedArrayBuffer) return column;
-  const copy = new Float64Array(new SharedArrayBuffer(column.length * 8));
+  const copy = takeDoubles(column.length);
   copy.set(column);
   return copy;
 }

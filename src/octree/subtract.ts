@@ -4,6 +4,7 @@
  * Few bodies are subtracted by direct sums; more through a tree of their own, walked against the tree
  * of all. Values at the removed bodies themselves become meaningless.
  */
+import { takeDoubles } from '../numerics/reuse.ts';
 import type * as ForcesTask from './forces.task.ts';
 import type * as SubtractTask from './subtract.task.ts';
 import { crewOfOne, type Crew, type TaskModule } from '../parallel/crew.ts';
@@ -52,8 +53,7 @@ export async function subtractBodies(
     mass: pick(columns.mass, removed),
   };
   const softened = forces.softening.kernel !== 'none';
-  const column = (wanted: boolean) =>
-    new Float64Array(new SharedArrayBuffer(wanted ? count * 8 : 0));
+  const column = (wanted: boolean) => takeDoubles(wanted ? count : 0);
   const none = column(false);
   const phi = column(true);
   const psi = column(softened);
@@ -108,7 +108,7 @@ function subtractSums(
 }
 
 function pick(column: Float64Array | Float32Array, indices: Uint32Array): Float64Array {
-  const picked = new Float64Array(new SharedArrayBuffer(indices.length * 8));
+  const picked = takeDoubles(indices.length);
   for (let k = 0; k < indices.length; k++) picked[k] = column[indices[k]];
   return picked;
 }

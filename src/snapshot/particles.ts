@@ -4,6 +4,7 @@
  * All readers make it, all physics takes it, and nobody reorders it: index i means the same body
  * in the file, here, and in every result.
  */
+import { takeBuffer, takeDoubles } from '../numerics/reuse.ts';
 import type { UnitSystem } from './units.ts';
 
 /** A column of reals as it lies in shared memory: the precision of the file is kept. */
@@ -94,12 +95,12 @@ export interface Particles {
   readonly origin: ParticleOrigin;
 }
 
-/** Allocates a zeroed column of `count` reals in shared memory. */
+/** Allocates a column of `count` reals in shared memory; every one must be written. */
 export function allocateColumn(
   count: number,
   type: 'float64' | 'float32' = 'float64',
 ): FloatColumn {
   return type === 'float64'
-    ? new Float64Array(new SharedArrayBuffer(count * 8))
-    : new Float32Array(new SharedArrayBuffer(count * 4));
+    ? takeDoubles(count)
+    : new Float32Array(takeBuffer(count * 4), 0, count);
 }

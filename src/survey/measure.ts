@@ -1,4 +1,5 @@
 /** One file → one record: reading, measuring, and the time each took. */
+import { reusingMemory } from '../numerics/reuse.ts';
 import { measureParticles } from '../dynamics/measure.ts';
 import type { MeasureRecord } from '../dynamics/record.ts';
 import type { MeasureOptions } from '../dynamics/settings.ts';
@@ -35,8 +36,10 @@ export async function measureFile(
       options.onStage?.('reading', total > 0 ? done / total : null);
     },
   };
-  await requireMemory(path, options.read ?? {}, (options.softening ?? 0) > 0);
-  const particles = await readSnapshot(path, read);
-  const readSeconds = (performance.now() - start) / 1000;
-  return measureParticles(particles, options, crew, { readSeconds, onStage: options.onStage });
+  return reusingMemory(async () => {
+    await requireMemory(path, options.read ?? {}, (options.softening ?? 0) > 0);
+    const particles = await readSnapshot(path, read);
+    const readSeconds = (performance.now() - start) / 1000;
+    return measureParticles(particles, options, crew, { readSeconds, onStage: options.onStage });
+  });
 }

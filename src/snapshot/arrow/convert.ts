@@ -1,4 +1,5 @@
 /** Bytes of a buffer → numbers of our columns, a block of rows at a time. */
+import { takeBuffer } from '../../numerics/reuse.ts';
 import { BYTES_OF, type NumberKind, type PlannedColumn, type StoredKind } from './plan.ts';
 
 export type StoredColumn =
@@ -26,10 +27,10 @@ const ARRAYS = {
   uint64: BigUint64Array,
 } as const;
 
-/** A zeroed column on shared memory. */
+/** A column on shared memory; every row must be written. */
 export function allocateStored(kind: StoredKind, rows: number): StoredColumn {
   // The constructors take any buffer, their types only one kind.
-  const buffer: unknown = new SharedArrayBuffer(rows * BYTES_OF[kind]);
+  const buffer: unknown = takeBuffer(rows * BYTES_OF[kind]);
   return new ARRAYS[kind](buffer as ArrayBuffer, 0, rows);
 }
 

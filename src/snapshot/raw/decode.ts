@@ -2,6 +2,7 @@
  * Kernels from a chunk of bytes to columns. A chunk holds whole bodies from its first byte on;
  * `offset` and `stride` are in bytes; the numbers go to `target[at]`, `target[at + 1]`, ...
  */
+import { takeBuffer } from '../../numerics/reuse.ts';
 import type { FloatColumn, IdColumn } from '../particles.ts';
 import { NATIVE_ORDER, type ByteOrder, type NumberType } from './types.ts';
 
@@ -128,29 +129,29 @@ function decodeByView(
   }
 }
 
-/** Allocates a zeroed column of the same type as the file's, in shared memory. */
+/** Allocates a column of the same type as the file's, in shared memory. */
 export function allocateIds(count: number, type: NumberType): IdColumn {
   switch (type) {
     case 'float64':
-      return new Float64Array(new SharedArrayBuffer(count * 8));
+      return new Float64Array(takeBuffer(count * 8), 0, count);
     case 'int64':
-      return new BigInt64Array(new SharedArrayBuffer(count * 8));
+      return new BigInt64Array(takeBuffer(count * 8), 0, count);
     case 'uint64':
-      return new BigUint64Array(new SharedArrayBuffer(count * 8));
+      return new BigUint64Array(takeBuffer(count * 8), 0, count);
     case 'float32':
-      return new Float32Array(new SharedArrayBuffer(count * 4));
+      return new Float32Array(takeBuffer(count * 4), 0, count);
     case 'int32':
-      return new Int32Array(new SharedArrayBuffer(count * 4));
+      return new Int32Array(takeBuffer(count * 4), 0, count);
     case 'uint32':
-      return new Uint32Array(new SharedArrayBuffer(count * 4));
+      return new Uint32Array(takeBuffer(count * 4), 0, count);
     case 'int16':
-      return new Int16Array(new SharedArrayBuffer(count * 2));
+      return new Int16Array(takeBuffer(count * 2), 0, count);
     case 'uint16':
-      return new Uint16Array(new SharedArrayBuffer(count * 2));
+      return new Uint16Array(takeBuffer(count * 2), 0, count);
     case 'int8':
-      return new Int8Array(new SharedArrayBuffer(count));
+      return new Int8Array(takeBuffer(count), 0, count);
     case 'uint8':
-      return new Uint8Array(new SharedArrayBuffer(count));
+      return new Uint8Array(takeBuffer(count), 0, count);
   }
 }
 
