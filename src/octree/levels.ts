@@ -2,6 +2,7 @@
 
 /** Number of bodies that {@link Level.reaches} is stated for. */
 const REACHES_AT = 1e5;
+const SHRINKS_UP_TO = 1e6;
 
 /** One setting of the cell–cell walk. */
 export interface Level {
@@ -35,8 +36,8 @@ export const LEVELS: readonly Level[] = [
 
 /** The cheapest level that usually meets an error of U at this number of bodies. */
 export function firstLevel(errorWanted: number, count: number): Level {
-  // Cells shrink as bodies grow in number, and single errors with them.
-  const scaled = errorWanted * Math.cbrt(count / REACHES_AT);
+  // Cells shrink as bodies grow in number, and single errors with them; beyond a million no longer.
+  const scaled = errorWanted * Math.cbrt(Math.min(count, SHRINKS_UP_TO) / REACHES_AT);
   return LEVELS.find((level) => level.reaches <= scaled) ?? LEVELS[LEVELS.length - 1];
 }
 

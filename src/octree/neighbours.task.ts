@@ -117,11 +117,20 @@ function collect(tree: Octree, px: number, py: number, pz: number, radius: numbe
 const nearest2 = new Float64Array(64);
 const nearestMass = new Float64Array(64);
 
-/** Finds the `wanted` nearest candidates of a point, itself included; returns how many were found. */
-function nearestCandidates(px: number, py: number, pz: number, wanted: number): number {
+/**
+ * Finds the `wanted` nearest candidates of a point, itself included, among those nearer than √bound2;
+ * returns how many were found.
+ */
+function nearestCandidates(
+  px: number,
+  py: number,
+  pz: number,
+  wanted: number,
+  bound2: number,
+): number {
   const { x, y, z, mass, count } = candidates;
   let found = 0;
-  let worst = Infinity;
+  let worst = bound2;
   for (let k = 0; k < count; k++) {
     const dx = x[k] - px;
     const dy = y[k] - py;
@@ -149,12 +158,19 @@ function insertNearest(d2: number, mass: number, found: number, wanted: number):
 const childOrder = new Int32Array(8);
 const childDistance2 = new Float64Array(8);
 
-/** The same for a point and all bodies of the tree, nearest cells first. */
-function nearestInTree(tree: Octree, px: number, py: number, pz: number, wanted: number): number {
+/** The same among all bodies of the tree, nearest cells first. */
+function nearestInTree(
+  tree: Octree,
+  px: number,
+  py: number,
+  pz: number,
+  wanted: number,
+  bound2: number,
+): number {
   const { geometry: G, topology: T, bodies } = tree;
   const { x, y, z, mass } = bodies;
   let found = 0;
-  let worst = Infinity;
+  let worst = bound2;
   let depth = 1;
   stack[0] = 0;
   while (depth > 0) {
@@ -205,7 +221,10 @@ function doubled(old: Int32Array): Int32Array<ArrayBuffer> {
 }
 
 /** Bodies are measured group by group: the largest nodes with at most this many. */
-const GROUP = 32;
+const GROUP = 64;
+/** Squared distances are guessed to grow at most by this from body to body, and bounds widened by this. */
+const GUESS_SLACK = 2.25;
+const BOUND_SLACK = 1 + 1e-9;
 /** Searched about a group: its radius plus this many times the expected distance of the j-th neighbour. */
 const SEARCH_MARGIN = 1.05;
 
@@ -250,13 +269,23 @@ export function sumDensities(round: DensityRound, takeJob: TakeJob): void {
       const radius = G[g + NODE_RADIUS];
       const searched = radius * (1 + SEARCH_MARGIN * Math.cbrt((j + 1) / (end - begin)));
       const together = collect(tree, G[g], G[g + 1], G[g + 2], searched);
+      // The next body's neighbours are about as far as this one's: most candidates need no second look.
+      let guess2 = Infinity;
       for (let i = begin; i < end; i++) {
         const px = x[i];
         const py = y[i];
         const pz = z[i];
         const sure = searched - Math.hypot(px - G[g], py - G[g + 1], pz - G[g + 2]);
-        const found = together ? nearestCandidates(px, py, pz, j + 1) : 0;
-        if (found <= j || !(nearest2[j] <= sure * sure)) nearestInTree(tree, px, py, pz, j + 1);
+        let found = together ? nearestCandidates(px, py, pz, j + 1, guess2) : 0;
+        if (together && found <= j && guess2 < Infinity) {
+          found = nearestCandidates(px, py, pz, j + 1, Infinity);
+        }
+        if (found <= j) nearestInTree(tree, px, py, pz, j + 1, Infinity);
+        else if (!(nearest2[j] <= sure * sure)) {
+          // What was found bounds what there is; a little more, so that equals are found again.
+          nearestInTree(tree, px, py, pz, j + 1, nearest2[j] * BOUND_SLACK);
+        }
+        guess2 = GUESS_SLACK * nearest2[j];
         let mass = 0;
         for (let k = 1; k < j; k++) mass += nearestMass[k];
         const r3 = nearest2[j] * Math.sqrt(nearest2[j]);

@@ -37,16 +37,17 @@ export async function requireMemory(
   path: string,
   options: ReadOptions,
   softened: boolean,
-  available = memoryAvailable(),
+  available?: number,
 ): Promise<void> {
   const found = path === '-' ? null : await stat(path).catch(() => null);
   if (found === null || !found.isFile() || found.size < ASK_ABOVE_BYTES) return;
   const description = await describeSnapshot(path, options);
   const needed = memoryNeeded(description, softened);
-  if (needed <= available) return;
+  const free = available ?? memoryAvailable();
+  if (needed <= free) return;
   throw new InputError(
     'input.tooLarge',
-    `${path} holds ${description.count} bodies, which take about ${gigabytes(needed)} to measure; ${gigabytes(available)} are free`,
+    `${path} holds ${description.count} bodies, which take about ${gigabytes(needed)} to measure; ${gigabytes(free)} are free`,
     'use a machine with more memory, end other programs, or write the snapshot in single precision',
   );
 }
