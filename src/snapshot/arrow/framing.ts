@@ -187,8 +187,11 @@ export async function readFooter(
 
   const cursor = new FileCursor(file, FILE_HEAD_BYTES, footerBegin);
   const { value: first } = await streamMessages(cursor, path).next();
-  if (first?.message.kind !== 'schema')
-    throw damaged(path, 'its first message', 'it is not a schema');
+  if (first?.message.kind !== 'schema') {
+    // apache-arrow in JavaScript writes the schema into the footer alone: then the batches begin at once.
+    assertGapless(footer.blocks, FILE_HEAD_BYTES, footerBegin, path);
+    return footer;
+  }
   if (signature(first.message.schema) !== signature(footer.schema))
     throw damaged(path, 'its footer', 'the schema in it is not the schema at the beginning');
   assertGapless(footer.blocks, cursor.position, footerBegin, path);

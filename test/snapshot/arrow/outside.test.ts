@@ -1,9 +1,10 @@
 /**
  * Files of writers that are not ours are read exactly. Sources: nodejs-polars 0.24.1 and
- * @uwdata/flechette 2.6.0, two implementations of the Apache Arrow columnar format.
+ * @uwdata/flechette 2.6.0, two implementations of the Apache Arrow columnar format; and apache-arrow 21.2.0.
  */
-import { readFile } from 'node:fs/promises';
+import { readFile, writeFile } from 'node:fs/promises';
 import { join } from 'node:path';
+import { tableFromArrays, tableToIPC } from 'apache-arrow';
 import pl from 'nodejs-polars';
 import { describe, expect, it } from 'vitest';
 import { halfToNumber } from '../../../src/snapshot/arrow/convert.ts';
@@ -145,3 +146,26 @@ describe('halfToNumber', () => {
     expect(halfToNumber(bits)).toBe(value);
   });
 });
+
+it.each(['file', 'stream'] as const)(
+  'reads what apache-arrow writes as a %s, whose files have the schema in the footer alone',
+  async (format) => {
+    const table = tableFromArrays(
+      Object.fromEntries(
+        Object.entries(EXPECTED).map(([name, values]) => [name, Float64Array.from(values)]),
+      ),
+    );
+    const bytes = tableToIPC(table, format);
+    const path = join(folder, `apache-${format}.arrow`);
+    await writeFile(path, bytes);
+    expect(numbersOf(await readArrow(path))).toEqual(EXPECTED);
+    // Without its batch's first bytes such a file is damaged, not empty.
+    if (format === 'file') {
+      await writeFile(
+        path,
+        bytes.map((byte, at) => (at >= 8 && at < 64 ? 0 : byte)),
+      );
+      await expect(readArrow(path)).rejects.toMatchObject({ name: 'InputError' });
+    }
+  },
+);
