@@ -9,6 +9,7 @@ import type { PairKernels } from './pairs.ts';
 import type { SourceTree } from './walk.ts';
 import {
   GEOMETRY,
+  longerStack,
   NODE_BEGIN,
   NODE_CHILD,
   NODE_CHILDREN,
@@ -28,7 +29,7 @@ export interface PointWalkTools {
   readonly support: number;
 }
 
-let stack = new Int32Array(4096);
+let stack: Int32Array = new Int32Array(4096);
 
 /**
  * Adds to `out` Σ m/√(r²+ε²) and the Clausius part at a point (out[0], out[1]).
@@ -78,11 +79,7 @@ export function sumAtPoint(
       interactions += end - begin;
       continue;
     }
-    if (depth + 8 > stack.length) {
-      const longer = new Int32Array(stack.length * 2);
-      longer.set(stack);
-      stack = longer;
-    }
+    if (depth + 8 > stack.length) stack = longerStack(stack);
     const first = T[t + NODE_CHILD];
     for (let child = first + children - 1; child >= first; child--) stack[depth++] = child;
   }

@@ -64,14 +64,14 @@ export async function sampleError(
   crew: Crew,
 ): Promise<ErrorSample> {
   const count = source.tree.bodies.count;
-  const direct = narrowAngle === null || count <= DIRECT_UP_TO;
-  const places = drawPlaces(source.tree, direct ? DIRECT_SAMPLE : WALK_SAMPLE);
+  const openingAngle = count <= DIRECT_UP_TO ? null : narrowAngle;
+  const places = drawPlaces(source.tree, openingAngle === null ? DIRECT_SAMPLE : WALK_SAMPLE);
   if (places.length === 0) {
     const none = { offset: 0, sigma: 0, rms: 0 };
     return { phi: none, psi: none, bodies: 0, interactions: 0 };
   }
   const engine = engineSums(source.tree, field, places);
-  if (narrowAngle === null || direct) {
+  if (openingAngle === null) {
     const exact = await directSums(source, softening, places, crew);
     return {
       phi: compare(engine, exact, 0),
@@ -80,7 +80,7 @@ export async function sampleError(
       interactions: places.length * count,
     };
   }
-  const options = { order, softening, openingAngle: narrowAngle };
+  const options = { order, softening, openingAngle };
   const { sums: narrow, interactions } = await sumsAtBodies(source, places, options, crew);
   const step = places.length / DIRECT_OF_WALK;
   const chosen = Uint32Array.from({ length: DIRECT_OF_WALK }, (_, k) =>

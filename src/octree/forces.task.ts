@@ -4,7 +4,7 @@ import { sumAtPoint } from './classical.ts';
 import { expansionOf } from './expansion.ts';
 import { estimateDepths, gatherBranch } from './multipoles.ts';
 import { pairKernelsOf, pairSofteningOf } from './pairs.ts';
-import { supportOf, type Softening } from './softening.ts';
+import { plummerSquare, splineSupport, type Softening } from './softening.ts';
 import { NODE_BEGIN, NODE_END, TOPOLOGY, type Octree } from './tree.ts';
 import {
   descendBranch,
@@ -83,7 +83,7 @@ export function walkBranches(round: WalkRound, takeJob: TakeJob): WalkCounts {
     const nodes = target.branchSlots[2 * job + 1] - target.branchSlots[2 * job] + 1;
     scratch.prepare(size, nodes * expansion.locals, soft, force);
     walkBranch(target, job, source, round.same, tools, scratch, counts);
-    descendBranch(target, job, expansion, soft && softening.kernel === 'plummer', force, scratch);
+    descendBranch(target, job, expansion, softening.kernel === 'plummer', force, scratch);
     const input = target.bodies.input;
     for (let k = 0; k < size; k++) {
       const i = input[begin + k];
@@ -121,8 +121,8 @@ export function walkPoints(round: PointRound, takeJob: TakeJob): number {
     pairs: pairKernelsOf(softening.kernel, false),
     pairSoftening: pairSofteningOf(softening.kernel, softening.length),
     openingAngle: round.openingAngle,
-    soft2: softening.kernel === 'plummer' ? softening.length ** 2 : 0,
-    support: softening.kernel === 'spline' ? supportOf(softening) : 0,
+    soft2: plummerSquare(softening),
+    support: splineSupport(softening),
   };
   const { x, y, z } = points;
   let interactions = 0;

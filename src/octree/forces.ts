@@ -17,7 +17,7 @@ import { expansionOf } from './expansion.ts';
 import { DIRECT_TARGETS, type FieldColumns } from './forces.task.ts';
 import { gatherSlot, leastOfChildren } from './multipoles.ts';
 import { firstLevel, nextLevel, treeCost, type Level } from './levels.ts';
-import { supportOf, type Softening } from './softening.ts';
+import { plummerSquare, splineSupport, type Softening } from './softening.ts';
 import { NODE_CHILDREN, TOPOLOGY, type Octree } from './tree.ts';
 import type { Acceptance, SourceTree, WalkCounts } from './walk.ts';
 
@@ -165,7 +165,7 @@ async function sumByTree(
   const start = performance.now();
   options.onStage?.('tree');
   const tree = await buildOctree(columns, crew);
-  const soft2 = softening.kernel === 'plummer' ? softening.length ** 2 : 0;
+  const soft2 = plummerSquare(softening);
   await crew.run(TASK, 'estimateBranches', { tree, soft2 }, tree.branchRoots.length);
   for (let slot = tree.topCount - 1; slot >= 0; slot--) leastOfChildren(tree, slot);
   const built = performance.now();
@@ -273,8 +273,8 @@ export function acceptanceOf(level: Level, softening: Softening): Acceptance {
     openingAngle: level.openingAngle,
     tolerance: level.tolerance,
     order: level.order,
-    soft2: softening.kernel === 'plummer' ? softening.length ** 2 : 0,
-    support: softening.kernel === 'spline' ? supportOf(softening) : 0,
+    soft2: plummerSquare(softening),
+    support: splineSupport(softening),
   };
 }
 

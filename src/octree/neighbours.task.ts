@@ -2,6 +2,7 @@
 import type { TakeJob } from '../parallel/crew.ts';
 import {
   GEOMETRY,
+  longerStack,
   NODE_BEGIN,
   NODE_CHILD,
   NODE_CHILDREN,
@@ -62,7 +63,7 @@ class Candidates {
 }
 
 const candidates = new Candidates();
-let stack = new Int32Array(4096);
+let stack: Int32Array = new Int32Array(4096);
 
 /** A group whose sphere holds more bodies than this is searched body by body instead. */
 const MOST_CANDIDATES = 768;
@@ -87,7 +88,7 @@ function collect(tree: Octree, px: number, py: number, pz: number, radius: numbe
     const children = T[t + NODE_CHILDREN];
     if (children > 0) {
       if (depth + 8 > stack.length) {
-        stack = doubled(stack);
+        stack = longerStack(stack);
       }
       const first = T[t + NODE_CHILD];
       for (let child = first + children - 1; child >= first; child--) stack[depth++] = child;
@@ -189,7 +190,7 @@ function nearestInTree(
       }
       continue;
     }
-    if (depth + 8 > stack.length) stack = doubled(stack);
+    if (depth + 8 > stack.length) stack = longerStack(stack);
     const reachWorst = Math.sqrt(worst);
     const first = T[t + NODE_CHILD];
     let open = 0;
@@ -212,12 +213,6 @@ function nearestInTree(
     for (let k = 0; k < open; k++) stack[depth++] = childOrder[k];
   }
   return found;
-}
-
-function doubled(old: Int32Array): Int32Array<ArrayBuffer> {
-  const longer = new Int32Array(old.length * 2);
-  longer.set(old);
-  return longer;
 }
 
 /** Bodies are measured group by group: the largest nodes with at most this many. */

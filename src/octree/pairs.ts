@@ -6,7 +6,7 @@
  * `ax ay az` Σ m g(r) (x_j − x_i) with g = |f′|/r.
  */
 import { compile } from './compile.ts';
-import { splineForce, splinePotential, type SofteningKernel } from './softening.ts';
+import { SPLINE_SUPPORT, splineForce, splinePotential, type SofteningKernel } from './softening.ts';
 
 /** Where sums go: one number a body of a branch; empty arrays where a sum is not wanted. */
 export interface PairSums {
@@ -95,7 +95,7 @@ export function pairKernelsOf(kernel: SofteningKernel, withForce: boolean): Pair
 /** The number that pair kernels take for a softening length ε: ε², or the spline's support. */
 export function pairSofteningOf(kernel: SofteningKernel, length: number): number {
   if (kernel === 'none') return 0;
-  return kernel === 'plummer' ? length * length : 2.8 * length;
+  return kernel === 'plummer' ? length * length : SPLINE_SUPPORT * length;
 }
 
 function writePairKernels(kernel: SofteningKernel, force: boolean, key: string): PairKernels {

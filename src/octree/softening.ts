@@ -24,6 +24,16 @@ export function supportOf(softening: Softening): number {
   return softening.kernel === 'plummer' ? Infinity : SPLINE_SUPPORT * softening.length;
 }
 
+/** ε² where the kernel is Plummer's, whose expansions carry it; else 0 [length²]. */
+export function plummerSquare({ kernel, length }: Softening): number {
+  return kernel === 'plummer' ? length * length : 0;
+}
+
+/** Distance inside which a spline's force is not Newtonian, so that cells must open; else 0 [length]. */
+export function splineSupport(softening: Softening): number {
+  return softening.kernel === 'spline' ? supportOf(softening) : 0;
+}
+
 /**
  * The spline's A(u): potential is G m A(u)/h at r = u h.
  * Source: the kernel of Monaghan & Lattanzio 1985, integrated; A(0) = −14/5.

@@ -51,5 +51,9 @@ export interface Octree {
   readonly leafCapacity: number;
 }
 
-/** Everything of a tree that a worker needs, as plain shared arrays. */
-export type SharedOctree = Octree;
+/** A copy of a walk's stack with room for twice as much. */
+export function longerStack(stack: Int32Array): Int32Array {
+  const longer = new Int32Array(stack.length * 2);
+  longer.set(stack);
+  return longer;
+}

@@ -9,6 +9,7 @@ import type { Expansion } from './expansion.ts';
 import type { PairKernels, PairSums } from './pairs.ts';
 import {
   GEOMETRY,
+  longerStack,
   NODE_BEGIN,
   NODE_CHILD,
   NODE_CHILDREN,
@@ -270,7 +271,7 @@ class Walk {
         pairCount += n;
         continue;
       }
-      if (depth + 32 > stack.length) stack = scratch.stack = longer(stack);
+      if (depth + 32 > stack.length) stack = scratch.stack = longerStack(stack);
       if (!sLeaf && (tLeaf || rs >= rt)) {
         const first = sT[ps + NODE_CHILD];
         for (let child = first + sT[ps + NODE_CHILDREN] - 1; child >= first; child--) {
@@ -313,7 +314,7 @@ class Walk {
       const a = stack[--depth];
       const pa = a * TOPOLOGY;
       const sizeA = T[pa + NODE_END] - T[pa + NODE_BEGIN];
-      if (depth + 80 > stack.length) stack = scratch.stack = longer(stack);
+      if (depth + 80 > stack.length) stack = scratch.stack = longerStack(stack);
       if (a === b) {
         if (T[pa + NODE_CHILDREN] === 0 || sizeA <= DIRECT_INSIDE) {
           const left = inside(
@@ -405,12 +406,6 @@ class Walk {
     this.counts.pairInteractions += pairCount;
     this.counts.coincidentPairs += coincident;
   }
-}
-
-function longer(stack: Int32Array): Int32Array {
-  const copy = new Int32Array(stack.length * 2);
-  copy.set(stack);
-  return copy;
 }
 
 /**
