@@ -1,18 +1,23 @@
-/** Measures one file (or 1,000 made bodies) and prints the peak resident memory of this process. */
-import { readFile } from 'node:fs/promises';
+/**
+ * Measures one file (or `few`: 5000 made bodies) in this fresh process, and prints as JSON its peak
+ * resident memory, the seconds of the record's parts, and those since the process began.
+ */
 import { measureParticles } from '../../dist/dynamics/measure.js';
 import { makeModel } from '../../dist/models/make.js';
 import { startCrew } from '../../dist/parallel/crew.js';
-import { readSnapshot } from '../../dist/snapshot/read.js';
+import { measureFile } from '../../dist/survey/measure.js';
+import { peakMemory } from './tools.js';
 
-const [file, threads] = process.argv.slice(2);
+const [file, threads, options] = process.argv.slice(2);
 const crew = startCrew(Number(threads));
-const particles =
+const record =
   file === 'few'
-    ? makeModel({ model: 'plummer', count: 5000, seed: 1, masses: 'equal' })
-    : await readSnapshot(file, {});
-await measureParticles(particles, {}, crew);
+    ? await measureParticles(
+        makeModel({ model: 'plummer', count: 5000, seed: 1, masses: 'equal' }),
+        {},
+        crew,
+      )
+    : await measureFile(file, JSON.parse(options), crew);
 await crew.close();
-// Not resourceUsage().maxRSS: a child starts with its parent's.
-const status = await readFile('/proc/self/status', 'utf8');
-console.log(Number(/VmHWM:\s+(\d+) kB/.exec(status)?.[1]) * 1024);
+const seconds = { ...record.engine.seconds, process: performance.now() / 1000 };
+console.log(JSON.stringify({ peak: await peakMemory(), seconds }));
