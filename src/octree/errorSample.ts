@@ -6,22 +6,14 @@
  * mean of (narrow walk − direct) estimates the mean error of Σ m/r per unit mass, and so the error of
  * the total; the two sampling variances add.
  */
+import { drawByMass, someOf } from './draw.ts';
 import type * as ForcesTask from './forces.task.ts';
 import type { Crew, TaskModule } from '../parallel/crew.ts';
 import { DIRECT_SLICE, DIRECT_SUMS } from './forces.task.ts';
 import type { FieldColumns } from './forces.task.ts';
 import { sumsAtBodies } from './pointWalk.ts';
 import type { Softening } from './softening.ts';
-import {
-  GEOMETRY,
-  NODE_BEGIN,
-  NODE_CHILD,
-  NODE_CHILDREN,
-  NODE_END,
-  NODE_MASS,
-  TOPOLOGY,
-  type Octree,
-} from './tree.ts';
+import type { Octree } from './tree.ts';
 import type { SourceTree } from './walk.ts';
 
 const TASK: TaskModule<typeof ForcesTask> = {
@@ -65,14 +57,15 @@ export async function sampleError(
 ): Promise<ErrorSample> {
   const count = source.tree.bodies.count;
   const openingAngle = count <= DIRECT_UP_TO ? null : narrowAngle;
-  const places = drawPlaces(source.tree, openingAngle === null ? DIRECT_SAMPLE : WALK_SAMPLE);
-  if (places.length === 0) {
+  const draws = drawByMass(source.tree, openingAngle === null ? DIRECT_SAMPLE : WALK_SAMPLE);
+  const { places, of } = draws;
+  if (of.length === 0) {
     const none = { offset: 0, sigma: 0, rms: 0 };
     return { phi: none, psi: none, bodies: 0, interactions: 0 };
   }
-  const engine = engineSums(source.tree, field, places);
+  const engine = eachDraw(engineSums(source.tree, field, places), of);
   if (openingAngle === null) {
-    const exact = await directSums(source, softening, places, crew);
+    const exact = eachDraw(await directSums(source, softening, places, crew), of);
     return {
       phi: compare(engine, exact, 0),
       psi: compare(engine, exact, 1),
@@ -81,54 +74,25 @@ export async function sampleError(
     };
   }
   const options = { order, softening, openingAngle };
-  const { sums: narrow, interactions } = await sumsAtBodies(source, places, options, crew);
-  const step = places.length / DIRECT_OF_WALK;
-  const chosen = Uint32Array.from({ length: DIRECT_OF_WALK }, (_, k) =>
-    Math.floor((k + 0.5) * step),
+  const { sums, interactions } = await sumsAtBodies(source, places, options, crew);
+  const narrow = eachDraw(sums, of);
+  const some = someOf(draws, DIRECT_OF_WALK);
+  const exact = eachDraw(
+    await directSums(source, softening, some.draws.places, crew),
+    some.draws.of,
   );
-  const exact = await directSums(
-    source,
-    softening,
-    chosen.map((k) => places[k]),
-    crew,
-  );
-  const narrowChosen = new Float64Array(chosen.length * 2);
-  chosen.forEach((k, at) => narrowChosen.set(narrow.subarray(2 * k, 2 * k + 2), 2 * at));
+  const narrowSome = eachDraw(narrow, some.chosen);
   return {
-    phi: together(compare(engine, narrow, 0), compare(narrowChosen, exact, 0)),
-    psi: together(compare(engine, narrow, 1), compare(narrowChosen, exact, 1)),
+    phi: together(compare(engine, narrow, 0), compare(narrowSome, exact, 0)),
+    psi: together(compare(engine, narrow, 1), compare(narrowSome, exact, 1)),
     bodies: places.length,
-    interactions: interactions + chosen.length * count,
+    interactions: interactions + some.draws.places.length * count,
   };
 }
 
-/** Places in tree order, one in each equal share of the mass, at a hashed position inside it. */
-function drawPlaces(tree: Octree, wanted: number): Uint32Array {
-  const { geometry: G, topology: T, bodies } = tree;
-  const total = G[NODE_MASS];
-  if (!(total > 0)) return new Uint32Array(0);
-  const size = Math.min(wanted, bodies.count);
-  const places = new Set<number>();
-  for (let k = 0; k < size; k++) {
-    const hash = (Math.imul(k + 1, 0x9e3779b1) >>> 0) / 2 ** 32;
-    let mass = ((k + hash) / size) * total;
-    let slot = 0;
-    while (T[slot * TOPOLOGY + NODE_CHILDREN] > 0) {
-      const first = T[slot * TOPOLOGY + NODE_CHILD];
-      const last = first + T[slot * TOPOLOGY + NODE_CHILDREN] - 1;
-      let child = first;
-      while (child < last && mass >= G[child * GEOMETRY + NODE_MASS]) {
-        mass -= G[child * GEOMETRY + NODE_MASS];
-        child++;
-      }
-      slot = child;
-    }
-    let place = T[slot * TOPOLOGY + NODE_BEGIN];
-    const end = T[slot * TOPOLOGY + NODE_END] - 1;
-    while (place < end && mass >= bodies.mass[place]) mass -= bodies.mass[place++];
-    if (bodies.mass[place] > 0) places.add(place);
-  }
-  return Uint32Array.from(places);
+/** Two sums a body → two a draw. */
+function eachDraw(sums: Float64Array, of: Uint32Array): Float64Array {
+  return Float64Array.from({ length: of.length * 2 }, (_, k) => sums[2 * of[k >> 1] + (k & 1)]);
 }
 
 function engineSums(tree: Octree, field: FieldColumns, places: Uint32Array): Float64Array {
@@ -183,18 +147,17 @@ export async function sampleAccelerationError(
   softening: Softening,
   crew: Crew,
 ): Promise<number> {
-  const places = drawPlaces(source.tree, ACCELERATION_SAMPLE);
-  if (places.length === 0) return 0;
+  const { places, of } = drawByMass(source.tree, ACCELERATION_SAMPLE);
+  if (of.length === 0) return 0;
   const exact = await sumDirectly(source, softening, places, true, crew);
-  let squares = 0;
-  places.forEach((place, k) => {
+  const squares = Array.from(places, (place, k) => {
     const i = source.tree.bodies.input[place];
     const [ax, ay, az] = exact.subarray(DIRECT_SUMS * k + 2, DIRECT_SUMS * (k + 1));
     const size = Math.hypot(ax, ay, az);
     const error = Math.hypot(field.ax[i] - ax, field.ay[i] - ay, field.az[i] - az);
-    if (size > 0) squares += (error / size) ** 2;
+    return size > 0 ? (error / size) ** 2 : 0;
   });
-  return Math.sqrt(squares / places.length);
+  return Math.sqrt(of.reduce((sum, k) => sum + squares[k], 0) / of.length);
 }
 
 /** Mean and scatter of a − b in the given one of the two sums a body. */

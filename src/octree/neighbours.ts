@@ -8,7 +8,8 @@
 import type * as NeighboursTask from './neighbours.task.ts';
 import { CompensatedSum, compensatedSum } from '../numerics/compensated.ts';
 import { crewOfOne, type Crew, type TaskModule } from '../parallel/crew.ts';
-import { BIN_SUMS, BINS, DENSITY_SUMS, eachGroup, MOMENTS } from './neighbours.task.ts';
+import { BIN_SUMS, BINS, DENSITY_SUMS, MOMENTS } from './neighbours.task.ts';
+import { eachGroup } from './groups.ts';
 import { GEOMETRY, NODE_BEGIN, NODE_END, TOPOLOGY, type Octree } from './tree.ts';
 
 const TASK: TaskModule<typeof NeighboursTask> = {
@@ -27,6 +28,9 @@ const MEASURE_ALL = 200_000;
 const SAMPLED_SHARE = 0.03;
 /** Groups of still lower density that carry this share are not measured at all. */
 const UNMEASURED_SHARE = 0.002;
+
+/** Squared distance from the rough centre to the true one, over that of the core, that costs too many digits. */
+const FAR = 1e4;
 
 export interface DensityCentre {
   readonly centre: readonly [number, number, number];
@@ -49,25 +53,31 @@ export async function densityCentre(
   const { count } = tree.bodies;
   if (count < neighbours + 2) return null;
   const all = wantDensities || count <= MEASURE_ALL;
-  const { origin, limits } = survey(tree, all);
+  const { limits, origin: rough } = survey(tree, all);
   const density = new Float64Array(new SharedArrayBuffer(wantDensities ? count * 8 : 0));
   const branches = tree.branchRoots.length;
   const rows = new Float64Array(new SharedArrayBuffer(branches * DENSITY_SUMS * 8));
   const workers = count < 20_000 ? crewOfOne() : crew;
-  const round = { tree, neighbours, ...limits, origin, sums: rows, density };
-  await workers.run(TASK, 'sumDensities', round, branches);
-  const columns = Array.from({ length: DENSITY_SUMS }, () => new CompensatedSum());
-  for (let k = 0; k < rows.length; k++) columns[k % DENSITY_SUMS].add(rows[k]);
-  const sums = withUnmeasured(columns.map((column) => column.value()));
-  if (!(sums[0] > 0) || !Number.isFinite(sums[4])) return null;
-  const d = [1, 2, 3].map((k) => sums[k] / sums[0]);
-  const centre: [number, number, number] = [origin[0] + d[0], origin[1] + d[1], origin[2] + d[2]];
-  // Σρ²|x − c|² from the moments about the origin.
-  const square =
-    sums[8] -
-    2 * (d[0] * sums[5] + d[1] * sums[6] + d[2] * sums[7]) +
-    sums[4] * (d[0] ** 2 + d[1] ** 2 + d[2] ** 2);
-  return { centre, coreRadius: Math.sqrt(Math.max(0, square / sums[4])), density };
+  for (let origin = rough, first = true; ; first = false) {
+    const round = { tree, neighbours, ...limits, origin, sums: rows.fill(0), density };
+    await workers.run(TASK, 'sumDensities', round, branches);
+    const columns = Array.from({ length: DENSITY_SUMS }, () => new CompensatedSum());
+    for (let k = 0; k < rows.length; k++) columns[k % DENSITY_SUMS].add(rows[k]);
+    const sums = withUnmeasured(columns.map((column) => column.value()));
+    if (!(sums[0] > 0) || !Number.isFinite(sums[4])) return null;
+    const d = [1, 2, 3].map((k) => sums[k] / sums[0]);
+    const centre: [number, number, number] = [origin[0] + d[0], origin[1] + d[1], origin[2] + d[2]];
+    // Σρ²|x − c|² from the moments about the origin.
+    const away2 = d[0] ** 2 + d[1] ** 2 + d[2] ** 2;
+    const square =
+      sums[8] - 2 * (d[0] * sums[5] + d[1] * sums[6] + d[2] * sums[7]) + sums[4] * away2;
+    if (first && away2 * sums[4] > FAR * square) {
+      // The difference of large numbers: the same again about what was found.
+      origin = Float64Array.from(centre);
+      continue;
+    }
+    return { centre, coreRadius: Math.sqrt(Math.max(0, square / sums[4])), density };
+  }
 }
 
 /** Adds the groups that were not measured: their coarse moments at the scale that measured ones of like density tell. */
@@ -139,6 +149,6 @@ function survey(tree: Octree, all: boolean): { origin: Float64Array; limits: Lim
 
 function everyGroup(tree: Octree, visit: (slot: number, coarse: number) => void): void {
   for (let branch = 0; branch < tree.branchRoots.length; branch++) {
-    eachGroup(tree, branch, visit);
+    eachGroup(tree, branch, { group: visit });
   }
 }
