@@ -84,7 +84,12 @@ export async function measureParticles(
       'check which column is the mass, and its type and scale',
     );
   }
-  const scratch = takeDoubles(particles.count);
+  // Memory that has done its work is at hand: only the tree itself is used from here on.
+  const spare = forces.tree?.multipoles;
+  const scratch =
+    spare && spare.length >= particles.count
+      ? spare.subarray(0, particles.count)
+      : takeDoubles(particles.count);
   const bound = await boundSet(particles, forces, scratch, crew);
   const boundBalance =
     bound.set.member === null ? whole : await balanceOf(bound.set, bound.field, crew);

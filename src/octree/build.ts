@@ -24,9 +24,9 @@ const TASK: TaskModule<typeof BuildTask> = {
 type Column = Float64Array | Float32Array;
 
 /** Default number of bodies up to which a cell is not cut. */
-export const LEAF_CAPACITY = 20;
+export const LEAF_CAPACITY = 32;
 /** Branches and with them the work of the crew are cut to about this part of all bodies. */
-const BRANCHES = 96;
+const BRANCHES = 64;
 const SMALLEST_BRANCH = 2048;
 const SAMPLE = 32768;
 

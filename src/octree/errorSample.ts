@@ -6,15 +6,16 @@
  * mean of (narrow walk − direct) estimates the mean error of Σ m/r per unit mass, and so the error of
  * the total; the two sampling variances add.
  */
-import { drawByMass, someOf } from './draw.ts';
+import { drawByMass, someOf, type Draws } from './draw.ts';
 import type * as ForcesTask from './forces.task.ts';
 import type { Crew, TaskModule } from '../parallel/crew.ts';
-import { DIRECT_SLICE, DIRECT_SUMS } from './forces.task.ts';
+import { DIRECT_SLICE, DIRECT_SUMS, PATHS_PER_JOB } from './forces.task.ts';
 import type { FieldColumns } from './forces.task.ts';
+import type { Level } from './levels.ts';
 import { sumsAtBodies } from './pointWalk.ts';
 import type { Softening } from './softening.ts';
 import type { Octree } from './tree.ts';
-import type { SourceTree } from './walk.ts';
+import type { Acceptance, SourceTree } from './walk.ts';
 
 const TASK: TaskModule<typeof ForcesTask> = {
   url: new URL('./forces.task.js', import.meta.url),
@@ -23,7 +24,10 @@ const TASK: TaskModule<typeof ForcesTask> = {
 
 /** Up to this many bodies the whole sample is summed directly: that is cheaper than the narrow walk. */
 const DIRECT_UP_TO = 131_072;
-const DIRECT_SAMPLE = 256;
+const DIRECT_SAMPLE = 192;
+/** From this relative error of U on fewer bodies tell enough. */
+const ROUGH = 5e-5;
+const ROUGH_SAMPLE = 96;
 const WALK_SAMPLE = 512;
 const DIRECT_OF_WALK = 32;
 
@@ -38,56 +42,134 @@ export interface SampledError {
 export interface ErrorSample {
   readonly phi: SampledError;
   readonly psi: SampledError;
-  readonly bodies: number;
+}
+
+const NO_ERROR: SampledError = { offset: 0, sigma: 0, rms: 0 };
+
+/** What the engine's sums are held against; made once, it serves every level that it is good for. */
+export interface Reference {
+  readonly draws: Draws;
+  /** Two sums a draw: by the narrow walk, or exact. */
+  readonly sums: Float64Array;
+  /** Setting of the narrow walk; null if the sums are exact. */
+  readonly narrow: { readonly order: number; readonly openingAngle: number } | null;
+  /** Error of the narrow walk, and the direct sums it was found by. */
+  readonly own: { readonly phi: SampledError; readonly psi: SampledError };
+  readonly exactSome: Float64Array;
+  /** Those done for this reference alone. */
   readonly interactions: number;
 }
 
+/** The setting of the narrow walk that measures a level at this number of bodies; null for direct sums. */
+function narrowWalkFor({ order, narrowAngle }: Level, count: number): Reference['narrow'] {
+  return count <= DIRECT_UP_TO || narrowAngle === null
+    ? null
+    : { order, openingAngle: narrowAngle };
+}
+
+/** Whether a level can be measured against a reference that was made for another. */
+export function servesLevel(reference: Reference, level: Level, count: number): boolean {
+  const wanted = narrowWalkFor(level, count);
+  const { narrow } = reference;
+  if (narrow === null || wanted === null) return narrow === wanted;
+  return narrow.order === wanted.order && narrow.openingAngle <= wanted.openingAngle;
+}
+
 /**
- * Measures the error of the engine's sums on a sample.
- * @param field - the engine's sums, in input order
- * @param narrowAngle - opening angle of the second walk, well below the engine's; null: direct sums only
+ * Sums a sample of the bodies anew, more exactly than the engine will or did.
+ * @param source - with multipoles of the level's order
+ * @param errorWanted - relative error of U: a rough one is judged by fewer bodies
+ * @param previous - made for another level of the same tree: its direct sums are used again
  */
-export async function sampleError(
+export async function makeReference(
   source: SourceTree,
-  field: FieldColumns,
-  order: number,
+  level: Level,
   softening: Softening,
-  narrowAngle: number | null,
+  errorWanted: number,
+  previous: Reference | null,
   crew: Crew,
-): Promise<ErrorSample> {
+): Promise<Reference> {
   const count = source.tree.bodies.count;
-  const openingAngle = count <= DIRECT_UP_TO ? null : narrowAngle;
-  const draws = drawByMass(source.tree, openingAngle === null ? DIRECT_SAMPLE : WALK_SAMPLE);
-  const { places, of } = draws;
-  if (of.length === 0) {
-    const none = { offset: 0, sigma: 0, rms: 0 };
-    return { phi: none, psi: none, bodies: 0, interactions: 0 };
-  }
-  const engine = eachDraw(engineSums(source.tree, field, places), of);
-  if (openingAngle === null) {
-    const exact = eachDraw(await directSums(source, softening, places, crew), of);
+  const narrow = narrowWalkFor(level, count);
+  if (narrow === null) {
+    const draws = drawByMass(source.tree, errorWanted >= ROUGH ? ROUGH_SAMPLE : DIRECT_SAMPLE);
+    const { places, of } = draws;
+    const sums = eachDraw(await directSums(source, softening, places, crew), of);
+    const interactions = places.length * count;
     return {
-      phi: compare(engine, exact, 0),
-      psi: compare(engine, exact, 1),
-      bodies: places.length,
-      interactions: places.length * count,
+      draws,
+      sums,
+      narrow,
+      own: { phi: NO_ERROR, psi: NO_ERROR },
+      exactSome: sums,
+      interactions,
     };
   }
-  const options = { order, softening, openingAngle };
-  const { sums, interactions } = await sumsAtBodies(source, places, options, crew);
-  const narrow = eachDraw(sums, of);
+  const draws = drawByMass(source.tree, WALK_SAMPLE);
+  const walked = await sumsAtBodies(source, draws.places, { ...narrow, softening }, crew);
+  const sums = eachDraw(walked.sums, draws.of);
   const some = someOf(draws, DIRECT_OF_WALK);
-  const exact = eachDraw(
-    await directSums(source, softening, some.draws.places, crew),
-    some.draws.of,
-  );
-  const narrowSome = eachDraw(narrow, some.chosen);
+  const known = previous?.narrow ? previous.exactSome : null;
+  const exactSome =
+    known ?? eachDraw(await directSums(source, softening, some.draws.places, crew), some.draws.of);
+  const narrowSome = eachDraw(sums, some.chosen);
   return {
-    phi: together(compare(engine, narrow, 0), compare(narrowSome, exact, 0)),
-    psi: together(compare(engine, narrow, 1), compare(narrowSome, exact, 1)),
-    bodies: places.length,
-    interactions: interactions + some.draws.places.length * count,
+    draws,
+    sums,
+    narrow,
+    own: { phi: compare(narrowSome, exactSome, 0), psi: compare(narrowSome, exactSome, 1) },
+    exactSome,
+    interactions: walked.interactions + (known ? 0 : some.draws.places.length * count),
   };
+}
+
+/** The error of the engine's sums, in input order. */
+export function sampleError(
+  { draws, sums, own }: Reference,
+  tree: Octree,
+  field: FieldColumns,
+): ErrorSample {
+  const engine = eachDraw(engineSums(tree, field, draws.places), draws.of);
+  return {
+    phi: together(compare(engine, sums, 0), own.phi),
+    psi: together(compare(engine, sums, 1), own.psi),
+  };
+}
+
+/** Bodies that a level is tried on. */
+const TRIED = 96;
+
+/**
+ * The error of U over |U| that a level is going to make at least, as 1σ: found by walking it towards a
+ * few of the sampled bodies only. A level that is refused for it would have been walked in vain.
+ */
+export async function leastError(
+  reference: Reference,
+  source: SourceTree,
+  level: Level,
+  softening: Softening,
+  acceptance: Acceptance,
+  crew: Crew,
+): Promise<number> {
+  const { chosen, draws } = someOf(reference.draws, TRIED);
+  const { places, of } = draws;
+  if (of.length === 0) return 0;
+  const walked = shared(places.length * 2);
+  const round = { source, places, order: level.order, softening, acceptance, sums: walked };
+  await crew.run(TASK, 'walkPaths', round, Math.ceil(places.length / PATHS_PER_JOB));
+  const truth = eachDraw(reference.sums, chosen);
+  const found = compare(eachDraw(walked, of), truth, 0);
+  const { phi } = reference.own;
+  const offset = Math.max(0, Math.abs(found.offset + phi.offset) - found.sigma / 2);
+  const sigma = found.sigma * Math.sqrt(of.length / reference.draws.of.length);
+  return Math.hypot(offset, sigma, phi.sigma) / meanPhi(truth);
+}
+
+/** Mean of the first of the two sums a draw. */
+function meanPhi(sums: Float64Array): number {
+  let sum = 0;
+  for (let k = 0; k < sums.length; k += 2) sum += sums[k];
+  return sum / (sums.length / 2);
 }
 
 /** Two sums a body → two a draw. */
@@ -163,6 +245,7 @@ export async function sampleAccelerationError(
 /** Mean and scatter of a − b in the given one of the two sums a body. */
 function compare(a: Float64Array, b: Float64Array, which: 0 | 1): SampledError {
   const n = a.length / 2;
+  if (n === 0) return NO_ERROR;
   let sum = 0;
   let squares = 0;
   for (let k = which; k < a.length; k += 2) {

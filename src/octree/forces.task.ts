@@ -4,6 +4,7 @@ import { sumAtPoint } from './classical.ts';
 import { expansionOf } from './expansion.ts';
 import { estimateDepths, gatherBranch } from './multipoles.ts';
 import { pairKernelsOf, pairSofteningOf } from './pairs.ts';
+import { sumTowards } from './pathWalk.ts';
 import { plummerSquare, splineSupport, type Softening } from './softening.ts';
 import { NODE_BEGIN, NODE_END, TOPOLOGY, type Octree } from './tree.ts';
 import {
@@ -137,6 +138,41 @@ export function walkPoints(round: PointRound, takeJob: TakeJob): number {
     }
   }
   return interactions;
+}
+
+export interface PathRound {
+  readonly source: SourceTree;
+  /** Places in tree order of the bodies that are walked towards. */
+  readonly places: Uint32Array;
+  readonly order: number;
+  readonly softening: Softening;
+  readonly acceptance: Acceptance;
+  /** Two numbers a body: its sums phi and psi. */
+  readonly sums: Float64Array;
+}
+
+/** Bodies a job of {@link walkPaths} handles. */
+export const PATHS_PER_JOB = 8;
+
+/** The sums that a walk of all would give the bodies at some places. */
+export function walkPaths(round: PathRound, takeJob: TakeJob): void {
+  const { source, places, sums, softening } = round;
+  const tools = {
+    expansion: expansionOf(round.order, softening.kernel === 'plummer'),
+    pairs: pairKernelsOf(softening.kernel, false),
+    pairSoftening: pairSofteningOf(softening.kernel, softening.length),
+    acceptance: round.acceptance,
+  };
+  const out = new Float64Array(5);
+  for (let job = takeJob(); job >= 0; job = takeJob()) {
+    const end = Math.min(places.length, (job + 1) * PATHS_PER_JOB);
+    for (let k = job * PATHS_PER_JOB; k < end; k++) {
+      out.fill(0);
+      sumTowards(source, places[k], tools, out);
+      sums[2 * k] = out[0];
+      sums[2 * k + 1] = out[1];
+    }
+  }
 }
 
 export interface DirectSampleRound {

@@ -8,9 +8,13 @@ import { crewOfOne, type Crew, type TaskModule } from '../parallel/crew.ts';
 import { buildOctree, type BodyColumns } from './build.ts';
 import { CompensatedSum } from '../numerics/compensated.ts';
 import {
+  leastError,
+  makeReference,
   sampleAccelerationError,
   sampleError,
+  servesLevel,
   type ErrorSample,
+  type Reference,
   type SampledError,
 } from './errorSample.ts';
 import { expansionOf } from './expansion.ts';
@@ -169,27 +173,36 @@ async function sumByTree(
   await crew.run(TASK, 'estimateBranches', { tree, soft2 }, tree.branchRoots.length);
   for (let slot = tree.topCount - 1; slot >= 0; slot--) leastOfChildren(tree, slot);
   const built = performance.now();
+  const { count } = tree.bodies;
   const field = allocateField(columns.mass.length, options);
   const counts: WalkCounts = { cellInteractions: 0, pairInteractions: 0, coincidentPairs: 0 };
-  let sampled = 0;
-  let errorSeconds = 0;
-  for (let level = first; ;) {
+  const attempt: Attempt = {
+    level: first,
+    source: null,
+    order: 0,
+    reference: null,
+    sampled: 0,
+    seconds: 0,
+  };
+  for (;;) {
+    const ready = await prepareLevel(attempt, tree, options, crew);
+    if (ready === null) return sumAllDirectly(columns, options, crew);
+    const { source, reference, acceptance } = ready;
+    const { level } = attempt;
     options.onStage?.('forces');
-    const source = await gatherMultipoles(tree, level.order, softening, crew);
-    const done = await walkAll(source, level, softening, field, crew);
+    const done = await walkAll(source, level.order, acceptance, softening, field, crew);
     counts.cellInteractions += done.cellInteractions;
     counts.pairInteractions += done.pairInteractions;
     counts.coincidentPairs = done.coincidentPairs;
     const walked = performance.now();
     options.onStage?.('error');
-    const error = await sampleError(source, field, level.order, softening, level.narrowAngle, crew);
+    const error = sampleError(reference, tree, field);
     const accelerationError =
       options.accelerations === true
         ? await sampleAccelerationError(source, field, softening, crew)
         : null;
-    errorSeconds += (performance.now() - walked) / 1000;
-    sampled += error.interactions;
     const total = performance.now();
+    attempt.seconds += (total - walked) / 1000;
     const result = finish(columns, options, field, {
       origin: 'tree',
       error,
@@ -199,29 +212,83 @@ async function sumByTree(
       costs: {
         cellInteractions: counts.cellInteractions,
         pairInteractions: counts.pairInteractions,
-        sampleInteractions: sampled,
+        sampleInteractions: attempt.sampled,
         seconds: {
           tree: (built - start) / 1000,
-          forces: (total - built) / 1000 - errorSeconds,
-          error: errorSeconds,
+          forces: (total - built) / 1000 - attempt.seconds,
+          error: attempt.seconds,
         },
       },
       tree: source,
     });
-    const kept =
-      PROMISED_SIGMAS * result.potentialError <=
-      options.errorWanted * Math.abs(result.potentialEnergy);
-    if (kept || options.level) return result;
+    const { potentialEnergy, potentialError } = result;
     const missed =
-      (PROMISED_SIGMAS * result.potentialError) /
-      (options.errorWanted * Math.abs(result.potentialEnergy));
+      (PROMISED_SIGMAS * potentialError) / (options.errorWanted * Math.abs(potentialEnergy));
+    if (!(missed > 1) || options.level) return result;
     const next = nextLevel(level, missed);
-    const { count } = tree.bodies;
     // Past the last level only direct sums keep the promise; they are worth some times its cost.
     const worth = next ? treeCost(next, count) : DIRECT_PAST_LAST * treeCost(level, count);
     if (worth >= directCost(count)) return sumAllDirectly(columns, options, crew);
     if (!next) return result;
-    level = next;
+    attempt.level = next;
+  }
+}
+
+/** The level in hand, and what is kept from one level to the next. */
+interface Attempt {
+  level: Level;
+  /** The tree with multipoles of this order. */
+  source: SourceTree | null;
+  order: number;
+  reference: Reference | null;
+  /** Interactions of the error sample so far, and its seconds. */
+  sampled: number;
+  seconds: number;
+}
+
+/**
+ * Makes multipoles and error sample for the level in hand, and goes on to finer ones while a trial on
+ * few bodies tells that the level would be walked in vain.
+ * @returns null if direct sums are cheaper than the level that is needed
+ */
+async function prepareLevel(
+  attempt: Attempt,
+  tree: Octree,
+  options: ForceOptions,
+  crew: Crew,
+): Promise<{ source: SourceTree; reference: Reference; acceptance: Acceptance } | null> {
+  const { softening, errorWanted } = options;
+  const { count } = tree.bodies;
+  for (;;) {
+    const { level } = attempt;
+    options.onStage?.('forces');
+    if (attempt.source === null || attempt.order !== level.order) {
+      attempt.source = await gatherMultipoles(tree, level.order, softening, crew);
+      attempt.order = level.order;
+    }
+    const { source } = attempt;
+    const start = performance.now();
+    options.onStage?.('error');
+    let { reference } = attempt;
+    if (reference === null || !servesLevel(reference, level, count)) {
+      reference = await makeReference(source, level, softening, errorWanted, reference, crew);
+      attempt.reference = reference;
+      attempt.sampled += reference.interactions;
+    }
+    const acceptance = acceptanceOf(level, softening);
+    const ready = { source, reference, acceptance };
+    if (options.level) {
+      attempt.seconds += (performance.now() - start) / 1000;
+      return ready;
+    }
+    const least = await leastError(reference, source, level, softening, acceptance, crew);
+    attempt.seconds += (performance.now() - start) / 1000;
+    const missed = (PROMISED_SIGMAS * least) / errorWanted;
+    // Half the way on the ladder: another trial is cheap, and errors shrink faster for some systems.
+    const next = missed > 1 ? nextLevel(level, Math.sqrt(missed)) : null;
+    if (next === null) return ready;
+    if (treeCost(next, count) >= directCost(count)) return null;
+    attempt.level = next;
   }
 }
 
@@ -246,7 +313,8 @@ export async function gatherMultipoles(
 
 async function walkAll(
   source: SourceTree,
-  level: Level,
+  order: number,
+  acceptance: Acceptance,
   softening: Softening,
   field: FieldColumns,
   crew: Crew,
@@ -255,9 +323,9 @@ async function walkAll(
     target: source.tree,
     source,
     same: true,
-    order: level.order,
+    order,
     softening,
-    acceptance: acceptanceOf(level, softening),
+    acceptance,
     field,
   };
   const counts = await crew.run(TASK, 'walkBranches', round, source.tree.branchRoots.length);

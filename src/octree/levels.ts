@@ -2,7 +2,7 @@
 
 /** Number of bodies that {@link Level.reaches} is stated for. */
 const REACHES_AT = 1e5;
-const SHRINKS_UP_TO = 1e6;
+const SHRINKS_UP_TO = 1e7;
 
 /** One setting of the cell–cell walk. */
 export interface Level {
@@ -24,9 +24,12 @@ export interface Level {
 
 export const LEVELS: readonly Level[] = [
   { order: 2, openingAngle: 1, tolerance: 6e-3, narrowAngle: 0.5, cost: 1600, reaches: 1.5e-4 },
-  { order: 3, openingAngle: 0.95, tolerance: 2e-3, narrowAngle: 0.45, cost: 2100, reaches: 2.5e-5 },
-  { order: 4, openingAngle: 0.9, tolerance: 3e-4, narrowAngle: 0.4, cost: 3500, reaches: 6e-6 },
-  { order: 4, openingAngle: 0.85, tolerance: 1e-4, narrowAngle: 0.35, cost: 5000, reaches: 2.5e-6 },
+  { order: 3, openingAngle: 0.95, tolerance: 2e-3, narrowAngle: 0.45, cost: 2100, reaches: 5e-5 },
+  { order: 4, openingAngle: 1, tolerance: 2e-3, narrowAngle: 0.45, cost: 2300, reaches: 2.5e-5 },
+  { order: 4, openingAngle: 0.93, tolerance: 1e-3, narrowAngle: 0.45, cost: 2700, reaches: 9e-6 },
+  { order: 4, openingAngle: 0.9, tolerance: 3e-4, narrowAngle: 0.4, cost: 3500, reaches: 4.5e-6 },
+  { order: 4, openingAngle: 0.85, tolerance: 1e-4, narrowAngle: 0.35, cost: 4500, reaches: 2.5e-6 },
+  { order: 4, openingAngle: 0.8, tolerance: 5e-5, narrowAngle: 0.3, cost: 6000, reaches: 1.5e-6 },
   { order: 5, openingAngle: 0.85, tolerance: 5e-5, narrowAngle: null, cost: 9e3, reaches: 1e-6 },
   { order: 5, openingAngle: 0.8, tolerance: 1e-5, narrowAngle: null, cost: 14e3, reaches: 3e-7 },
   { order: 5, openingAngle: 0.75, tolerance: 3e-6, narrowAngle: null, cost: 22e3, reaches: 1e-7 },
@@ -36,7 +39,7 @@ export const LEVELS: readonly Level[] = [
 
 /** The cheapest level that usually meets an error of U at this number of bodies. */
 export function firstLevel(errorWanted: number, count: number): Level {
-  // Cells shrink as bodies grow in number, and single errors with them; beyond a million no longer.
+  // Cells shrink as bodies grow in number, and single errors with them; beyond ten million no longer.
   const scaled = errorWanted * Math.cbrt(Math.min(count, SHRINKS_UP_TO) / REACHES_AT);
   return LEVELS.find((level) => level.reaches <= scaled) ?? LEVELS[LEVELS.length - 1];
 }

@@ -60,7 +60,7 @@ export function gatherBranch(
 }
 
 /** Cells with at most this many bodies inherit the depth measured for a cell above them. */
-const DEPTH_GROUP = 256;
+const DEPTH_GROUP = 1024;
 const stack = new Int32Array(65536);
 
 /**

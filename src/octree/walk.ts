@@ -48,7 +48,7 @@ export interface Acceptance {
  *
  * Called in the innermost loop with plain numbers, so that it is inlined there.
  */
-function isAccepted(
+export function isAccepted(
   rule: Acceptance,
   targetRadius: number,
   sourceRadius: number,
@@ -83,8 +83,8 @@ function isAccepted(
 const WIDE_TOLERANCE = 30;
 
 /** Sizes below which pairs are summed directly: without asking, and when cells were refused. */
-const DIRECT_AT_ONCE = 24;
-const DIRECT_IF_REFUSED = 96;
+export const DIRECT_AT_ONCE = 24;
+export const DIRECT_IF_REFUSED = 96;
 /** A cell of at most this many bodies is summed directly with itself. */
 const DIRECT_INSIDE = 12;
 

@@ -47,11 +47,15 @@ for (const [name, make] of Object.entries(SETS)) {
   for (let seed = 1; seed <= Number(asked.seeds); seed++) {
     const particles = make(seed);
     for (const softening of SOFTENINGS) {
-      const options = { gravity: 1, softening, errorWanted: 1 };
+      const options = { gravity: 1, softening, errorWanted: 1e-5 };
       const exact = await sumForces(particles, { ...options, exact: true }, crew);
       for (const [k, level] of levels.entries()) {
         const start = performance.now();
-        const tree = await sumForces(particles, { ...options, level }, crew);
+        const tree = await sumForces(
+          particles,
+          { ...options, errorWanted: level.reaches, level },
+          crew,
+        );
         trials[k].push({
           seconds: (performance.now() - start) / 1000,
           potential: compared(tree.potentialEnergy, exact.potentialEnergy, tree.potentialError),

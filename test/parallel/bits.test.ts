@@ -28,8 +28,8 @@ async function recordOf(particles: Particles, options: MeasureOptions, threads: 
 }
 
 const OPTIONS: [string, number[], MeasureOptions][] = [
-  ['unsoftened', [2, 3, 7], { error: 1e-4 }],
-  ['Plummer softening', [3, 7], { error: 1e-3, softening: 0.05 }],
+  ['unsoftened', [2, 3, 7, 16], { error: 1e-4 }],
+  ['Plummer softening', [3, 16], { error: 1e-3, softening: 0.05 }],
   ['a spline', [2], { error: 1e-3, softening: 0.05, softeningKernel: 'spline' }],
 ];
 

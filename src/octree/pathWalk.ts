@@ -1,0 +1,133 @@
+/**
+ * The cell–cell walk followed towards one body alone: what the walk of its whole branch would give it.
+ *
+ * A few hundred bodies tell what error a setting is going to make before it is spent on all.
+ */
+import {
+  GEOMETRY,
+  longerStack,
+  NODE_BEGIN,
+  NODE_CHILD,
+  NODE_CHILDREN,
+  NODE_DEPTH,
+  NODE_END,
+  NODE_MASS,
+  NODE_RADIUS,
+  TOPOLOGY,
+  type Octree,
+} from './tree.ts';
+import {
+  DIRECT_AT_ONCE,
+  DIRECT_IF_REFUSED,
+  isAccepted,
+  type SourceTree,
+  type WalkTools,
+} from './walk.ts';
+
+let stack: Int32Array = new Int32Array(4096);
+let locals = new Float64Array(0);
+
+/**
+ * Adds to `out` the sums of the body at a place of the tree: Σ m/√(r²+ε²) and the Clausius part.
+ * @param source - the tree, with multipoles of the order of `tools`
+ */
+export function sumTowards(
+  source: SourceTree,
+  place: number,
+  tools: WalkTools,
+  out: Float64Array,
+): void {
+  const { tree, multipoles } = source;
+  const { geometry: G, topology: T, bodies } = tree;
+  const { x, y, z, mass } = bodies;
+  const { expansion, pairs, pairSoftening, acceptance } = tools;
+  const { interact, multipoles: momentStride, locals: localStride } = expansion;
+  const { soft2 } = acceptance;
+  const path = pathTo(tree, place);
+  if (locals.length < path.length * localStride) {
+    locals = new Float64Array(path.length * localStride * 2);
+  }
+  locals.fill(0, 0, path.length * localStride);
+  const branchBegin = T[path[0] * TOPOLOGY + NODE_BEGIN];
+  const branchEnd = T[path[0] * TOPOLOGY + NODE_END];
+  const px = x[place];
+  const py = y[place];
+  const pz = z[place];
+  let depth = 2;
+  stack[0] = 0;
+  stack[1] = 0;
+  while (depth > 0) {
+    const s = stack[--depth];
+    const step = stack[--depth];
+    const t = path[step];
+    const gt = t * GEOMETRY;
+    const gs = s * GEOMETRY;
+    const pt = t * TOPOLOGY;
+    const ps = s * TOPOLOGY;
+    const begin = T[ps + NODE_BEGIN];
+    const end = T[ps + NODE_END];
+    const n = (T[pt + NODE_END] - T[pt + NODE_BEGIN]) * (end - begin);
+    const rt = G[gt + NODE_RADIUS];
+    const rs = G[gs + NODE_RADIUS];
+    // Inside the branch cells act on each other both ways at once, or not at all.
+    const both = begin >= branchBegin && end <= branchEnd;
+    const ways = both ? 2 : 1;
+    if (n > ways * DIRECT_AT_ONCE) {
+      const dx = G[gt] - G[gs];
+      const dy = G[gt + 1] - G[gs + 1];
+      const dz = G[gt + 2] - G[gs + 2];
+      const d2 = dx * dx + dy * dy + dz * dz;
+      if (
+        isAccepted(acceptance, rt, rs, d2, G[gs + NODE_MASS], G[gt + NODE_DEPTH]) &&
+        (!both || isAccepted(acceptance, rs, rt, d2, G[gt + NODE_MASS], G[gs + NODE_DEPTH]))
+      ) {
+        interact(G, gt, locals, step * localStride, G, gs, multipoles, s * momentStride, soft2);
+        continue;
+      }
+    }
+    const tLeaf = step === path.length - 1;
+    const sLeaf = T[ps + NODE_CHILDREN] === 0;
+    if (n <= ways * DIRECT_IF_REFUSED || (tLeaf && sLeaf)) {
+      const split = Math.min(end, Math.max(begin, place));
+      const after = place >= begin && place < end ? place + 1 : split;
+      pairs.atPoint(px, py, pz, x, y, z, mass, begin, split, out, pairSoftening);
+      pairs.atPoint(px, py, pz, x, y, z, mass, after, end, out, pairSoftening);
+      continue;
+    }
+    if (depth + 16 > stack.length) stack = longerStack(stack);
+    if (!sLeaf && (tLeaf || rs >= rt)) {
+      // A cell with itself is cut on both sides.
+      const next = s === t ? step + 1 : step;
+      const first = T[ps + NODE_CHILD];
+      for (let child = first + T[ps + NODE_CHILDREN] - 1; child >= first; child--) {
+        stack[depth++] = next;
+        stack[depth++] = child;
+      }
+    } else {
+      stack[depth++] = step + 1;
+      stack[depth++] = s;
+    }
+  }
+  path.forEach((slot, step) => {
+    const g = slot * GEOMETRY;
+    const at = step * localStride;
+    const dx = px - G[g];
+    const dy = py - G[g + 1];
+    const dz = pz - G[g + 2];
+    out[0] += expansion.valueAt(locals, at, dx, dy, dz);
+    out[1] += expansion.clausiusAt(locals, at, dx, dy, dz);
+  });
+}
+
+/** The slots from the root of its branch down to the leaf that holds a body. */
+function pathTo(tree: Octree, place: number): number[] {
+  const { topology: T, branchRoots } = tree;
+  const holds = (slot: number) =>
+    T[slot * TOPOLOGY + NODE_BEGIN] <= place && place < T[slot * TOPOLOGY + NODE_END];
+  const path = [branchRoots[branchRoots.findIndex(holds)]];
+  for (let slot = path[0]; T[slot * TOPOLOGY + NODE_CHILDREN] > 0; path.push(slot)) {
+    slot = T[slot * TOPOLOGY + NODE_CHILD];
+    while (!holds(slot)) slot++;
+  }
+  return path;
+}
