@@ -11,6 +11,7 @@
  */
 import type { MeasureRecord } from './dynamics/record.ts';
 import type { MeasureOptions } from './dynamics/settings.ts';
+import type { LeapfrogOptions } from './models/leapfrog.ts';
 import type { MakeOptions } from './models/make.ts';
 import type { BodyColumns } from './octree/build.ts';
 import type { ForceOptions, Forces } from './octree/forces.ts';
@@ -52,6 +53,7 @@ export type { MeasureOptions } from './dynamics/settings.ts';
 export type { BodyColumns } from './octree/build.ts';
 export type { ForceOptions, Forces } from './octree/forces.ts';
 export type { Softening, SofteningKernel } from './octree/softening.ts';
+export type { LeapfrogOptions } from './models/leapfrog.ts';
 export type { MakeOptions, ModelName } from './models/make.ts';
 export type {
   FloatColumn,
@@ -198,6 +200,19 @@ export async function makeModel(options: MakeOptions): Promise<Particles> {
  */
 export async function makeSnapshot(options: MakeSnapshotOptions, crew: Crew): Promise<Particles> {
   return (await import('./survey/make.ts')).makeSnapshot(options, crew);
+}
+
+/**
+ * Runs bodies by leapfrog with a constant time step, for demonstrations and tests: no individual steps
+ * and no regularisation. Gives `snapshots` snapshots, the first at once.
+ * @throws UsageError `usage.timeStep`
+ */
+export async function* leapfrog(
+  start: Particles,
+  options: LeapfrogOptions,
+  crew: Crew,
+): AsyncGenerator<Particles> {
+  yield* (await import('./models/leapfrog.ts')).leapfrog(start, options, crew);
 }
 
 /**

@@ -1,4 +1,6 @@
-/** `settlemark demo`: two small real measurements, told in plain words. */
+/** `settlemark demo`: two measurements and a small run, told in plain words. */
+import { mkdir } from 'node:fs/promises';
+import { join } from 'node:path';
 import { fileURLToPath } from 'node:url';
 import {
   averageBalance,
@@ -11,7 +13,9 @@ import {
   type Crew,
   type ExitCode,
   type MeasureRecord,
+  writeSnapshot,
 } from '../index.ts';
+import { collapse, EMBER_SNAPSHOTS } from './demoCollapse.ts';
 import { turn, withCrew } from './crew.ts';
 import { duration, figure, short, significant, wholeNumber } from './figure.ts';
 import { wrap } from './layout.ts';
@@ -23,6 +27,8 @@ import { write, type Streams } from './streams.ts';
 export interface DemoOptions {
   readonly quiet?: boolean;
   readonly threads?: number;
+  /** Folder that keeps the snapshots of the run. */
+  readonly out?: string;
 }
 
 /** Real epochs of the Sun and its planets; part of the package. */
@@ -37,6 +43,7 @@ export async function demo(options: DemoOptions, streams: Streams): Promise<Exit
     try {
       await write(streams.stdout, await solarSystem(crew, progress, streams, paint));
       await write(streams.stdout, await shoal(crew, progress, paint));
+      await write(streams.stdout, await drift(crew, progress, options, streams, paint));
     } finally {
       progress.close();
     }
@@ -125,10 +132,54 @@ async function shoal(crew: Crew, progress: Progress, paint: Paint): Promise<stri
       `"Finite N" is how far the ratio of ${wholeNumber(STARS)} stars drawn from a perfect model strays from 1 by chance. U has ${wholeNumber((STARS * (STARS - 1)) / 2)} pairs; ${engine.origin === 'tree' ? `a tree took them together in ${duration(engine.seconds.tree + engine.seconds.forces)}, and ${duration(engine.seconds.error)} went into measuring how good that is` : `all were summed in ${duration(engine.seconds.forces)}`} (${engine.threads} thread${engine.threads === 1 ? '' : 's'}).`,
       '   ',
     ),
+  ];
+  return `${lines.join('\n')}\n\n`;
+}
+
+async function drift(
+  crew: Crew,
+  progress: Progress,
+  { out }: DemoOptions,
+  streams: Streams,
+  paint: Paint,
+): Promise<string> {
+  if (out !== undefined) await makeFolder(out);
+  const text = await collapse(
+    crew,
+    async (particles, done) => {
+      await turn(streams.interrupt);
+      progress.say('the Ember Drift falls together', done / EMBER_SNAPSHOTS);
+      if (out === undefined) return;
+      const number = String(done - 1).padStart(2, '0');
+      await writeSnapshot(join(out, `drift-${number}.arrow`), particles, 'arrow');
+    },
+    paint,
+  );
+  progress.clear();
+  const lines = [
+    text,
     '',
     paint.strong('By hand'),
     `   settlemark make plummer --count ${STARS} --seed ${SEED} --out shoal.arrow`,
     '   settlemark measure shoal.arrow',
+    ...(out === undefined
+      ? ['   settlemark demo --out drift     (keeps the snapshots of the run)']
+      : []),
+    `   settlemark measure ${out ?? 'drift'}`,
   ];
   return `${lines.join('\n')}\n`;
+}
+
+async function makeFolder(path: string): Promise<void> {
+  try {
+    await mkdir(path, { recursive: true });
+  } catch (error) {
+    const reason = error instanceof Error ? error.message : String(error);
+    throw new InputError(
+      'input.cannotWrite',
+      `${path}: ${reason}`,
+      'name a folder that can be made or written to',
+      { cause: error },
+    );
+  }
 }

@@ -60,7 +60,10 @@ export function buildProgram(streams: Streams, done: (code: ExitCode) => void): 
 
   program
     .command('demo')
-    .description('measure the solar system over twelve years, then a sphere of 100,000 stars')
+    .description(
+      'the solar system, a sphere of 100,000 stars, and a run of 2,000 that fall together',
+    )
+    .option('--out <folder>', 'keep the snapshots of the run')
     .option('--quiet', 'no progress on standard error')
     .addOption(threads())
     .action(async (options: DemoOptions) => {
