@@ -44,7 +44,7 @@ roomRules[ROOMS.indexOf('cli')].rules = {
 };
 
 export default tseslint.config(
-  { ignores: ['dist/', 'coverage/', 'node_modules/'] },
+  { ignores: ['dist/', 'coverage/', 'node_modules/', 'test/e2e/consumer/'] },
   js.configs.recommended,
   {
     files: ['**/*.ts'],
