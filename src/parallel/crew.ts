@@ -9,7 +9,7 @@
 import { availableParallelism } from 'node:os';
 import { Worker } from 'node:worker_threads';
 import { InterruptedError } from '../errors.ts';
-import type { Reply, Round } from './protocol.ts';
+import { received, type Reply, type Round } from './protocol.ts';
 
 /** Gives the next job number, or -1 when none is left. */
 export type TakeJob = () => number;
@@ -31,22 +31,32 @@ type TaskNames<M> = {
 type ArgumentOf<F> = F extends (argument: infer A, takeJob: TakeJob) => unknown ? A : never;
 type ResultOf<F> = F extends (...parameters: never[]) => infer R ? Awaited<R> : never;
 
+/** What the caller of a long round may want of it while it runs. */
+export interface RoundWatch {
+  /** Once it is aborted no further job begins, and the round rejects with InterruptedError. */
+  readonly signal?: AbortSignal | undefined;
+  /** Called now and then with the number of jobs done, and when all are. */
+  readonly onProgress?: (done: number) => void;
+}
+
 export interface Crew {
   /** Number of threads that work; 1 means in place, on the calling thread. */
   readonly threads: number;
   /**
    * Runs one round and resolves with each worker's return value, in no meaningful order.
    * @param jobs - number of jobs; job numbers run from 0 to jobs - 1
-   * @throws what the task function threw, as an Error with the worker's stack in `cause`;
-   *   InterruptedError if the crew was closed meanwhile
+   * @throws what the task function threw, of several failures that of the lowest job: errors that
+   *   a user's input can cause as they are, others as an Error with the worker's stack in `cause`;
+   *   InterruptedError if the crew was closed meanwhile or the watch's signal aborted
    */
   run<M, K extends TaskNames<M>>(
     module: TaskModule<M>,
     name: K,
     argument: ArgumentOf<M[K]>,
     jobs: number,
+    watch?: RoundWatch,
   ): Promise<ResultOf<M[K]>[]>;
-  /** Jobs taken so far in the round under way, and its number of jobs: for progress. */
+  /** Jobs taken so far in the first round under way, else in the last one, and its jobs: for progress. */
   progress(): { readonly done: number; readonly jobs: number };
   /** Ends the workers; open rounds reject with InterruptedError. */
   close(): Promise<void>;
@@ -56,6 +66,12 @@ export interface Crew {
 export function defaultThreads(): number {
   return availableParallelism();
 }
+
+/** A round of a few jobs is over sooner than a turn of the event loop is. */
+const TURN_EVERY_MS = 10;
+let turnedAt = -Infinity;
+/** What task modules gave that were loaded in place: asking for one again takes some turns too. */
+const loadedInPlace = new WeakMap<TaskModule<unknown>, unknown>();
 
 /** A crew of one: the calling thread does all jobs in order. */
 export function crewOfOne(): Crew {
@@ -69,15 +85,25 @@ export function crewOfOne(): Crew {
       name: K,
       argument: ArgumentOf<M[K]>,
       jobs: number,
+      watch: RoundWatch = {},
     ) {
-      // Signals and timers get their turn: all else in a round happens on this thread.
-      await new Promise((resolve) => setImmediate(resolve));
+      if (performance.now() - turnedAt > TURN_EVERY_MS) {
+        // Signals and timers get their turn: all else in a round happens on this thread.
+        await new Promise((resolve) => setImmediate(resolve));
+        turnedAt = performance.now();
+      }
       if (closed) throw new InterruptedError();
-      const loaded = await module.load();
+      const loaded = (loadedInPlace.get(module) as M | undefined) ?? (await module.load());
+      loadedInPlace.set(module, loaded);
       const task = loaded[name] as TaskFunction<unknown, ResultOf<M[K]>>;
       const round = { next: 0, jobs };
       latest = round;
-      return [await task(argument, () => (round.next < jobs ? round.next++ : -1))];
+      const takeJob = (): number => {
+        if (round.next > 0) watch.onProgress?.(round.next);
+        if (watch.signal?.aborted === true) throw new InterruptedError();
+        return round.next < jobs ? round.next++ : -1;
+      };
+      return [await task(argument, takeJob)];
     },
     progress: () => ({ done: latest.next, jobs: latest.jobs }),
     close: () => {
@@ -97,8 +123,7 @@ class WorkerCrew implements Crew {
   private readonly workers: Worker[] = [];
   private readonly pending = new Map<number, Pending>();
   private nextRound = 1;
-  private counter = new Int32Array(new SharedArrayBuffer(4));
-  private total = 0;
+  private latest: Pick<Round, 'counter' | 'jobs'> = { counter: new Int32Array(1), jobs: 0 };
   private ended: Error | null = null;
 
   constructor(threads: number) {
@@ -121,25 +146,29 @@ class WorkerCrew implements Crew {
     name: K,
     argument: ArgumentOf<M[K]>,
     jobs: number,
+    watch: RoundWatch = {},
   ): Promise<ResultOf<M[K]>[]> {
     if (this.ended) return Promise.reject(this.ended);
     const roundId = this.nextRound++;
     const counter = new Int32Array(new SharedArrayBuffer(4));
-    this.counter = counter;
-    this.total = jobs;
     const wanted = Math.min(this.threads, Math.max(1, jobs));
     const round: Round = { roundId, module: module.url.href, name, argument, jobs, counter };
-    return new Promise<unknown[]>((resolve, reject) => {
-      this.pending.set(roundId, { results: [], wanted, failure: null, resolve, reject });
+    this.latest = { counter, jobs };
+    const settled = new Promise<unknown[]>((resolve, reject) => {
+      const pending = { round: this.latest, results: [], wanted, failure: null, resolve, reject };
       for (let i = 0; i < wanted; i++) {
+        this.workers[i].postMessage(round); // throws for what cannot be sent, at the first worker
         this.workers[i].ref();
-        this.workers[i].postMessage(round);
       }
+      this.pending.set(roundId, pending);
     }) as Promise<ResultOf<M[K]>[]>;
+    return watch.signal || watch.onProgress ? watched(settled, round, wanted, watch) : settled;
   }
 
   progress(): { done: number; jobs: number } {
-    return { done: Math.min(Atomics.load(this.counter, 0), this.total), jobs: this.total };
+    const [under] = this.pending.values();
+    const { counter, jobs } = under?.round ?? this.latest;
+    return { done: Math.min(Atomics.load(counter, 0), jobs), jobs };
   }
 
   async close(): Promise<void> {
@@ -152,14 +181,15 @@ class WorkerCrew implements Crew {
     const round = this.pending.get(reply.roundId);
     if (!round) return;
     if (reply.kind === 'done') round.results.push(reply.result);
-    else {
-      const error = new Error(reply.message, { cause: reply.stack });
-      round.failure ??= error;
+    else if (round.failure === null || reply.job < round.failure.job) {
+      const { job, message, stack, expected } = reply;
+      const error = expected ? received(expected) : new Error(message, { cause: stack });
+      round.failure = { job, error };
     }
     if (--round.wanted > 0) return;
     this.pending.delete(reply.roundId);
     if (this.pending.size === 0) for (const worker of this.workers) worker.unref();
-    if (round.failure) round.reject(round.failure);
+    if (round.failure) round.reject(round.failure.error);
     else round.resolve(round.results);
   }
 
@@ -172,9 +202,45 @@ class WorkerCrew implements Crew {
 }
 
 interface Pending {
+  readonly round: Pick<Round, 'counter' | 'jobs'>;
   readonly results: unknown[];
   wanted: number;
-  failure: Error | null;
+  failure: { readonly job: number; readonly error: Error } | null;
   readonly resolve: (results: unknown[]) => void;
   readonly reject: (reason: Error) => void;
+}
+
+const PROGRESS_EVERY_MS = 50;
+
+/** The same round, with its progress told and an end to it when the signal says so. */
+async function watched<T>(
+  settled: Promise<T>,
+  { counter, jobs }: Round,
+  workers: number,
+  { signal, onProgress }: RoundWatch,
+): Promise<T> {
+  const failures: unknown[] = [];
+  const stop = (): void => void Atomics.store(counter, 0, jobs);
+  const tell = (): void => {
+    try {
+      // Each worker is still at the job that it took last.
+      onProgress?.(Math.max(0, Math.min(Atomics.load(counter, 0), jobs) - workers));
+    } catch (error) {
+      failures.push(error);
+      stop();
+    }
+  };
+  const timer = onProgress ? setInterval(tell, PROGRESS_EVERY_MS) : undefined;
+  signal?.addEventListener('abort', stop, { once: true });
+  if (signal?.aborted === true) stop();
+  try {
+    const results = await settled;
+    if (signal?.aborted === true) throw new InterruptedError();
+    if (failures.length > 0) throw failures[0];
+    onProgress?.(jobs);
+    return results;
+  } finally {
+    clearInterval(timer);
+    signal?.removeEventListener('abort', stop);
+  }
 }

@@ -1,18 +1,21 @@
 /** Entry of a worker thread: unpacks a round, calls the task function, replies. */
 import { parentPort } from 'node:worker_threads';
 import type { TaskFunction } from './crew.ts';
-import type { Reply, Round } from './protocol.ts';
+import { sendable, type Reply, type Round } from './protocol.ts';
 
 const port = parentPort;
 if (!port) throw new Error('parallel/worker is started by a crew, not by hand');
 const loaded = new Map<string, Record<string, TaskFunction<unknown, unknown>>>();
 
+let busy: Promise<void> = Promise.resolve();
 port.on('message', (round: Round) => {
-  void work(round).then((reply) => port.postMessage(reply));
+  // One round after the other: a task that waits for something must not meet the next one.
+  busy = busy.then(async () => port.postMessage(await work(round)));
 });
 
 async function work(round: Round): Promise<Reply> {
   const { roundId, counter, jobs } = round;
+  let latest = -1;
   try {
     let module = loaded.get(round.module);
     if (!module) {
@@ -21,7 +24,9 @@ async function work(round: Round): Promise<Reply> {
     }
     const result = await module[round.name](round.argument, () => {
       const job = Atomics.add(counter, 0, 1);
-      return job < jobs ? job : -1;
+      if (job >= jobs) return -1;
+      latest = job;
+      return job;
     });
     return { kind: 'done', roundId, result };
   } catch (error) {
@@ -29,8 +34,10 @@ async function work(round: Round): Promise<Reply> {
     return {
       kind: 'failed',
       roundId,
+      job: latest,
       message: error instanceof Error ? error.message : String(error),
       stack: error instanceof Error ? error.stack : undefined,
+      expected: sendable(error),
     };
   }
 }
