@@ -1,34 +1,91 @@
 /** Opening files for reading: each way to fail has its own code, and a file that changes meanwhile is noticed. */
-import { constants } from 'node:fs';
-import { open, type FileHandle } from 'node:fs/promises';
+import * as fs from 'node:fs';
+import { promisify } from 'node:util';
+import { isMainThread } from 'node:worker_threads';
 import { InputError, SettlemarkError } from '../errors.ts';
 
-const NONBLOCKING = constants.O_RDONLY | (constants.O_NONBLOCK ?? 0);
+const NONBLOCKING = fs.constants.O_RDONLY | (fs.constants.O_NONBLOCK ?? 0);
 
-/** An open file whose length and time of change were noted when it was opened. */
+/** Files up to this are read in one call when they are opened. */
+const WHOLE_BYTES = 2 ** 20;
+/** No call may ask for 2 GiB. */
+const BYTES_A_CALL = 2 ** 30;
+
+/** An open file whose length and time of change were noted when it was opened. It can be sent to a worker. */
 export interface OpenFile {
   readonly path: string;
-  readonly handle: FileHandle;
+  readonly descriptor: number;
   /** Length in bytes, above 0. */
   readonly size: number;
   readonly changedNs: bigint;
+  /** The bytes of a small file, as many as there were; null for others. */
+  readonly whole: Uint8Array | null;
+}
+
+const open = promisify(fs.open);
+const stat = promisify(fs.stat) as (path: string, o: { bigint: true }) => Promise<fs.BigIntStats>;
+const readdir = promisify(fs.readdir) as (path: string) => Promise<string[]>;
+const readFile = promisify(fs.readFile) as (fd: number, o: 'utf8') => Promise<string>;
+const fstat = promisify(fs.fstat) as (fd: number, o: { bigint: true }) => Promise<fs.BigIntStats>;
+const close = promisify(fs.close);
+const read = (fd: number, into: Uint8Array, offset: number, length: number, position: number) =>
+  new Promise<number>((resolve, reject) => {
+    fs.read(fd, into, offset, length, position, (error, bytes) =>
+      error ? reject(error) : resolve(bytes),
+    );
+  });
+
+/**
+ * The main thread must hear the user while a disk or network is slow, so that helpers read for it.
+ * A worker reads by itself, which takes a tenth of the time where the file is in memory.
+ */
+export const disk = isMainThread
+  ? { open, stat, fstat, read, readdir, readFile, close }
+  : {
+      open: fs.openSync,
+      stat: fs.statSync as (path: string, o: { bigint: true }) => fs.BigIntStats,
+      fstat: fs.fstatSync as (fd: number, o: { bigint: true }) => fs.BigIntStats,
+      read: fs.readSync as (...parameters: Parameters<typeof read>) => number,
+      readdir: fs.readdirSync as (path: string) => string[],
+      readFile: fs.readFileSync as (fd: number, o: 'utf8') => string,
+      close: fs.closeSync,
+    };
+
+/** Length of a regular file; null for anything else and for what cannot be looked at. */
+export async function fileBytes(path: string): Promise<number | null> {
+  try {
+    const status = await disk.stat(path, { bigint: true });
+    return status.isFile() ? Number(status.size) : null;
+  } catch {
+    return null;
+  }
+}
+
+/** Runs `work` on an open file and closes it; errors as {@link openInput}. */
+export async function withInput<T>(path: string, work: (file: OpenFile) => Promise<T>): Promise<T> {
+  const file = await openInput(path);
+  try {
+    return await work(file);
+  } finally {
+    await closeInput(file);
+  }
 }
 
 /**
- * Opens a regular file that is not empty. The caller closes `handle`.
+ * Opens a regular file that is not empty. The caller closes it with {@link closeInput}.
  * @throws InputError `input.notFound`, `input.noPermission`, `input.isDirectory`,
  * `input.notAFile` (pipe, device), `input.empty` (0 bytes), `input.unreadable` (anything else)
  */
 export async function openInput(path: string): Promise<OpenFile> {
-  let handle: FileHandle;
+  let descriptor: number;
   try {
     // Without O_NONBLOCK, opening a named pipe that nobody writes to would wait for ever.
-    handle = await open(path, NONBLOCKING);
+    descriptor = await disk.open(path, NONBLOCKING);
   } catch (error) {
     throw asReadError(path, error);
   }
   try {
-    const status = await handle.stat({ bigint: true });
+    const status = await disk.fstat(descriptor, { bigint: true });
     if (status.isDirectory()) throw directory(path);
     if (!status.isFile()) {
       throw new InputError(
@@ -44,11 +101,34 @@ export async function openInput(path: string): Promise<OpenFile> {
         'Look whether the simulation ended while writing it, or the disk was full.',
       );
     }
-    return { path, handle, size: Number(status.size), changedNs: status.mtimeNs };
+    const size = Number(status.size);
+    const whole = size <= WHOLE_BYTES ? await readWhole(descriptor, size) : null;
+    return { path, descriptor, size, changedNs: status.mtimeNs, whole };
   } catch (error) {
-    await handle.close();
+    await disk.close(descriptor);
     throw asReadError(path, error);
   }
+}
+
+/** Closes what {@link openInput} opened; its bytes may not be used any more. */
+export async function closeInput(file: OpenFile): Promise<void> {
+  if (file.whole !== null) spare = new Uint8Array(file.whole.buffer);
+  await disk.close(file.descriptor);
+}
+
+/** Room for the next small file: new memory costs more than the reading. */
+let spare: Uint8Array | null = null;
+
+async function readWhole(descriptor: number, size: number): Promise<Uint8Array> {
+  const room = spare !== null && spare.length >= size ? spare : new Uint8Array(size);
+  spare = null;
+  let done = 0;
+  while (done < size) {
+    const bytes = await disk.read(descriptor, room, done, size - done, done);
+    if (bytes === 0) break;
+    done += bytes;
+  }
+  return room.subarray(0, done);
 }
 
 /**
@@ -56,7 +136,7 @@ export async function openInput(path: string): Promise<OpenFile> {
  * @throws InputError `input.changed`
  */
 export async function assertUnchanged(file: OpenFile): Promise<void> {
-  const status = await file.handle.stat({ bigint: true });
+  const status = await disk.fstat(file.descriptor, { bigint: true });
   if (Number(status.size) === file.size && status.mtimeNs === file.changedNs) return;
   throw new InputError(
     'input.changed',
@@ -76,22 +156,32 @@ export async function readExactly(
   length: number,
   position: number,
 ): Promise<void> {
+  const { whole } = file;
+  if (whole !== null) {
+    if (position + length > whole.length) throw shorter(file, whole.length);
+    target.set(whole.subarray(position, position + length), targetOffset);
+    return;
+  }
   let done = 0;
   while (done < length) {
-    const { bytesRead } = await file.handle
-      .read(target, targetOffset + done, length - done, position + done)
-      .catch((error: unknown) => {
-        throw asReadError(file.path, error);
-      });
-    if (bytesRead === 0) {
-      throw new InputError(
-        'input.changed',
-        `${file.path} became shorter while it was read: it had ${file.size} bytes and now ends at byte ${position + done}`,
-        'Read it when the simulation has finished writing it.',
-      );
+    let bytes: number;
+    try {
+      const [at, wanted] = [targetOffset + done, Math.min(length - done, BYTES_A_CALL)];
+      bytes = await disk.read(file.descriptor, target, at, wanted, position + done);
+    } catch (error) {
+      throw asReadError(file.path, error);
     }
-    done += bytesRead;
+    if (bytes === 0) throw shorter(file, position + done);
+    done += bytes;
   }
+}
+
+function shorter(file: OpenFile, end: number): InputError {
+  return new InputError(
+    'input.changed',
+    `${file.path} became shorter while it was read: it had ${file.size} bytes and now ends at byte ${end}`,
+    'Read it when the simulation has finished writing it.',
+  );
 }
 
 /** File-system errors as InputError with the code of their cause; all others unchanged. */

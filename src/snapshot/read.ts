@@ -1,61 +1,75 @@
 /** The way in: any file to particles, whatever its format. */
 import { UsageError } from '../errors.ts';
-import { openInput, readExactly } from './files.ts';
+import type { Crew } from '../parallel/crew.ts';
+import { looksLikeArrow } from './arrow/magic.ts';
+import type * as ArrowReader from './arrow/read.ts';
+import { readExactly, withInput, type OpenFile } from './files.ts';
 import type { Particles } from './particles.ts';
+import type * as RawReader from './raw/read.ts';
 import type { ReadOptions, SnapshotDescription } from './reading.ts';
 import { screenParticles } from './screen.ts';
 
 /**
  * Reads a snapshot, raw or Arrow, and screens its values.
  * @param path - a file, or `-` for an Arrow stream on standard input
+ * @param crew - workers that load a large file together; without it the calling thread does
  * @throws InputError of the reader or of `screenParticles`; UsageError `usage.standardInput`;
  * InterruptedError
  */
-export async function readSnapshot(path: string, options: ReadOptions = {}): Promise<Particles> {
-  const particles = (await isArrow(path, options))
-    ? await (await import('./arrow/read.ts')).readArrow(path, options)
-    : await (await import('./raw/read.ts')).readRaw(path, options);
+export async function readSnapshot(
+  path: string,
+  options: ReadOptions = {},
+  crew?: Crew,
+): Promise<Particles> {
+  const particles = isStandardInput(path, options)
+    ? await (await arrow()).readArrow(path, options)
+    : await withInput(path, async (file) =>
+        (await isArrow(file, options))
+          ? (await arrow()).readArrowFile(file, options, crew)
+          : (await raw()).readRawFile(file, options, crew),
+      );
   screenParticles(particles);
   return particles;
 }
 
-/** Says what is in a snapshot and reads no more of it than that takes; errors as {@link readSnapshot}. */
+/**
+ * Says what is in a snapshot and reads no more of it than that takes; errors as {@link readSnapshot}.
+ * @param values - whether values are looked at, which means to decompress them in a compressed file
+ */
 export async function describeSnapshot(
   path: string,
   options: ReadOptions = {},
+  values: 'values' | 'no values' = 'values',
 ): Promise<SnapshotDescription> {
-  return (await isArrow(path, options))
-    ? await (await import('./arrow/read.ts')).describeArrow(path, options)
-    : await (await import('./raw/describe.ts')).describeRaw(path, options);
+  if (isStandardInput(path, options) || (await withInput(path, (file) => isArrow(file, options))))
+    return (await arrow()).describeArrow(path, options, values);
+  return (await import('./raw/describe.ts')).describeRaw(path, options);
 }
+
+// Loaded when first needed, and asked for once: each import costs a small snapshot some turns.
+let arrowReader: Promise<typeof ArrowReader> | undefined;
+let rawReader: Promise<typeof RawReader> | undefined;
+const arrow = () => (arrowReader ??= import('./arrow/read.ts'));
+const raw = () => (rawReader ??= import('./raw/read.ts'));
 
 /** Bytes that tell an Arrow file or stream from others. */
 const HEAD_BYTES = 64;
 
-async function isArrow(path: string, options: ReadOptions): Promise<boolean> {
-  if (path === '-') {
-    if (options.layout === undefined) return true;
-    throw new UsageError(
-      'usage.standardInput',
-      `--layout ${options.layout} with "-": standard input is read as an Arrow stream, which needs no layout`,
-      'Write the raw data to a file, or leave --layout out.',
-    );
-  }
-  const head = await readHead(path);
-  const { looksLikeArrow } = await import('./arrow/magic.ts');
+function isStandardInput(path: string, options: ReadOptions): boolean {
+  if (path !== '-') return false;
+  if (options.layout === undefined) return true;
+  throw new UsageError(
+    'usage.standardInput',
+    `--layout ${options.layout} with "-": standard input is read as an Arrow stream, which needs no layout`,
+    'Write the raw data to a file, or leave --layout out.',
+  );
+}
+
+async function isArrow(file: OpenFile, options: ReadOptions): Promise<boolean> {
+  const head = new Uint8Array(Math.min(HEAD_BYTES, file.size));
+  await readExactly(file, head, 0, head.length, 0);
   // With a layout named, a name's ending or four bytes 0xff are no evidence; the magic string is.
   if (options.layout !== undefined)
     return Buffer.from(head).toString('latin1').startsWith('ARROW1');
-  return looksLikeArrow(head, path) !== null;
-}
-
-async function readHead(path: string): Promise<Uint8Array> {
-  const file = await openInput(path);
-  try {
-    const head = new Uint8Array(Math.min(HEAD_BYTES, file.size));
-    await readExactly(file, head, 0, head.length, 0);
-    return head;
-  } finally {
-    await file.handle.close();
-  }
+  return looksLikeArrow(head, file.path) !== null;
 }

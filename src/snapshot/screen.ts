@@ -38,6 +38,7 @@ export function screenSample(particles: Particles, bodyOf: (index: number) => nu
   const { file } = particles.origin;
   const coordinates = [x, y, z, vx, vy, vz];
   const named = usedColumns(particles);
+  if (isSound(named) && findMisreading(coordinates, false) === null) return;
   const extremes = named.map(([, column]) => extremesOf(column));
   const misread = (suspicious: boolean): InputError | null => {
     const cause = findMisreading(coordinates, suspicious);
@@ -81,6 +82,49 @@ export function screenSample(particles: Particles, bodyOf: (index: number) => nu
       'Check the offsets of the positions in the layout, or the names in --columns.',
     );
   }
+}
+
+/** A quick look that finds nothing wrong, as nearly always. What it finds is looked at again, in full. */
+function isSound(named: readonly [name: string, column: FloatColumn][]): boolean {
+  const areWithin = named.every(([name, column]) => {
+    const smallest = name === 'mass' || name === 'softening' ? 0 : -LARGEST;
+    return column instanceof Float64Array
+      ? doublesLie(column, smallest, LARGEST)
+      : singlesLie(column, smallest, LARGEST);
+  });
+  if (!areWithin) return false;
+  const [[, mass], ...positions] = named.slice(0, 4);
+  const isPoint = positions.every(([, column]) => column.every((value) => value === column[0]));
+  return mass.some((value) => value > 0) && (mass.length === 1 || !isPoint);
+}
+
+/** Whether all numbers lie between two others; NaN does not. Four at a time take half the time. */
+function doublesLie(column: Float64Array, low: number, high: number): boolean {
+  let i = 0;
+  for (const last = column.length - 3; i < last; i += 4) {
+    const a = column[i];
+    const b = column[i + 1];
+    const c = column[i + 2];
+    const d = column[i + 3];
+    if (!(a >= low && b >= low && c >= low && d >= low)) return false;
+    if (!(a <= high && b <= high && c <= high && d <= high)) return false;
+  }
+  for (; i < column.length; i++) if (!(column[i] >= low && column[i] <= high)) return false;
+  return true;
+}
+
+function singlesLie(column: Float32Array, low: number, high: number): boolean {
+  let i = 0;
+  for (const last = column.length - 3; i < last; i += 4) {
+    const a = column[i];
+    const b = column[i + 1];
+    const c = column[i + 2];
+    const d = column[i + 3];
+    if (!(a >= low && b >= low && c >= low && d >= low)) return false;
+    if (!(a <= high && b <= high && c <= high && d <= high)) return false;
+  }
+  for (; i < column.length; i++) if (!(column[i] >= low && column[i] <= high)) return false;
+  return true;
 }
 
 function usedColumns(particles: Particles): [name: string, column: FloatColumn][] {

@@ -1,5 +1,6 @@
 /** From messages to the list of what is to be read: which bytes of which body fill which rows. */
 import { InputError } from '../../errors.ts';
+import { readBody, type Body } from './body.ts';
 import {
   codecOf,
   decompress,
@@ -7,12 +8,14 @@ import {
   paddedLimit,
   promisedLength,
   type Codec,
+  type CodecName,
 } from './codecs.ts';
+import { damaged } from './damage.ts';
 import { assertComponentCount, ComponentNames, decodeTexts, offsetBytes } from './dictionary.ts';
-import type { Body, FramedMessage } from './framing.ts';
+import type { FramedMessage } from './framing.ts';
+import { BYTES_OF, type PlannedColumn } from './kinds.ts';
 import { layoutBatch, type Region } from './layout.ts';
-import { damaged, type ArrowMessage, type RecordBatch, type Schema } from './messages.ts';
-import { BYTES_OF, type PlannedColumn } from './plan.ts';
+import type { ArrowMessage, RecordBatch, Schema } from './messages.ts';
 
 /** One record batch, checked: all that is needed to load its planned columns. */
 export interface PlannedBatch {
@@ -20,7 +23,7 @@ export interface PlannedBatch {
   readonly body: Body;
   readonly bodyLength: number;
   readonly rows: number;
-  readonly codec: Codec | null;
+  readonly codec: CodecName | null;
   /** Of the values of each planned column, in the order of the plan. */
   readonly regions: readonly Region[];
   /** Missing values of each planned column. */
@@ -108,7 +111,16 @@ export class BatchPlanner {
     const componentOf = needsComponents ? this.components.current : null;
     if (needsComponents && componentOf === null && rows > 0)
       throw damaged(this.file, place, 'the dictionary of its component column is missing');
-    return { place, body, bodyLength, rows, codec, regions, nulls, componentOf };
+    return {
+      place,
+      body,
+      bodyLength,
+      rows,
+      codec: codec?.name ?? null,
+      regions,
+      nulls,
+      componentOf,
+    };
   }
 
   private async takeDictionary(
@@ -145,7 +157,7 @@ export class BatchPlanner {
     place: string,
   ): Promise<Uint8Array> {
     const bytes = new Uint8Array(region.length);
-    await body.read(bytes, region.offset);
+    await readBody(body, bytes, region.offset);
     if (codec && bytes.length > 0) {
       // Texts have no length that follows from the schema: their own promise is all there is.
       const promised = needed || Math.max(0, unboundedPromise(bytes));
@@ -176,7 +188,7 @@ export class BatchPlanner {
     if (codec && length > 0) {
       if (length < LENGTH_PREFIX) throw damaged(this.file, place, `a buffer of ${length} bytes`);
       const prefix = new Uint8Array(LENGTH_PREFIX);
-      await body.read(prefix, offset);
+      await readBody(body, prefix, offset);
       promisedLength(prefix, codec, needed, this.file, place, length - LENGTH_PREFIX);
     } else if (length < needed || length > paddedLimit(needed)) {
       throw damaged(this.file, place, `a buffer of ${length} bytes where ${needed} are needed`);

@@ -2,13 +2,15 @@
 import * as zlib from 'node:zlib';
 import { CompressionType } from 'apache-arrow/fb/compression-type';
 import { InputError } from '../../errors.ts';
-import { damaged } from './messages.ts';
+import { damaged } from './damage.ts';
 
 /** Bytes before the compressed ones: the length when decompressed, or −1 for "stored as it is". */
 export const LENGTH_PREFIX = 8;
 
+export type CodecName = 'LZ4' | 'Zstandard';
+
 export interface Codec {
-  readonly name: 'LZ4' | 'Zstandard';
+  readonly name: CodecName;
   /** No valid input of n bytes gives more than n times this, so longer promises are damage. */
   readonly mostExpansion: number;
   readonly decode: (bytes: Uint8Array) => Uint8Array;
@@ -17,31 +19,33 @@ export interface Codec {
 }
 
 type Decode = (bytes: Uint8Array) => Uint8Array;
-const loaded = new Map<number, Promise<Codec>>();
+const LOADERS = { LZ4: loadLz4, Zstandard: loadZstandard };
+const loaded = new Map<CodecName, Promise<Codec>>();
+
+/** The codec of a name, loaded when first asked for. */
+export function codecNamed(name: CodecName): Promise<Codec> {
+  let codec = loaded.get(name);
+  if (!codec) {
+    codec = LOADERS[name]();
+    loaded.set(name, codec);
+  }
+  return codec;
+}
 
 /**
- * The codec of a batch, loaded when first asked for.
+ * The codec of a batch.
  * @throws InputError `input.codec`
  */
 export async function codecOf(type: number, method: number, file: string): Promise<Codec> {
   if (method === 0) {
-    if (type === (CompressionType.LZ4_FRAME as number)) return load(type, loadLz4);
-    if (type === (CompressionType.ZSTD as number)) return load(type, loadZstandard);
+    if (type === (CompressionType.LZ4_FRAME as number)) return codecNamed('LZ4');
+    if (type === (CompressionType.ZSTD as number)) return codecNamed('Zstandard');
   }
   throw new InputError(
     'input.codec',
     `${file}: compressed with codec ${type}, method ${method}; expected LZ4 frames or Zstandard, buffer by buffer`,
     'Write the file uncompressed, or with LZ4 or Zstandard.',
   );
-}
-
-function load(type: number, loader: () => Promise<Codec>): Promise<Codec> {
-  let codec = loaded.get(type);
-  if (!codec) {
-    codec = loader();
-    loaded.set(type, codec);
-  }
-  return codec;
 }
 
 async function loadLz4(): Promise<Codec> {

@@ -1,6 +1,6 @@
 /** Bytes of a buffer → numbers of our columns, a block of rows at a time. */
 import { takeBuffer } from '../../numerics/reuse.ts';
-import { BYTES_OF, type NumberKind, type PlannedColumn, type StoredKind } from './plan.ts';
+import { BYTES_OF, type NumberKind, type PlannedColumn, type StoredKind } from './kinds.ts';
 
 export type StoredColumn =
   | Float64Array

@@ -1,14 +1,15 @@
 /** What is in an Arrow file, from its metadata and a few thousand rows at both ends. */
 import { unknownColumn } from '../columns.ts';
-import type { OpenFile } from '../files.ts';
+import { withInput, type OpenFile } from '../files.ts';
 import type { Remark } from '../particles.ts';
 import type { DescribedColumn, FieldName, ReadOptions, SnapshotDescription } from '../reading.ts';
 import { BatchPlanner, type PlannedBatch } from './batches.ts';
 import type { StoredColumn } from './convert.ts';
 import { readFacts } from './facts.ts';
-import { allocateColumns, loadBatch, Watch } from './load.ts';
+import { BYTES_OF, type PlannedColumn } from './kinds.ts';
+import { allocateColumns, loadBatches } from './load.ts';
 import { typeName, type Schema } from './messages.ts';
-import { BYTES_OF, nameColumns, planField, type PlannedColumn } from './plan.ts';
+import { nameColumns, planField } from './plan.ts';
 import { countRows, planFile, sequentialMessages, withArrowFile } from './scan.ts';
 import { fromStandardInput, StreamCursor } from './sequential.ts';
 
@@ -19,21 +20,26 @@ const SAMPLE_ROWS = 4096;
  * Describes an Arrow file or stream: schema, rows and metadata of all batches, and the range of the
  * values in the first and the last 4096 rows (of a compressed file: in the first and last batch).
  * `-` is read to its end, since only then its rows are known.
+ * @param values - without them no column is read
  * @throws InputError as `readArrow`, except that columns that are missing, of another type or with
  * missing values are described, not refused
  */
 export async function describeArrow(
   path: string,
   options: ReadOptions = {},
+  values: 'values' | 'no values' = 'values',
 ): Promise<SnapshotDescription> {
   if (path === '-') return describeArrowStream(fromStandardInput(), path, options);
-  return withArrowFile(path, (file, isFile) => describeFile(file, isFile, options));
+  return withInput(path, (file) =>
+    withArrowFile(file, (isFile) => describeFile(file, isFile, options, values)),
+  );
 }
 
 async function describeFile(
   file: OpenFile,
   isFile: boolean,
   options: ReadOptions,
+  values: 'values' | 'no values',
 ): Promise<SnapshotDescription> {
   const planner = describingPlanner(file.path, options);
   const batches = await planFile(file, isFile, planner, options);
@@ -41,8 +47,11 @@ async function describeFile(
   const ranges = new Ranges(planner);
   const [first] = filled;
   const last = filled.at(-1);
-  if (first) await ranges.look(first, 'begin', options);
-  if (last) await ranges.look(last, 'end', options);
+  if (values === 'values') {
+    if (first) await ranges.look(first, 'begin', options);
+    // All of a compressed batch has been looked at.
+    if (last && (last !== first || !last.codec)) await ranges.look(last, 'end', options);
+  }
   const format = isFile ? 'arrow-file' : 'arrow-stream';
   return describe(planner, batches, ranges, format, file.size);
 }
@@ -105,11 +114,11 @@ class Ranges {
     const chosen = sound.map((i) => plan[i]);
     const regions = sound.map((i) => batch.regions[i]);
     const part = batch.codec ? { ...batch, regions } : samplePart(batch, chosen, regions, side);
-    const watch = new Watch(0, options.signal ? { signal: options.signal } : {});
+    const { signal } = options;
     for (let i = 0; i < chosen.length; i++) {
       const own = { ...part, regions: [part.regions[i]] };
       const columns = allocateColumns([chosen[i]], part.rows, file);
-      await loadBatch(own, [chosen[i]], columns, 0, file, watch);
+      await loadBatches([own], [chosen[i]], columns, file, { signal });
       if (chosen[i].dictionaryId !== null) continue;
       for (const values of columns.values()) this.add(chosen[i].fieldIndex, values);
     }

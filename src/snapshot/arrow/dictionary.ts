@@ -1,7 +1,7 @@
 /** Dictionaries of component names, and the one list of names that all batches share. */
 import { DataType } from 'apache-arrow/type';
 import { InputError } from '../../errors.ts';
-import { damaged } from './messages.ts';
+import { damaged } from './damage.ts';
 
 const MOST_COMPONENTS = 65536;
 

@@ -1,14 +1,9 @@
 /** Where the messages of an Arrow file or stream begin and end, checked against the bytes there are. */
 import { InputError, InterruptedError } from '../../errors.ts';
 import { readExactly, type OpenFile } from '../files.ts';
-import {
-  cut,
-  damaged,
-  decodeFooter,
-  decodeMessage,
-  typeName,
-  type ArrowMessage,
-} from './messages.ts';
+import type { Body } from './body.ts';
+import { cut, damaged } from './damage.ts';
+import { decodeFooter, decodeMessage, typeName, type ArrowMessage } from './messages.ts';
 import type { Block, Schema } from './messages.ts';
 
 /** `ARROW1` and two bytes of padding. */
@@ -20,12 +15,6 @@ const CONTINUATION = 0xffffffff;
 const MOST_METADATA_BYTES = 2 ** 28;
 /** Writers align messages to 8 or 64 bytes; a lost message would leave a wider gap. */
 const WIDEST_PADDING = 64;
-
-/** The body of one message. */
-export interface Body {
-  /** Fills `target` with the bytes from `offset` of the body on; the caller keeps inside. */
-  read(target: Uint8Array, offset: number): Promise<void>;
-}
 
 /** Bytes taken in order. */
 export interface Cursor {
@@ -67,25 +56,10 @@ export class FileCursor implements Cursor {
 
   takeBody(count: number): Promise<Body | null> {
     if (count > this.end - this.position) return Promise.resolve(null);
-    const body = fileBody(this.file, this.position);
+    const body = { file: this.file, begin: this.position };
     this.position += count;
     return Promise.resolve(body);
   }
-}
-
-export function fileBody(file: OpenFile, begin: number): Body {
-  return {
-    read: (target, offset) => readExactly(file, target, 0, target.length, begin + offset),
-  };
-}
-
-export function memoryBody(bytes: Uint8Array): Body {
-  return {
-    read: (target, offset) => {
-      target.set(bytes.subarray(offset, offset + target.length));
-      return Promise.resolve();
-    },
-  };
 }
 
 /**
@@ -243,5 +217,5 @@ export async function readBlock(
       place,
       `a ${message.kind} of ${message.bodyLength} bytes where the footer says a ${block.kind} of ${bodyLength}`,
     );
-  return { message, body: fileBody(file, offset + length), place };
+  return { message, body: { file, begin: offset + length }, place };
 }

@@ -2,7 +2,8 @@
 import { Type, UnionMode, MetadataVersion } from 'apache-arrow/enum';
 import type { Field } from 'apache-arrow/schema';
 import { DataType } from 'apache-arrow/type';
-import { damaged, type RecordBatch } from './messages.ts';
+import { damaged } from './damage.ts';
+import type { RecordBatch } from './messages.ts';
 
 /** Validity and values, except for these. */
 const BUFFERS_OF: Readonly<Partial<Record<Type, number>>> = {

@@ -1,22 +1,32 @@
-/** Loads planned batches into columns; in memory beside them is one buffer of one column at most. */
+/** Loads planned batches into columns: cut into pieces, loaded by one thread or by all of a crew. */
 import { InputError } from '../../errors.ts';
-import { decompress } from './codecs.ts';
-import { allocateStored, convertRows, isInPlace, type StoredColumn } from './convert.ts';
+import { crewOfOne, type TaskModule } from '../../parallel/crew.ts';
+import { bytesOf, crewFor, PIECE_BYTES, watchOf, type LoadOptions } from '../pieces.ts';
+import type { FieldName } from '../reading.ts';
 import type { PlannedBatch } from './batches.ts';
-import { assertNotAborted, memoryBody } from './framing.ts';
-import type { Region } from './layout.ts';
-import { damaged } from './messages.ts';
-import { BYTES_OF, type PlannedColumn } from './plan.ts';
-import type { FieldName, ReadOptions } from '../reading.ts';
+import { allocateStored, type StoredColumn } from './convert.ts';
+import { BYTES_OF, type PlannedColumn } from './kinds.ts';
+import type * as LoadTask from './load.task.ts';
+
+const TASK: TaskModule<typeof LoadTask> = {
+  url: new URL('./load.task.js', import.meta.url),
+  load: () => import('./load.task.ts'),
+};
 
 export type ColumnSet = ReadonlyMap<FieldName, StoredColumn>;
 
-/** Bytes read at a time; two at once, since first use of new memory costs more than reading. */
-const CHUNK_BYTES = 4 * 2 ** 20;
-const LANES = 2;
-/** Bodies up to this are read whole: one call instead of one a column. */
+/** Bodies up to this are read whole. */
 const SMALL_BODY_BYTES = 2 ** 20;
-const PROGRESS_MS = 50;
+
+/** Rows `row` … of one column of a batch, or of all its columns. */
+export interface Piece {
+  readonly batch: number;
+  readonly column: number | null;
+  readonly row: number;
+  readonly rows: number;
+  /** As they lie in the file. */
+  readonly bytes: number;
+}
 
 /** All columns of a plan for `rows` rows, on shared memory. @throws InputError `input.tooLarge` */
 export function allocateColumns(
@@ -40,118 +50,48 @@ export function allocateColumns(
   }
 }
 
-/** Reports progress, and ends the load when the signal says so. */
-export class Watch {
-  private done = 0;
-  private lastReport = -Infinity;
-  private readonly total: number;
-  private readonly options: ReadOptions;
-
-  /** @param total - bytes in all, 0 if that is not known */
-  constructor(total: number, options: ReadOptions) {
-    this.total = total;
-    this.options = options;
-  }
-
-  advance(bytes: number): void {
-    assertNotAborted(this.options.signal);
-    this.done += bytes;
-    const now = performance.now();
-    if (now - this.lastReport < PROGRESS_MS && this.done !== this.total) return;
-    this.lastReport = now;
-    this.options.onProgress?.(this.done, this.total);
-  }
-}
-
 /**
- * Loads the planned columns of one batch into rows `rowBegin` and following.
- * @throws InputError `input.arrowDamaged`; InterruptedError
+ * Loads the planned columns of batches, one batch after the other, from row 0 on.
+ * @throws InputError `input.arrowDamaged`, `input.changed`, `input.unreadable`; InterruptedError
  */
-export async function loadBatch(
-  batch: PlannedBatch,
+export async function loadBatches(
+  batches: readonly PlannedBatch[],
   plan: readonly PlannedColumn[],
   columns: ColumnSet,
-  rowBegin: number,
   file: string,
-  watch: Watch,
+  options: LoadOptions,
+  crew = crewOfOne(),
 ): Promise<void> {
-  let { body } = batch;
-  if (batch.bodyLength <= SMALL_BODY_BYTES) {
-    const bytes = new Uint8Array(batch.bodyLength);
-    await body.read(bytes, 0);
-    body = memoryBody(bytes);
+  const pieces = batches.flatMap((batch, index) => piecesOf(batch, index, plan));
+  const rowBegins: number[] = [];
+  let rows = 0;
+  for (const batch of batches) {
+    rowBegins.push(rows);
+    rows += batch.rows;
   }
-  for (let i = 0; i < plan.length; i++) {
-    const targets = plan[i].targets.map((target) => columns.get(target)!);
-    const job: ColumnJob = { batch, body, column: plan[i], targets, rowBegin, file, watch };
-    if (batch.rows === 0) continue;
-    if (batch.codec) await loadCompressed(job, batch.regions[i]);
-    else if (isInPlace(plan[i])) await loadInPlace(job, batch.regions[i]);
-    else await loadConverted(job, batch.regions[i]);
-  }
+  const targets = plan.map((column) => column.targets.map((target) => columns.get(target)!));
+  const round = { file, plan, batches, rowBegins, targets, pieces };
+  const workers = crewFor(bytesOf(pieces), crew);
+  await workers.run(TASK, 'loadPieces', round, pieces.length, watchOf(pieces, options));
 }
 
-interface ColumnJob {
-  readonly batch: PlannedBatch;
-  readonly body: PlannedBatch['body'];
-  readonly column: PlannedColumn;
-  readonly targets: readonly StoredColumn[];
-  readonly rowBegin: number;
-  readonly file: string;
-  readonly watch: Watch;
-}
-
-/** The bytes of the file are the bytes of the column. */
-async function loadInPlace(job: ColumnJob, region: Region): Promise<void> {
-  const [target] = job.targets;
-  const width = target.BYTES_PER_ELEMENT;
-  const bytes = new Uint8Array(target.buffer, job.rowBegin * width, job.batch.rows * width);
-  let next = 0;
-  const lane = async () => {
-    while (next < bytes.length) {
-      const begin = next;
-      const end = Math.min(begin + CHUNK_BYTES, bytes.length);
-      next = end;
-      await job.body.read(bytes.subarray(begin, end), region.offset + begin);
-      job.watch.advance(end - begin);
+function piecesOf(batch: PlannedBatch, index: number, plan: readonly PlannedColumn[]): Piece[] {
+  const { rows, codec, regions, bodyLength } = batch;
+  if (rows === 0) return [];
+  const rowBytes = plan.map(({ kind, targets }) => targets.length * BYTES_OF[kind]);
+  const bytes = plan.map((_, i) => (codec ? regions[i].length : rows * rowBytes[i]));
+  const whole = { batch: index, row: 0, rows };
+  if (bodyLength <= SMALL_BODY_BYTES) {
+    return [{ ...whole, column: null, bytes: bytes.reduce((sum, n) => sum + n, 0) }];
+  }
+  return plan.flatMap((_, column) => {
+    if (codec) return [{ ...whole, column, bytes: bytes[column] }];
+    const pieces: Piece[] = [];
+    const most = Math.floor(PIECE_BYTES / rowBytes[column]);
+    for (let row = 0; row < rows; row += most) {
+      const count = Math.min(most, rows - row);
+      pieces.push({ batch: index, column, row, rows: count, bytes: count * rowBytes[column] });
     }
-  };
-  // All lanes must have ended before the file may be closed, whatever became of one.
-  const results = await Promise.allSettled(Array.from({ length: LANES }, lane));
-  for (const result of results) if (result.status === 'rejected') throw result.reason;
-}
-
-async function loadConverted(job: ColumnJob, region: Region): Promise<void> {
-  const rowBytes = BYTES_OF[job.column.kind] * job.column.targets.length;
-  const rowsAtOnce = Math.min(job.batch.rows, Math.floor(CHUNK_BYTES / 4 / rowBytes));
-  const scratch = new Uint8Array(rowsAtOnce * rowBytes);
-  for (let row = 0; row < job.batch.rows; row += rowsAtOnce) {
-    const rows = Math.min(rowsAtOnce, job.batch.rows - row);
-    const bytes = scratch.subarray(0, rows * rowBytes);
-    await job.body.read(bytes, region.offset + row * rowBytes);
-    convert(job, bytes, row, rows);
-    job.watch.advance(bytes.length);
-  }
-}
-
-async function loadCompressed(job: ColumnJob, region: Region): Promise<void> {
-  const { batch, column, file } = job;
-  const packed = new Uint8Array(region.length);
-  await job.body.read(packed, region.offset);
-  job.watch.advance(packed.length);
-  const needed = batch.rows * column.targets.length * BYTES_OF[column.kind];
-  const place = `column "${column.fileName}" of ${batch.place}`;
-  convert(job, decompress(batch.codec!, packed, needed, file, place), 0, batch.rows);
-}
-
-function convert(job: ColumnJob, bytes: Uint8Array, row: number, rows: number): void {
-  const { column, targets, batch } = job;
-  const componentOf = column.dictionaryId === null ? null : batch.componentOf;
-  const stray = convertRows(column, bytes, rows, targets, job.rowBegin + row, componentOf);
-  if (stray !== null)
-    throw damaged(
-      job.file,
-      `column "${column.fileName}" of ${batch.place}`,
-      `index ${stray} into a dictionary of ${componentOf?.length ?? 0} names`,
-    );
+    return pieces;
+  });
 }

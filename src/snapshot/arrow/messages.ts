@@ -5,6 +5,7 @@ import { Footer } from 'apache-arrow/ipc/metadata/file';
 import { Message, type DictionaryBatch, type RecordBatch } from 'apache-arrow/ipc/metadata/message';
 import { MetadataVersion, Type } from 'apache-arrow/enum';
 import { InputError, SettlemarkError } from '../../errors.ts';
+import { damaged } from './damage.ts';
 import { faultInFlatbuffer, slotPosition } from './flatbuffer.ts';
 import { FOOTER, MESSAGE } from './shapes.ts';
 
@@ -29,25 +30,6 @@ export interface Block {
   readonly offset: number;
   readonly metadataLength: number;
   readonly bodyLength: number;
-}
-
-/** `input.arrowDamaged`: what was found at which place does not agree with the format. */
-export function damaged(file: string, place: string, found: string, cause?: unknown): InputError {
-  return new InputError(
-    'input.arrowDamaged',
-    `${file}: ${place} is not valid Arrow: ${found}`,
-    'The file is damaged or was not written completely; copy or write it again.',
-    cause === undefined ? undefined : { cause },
-  );
-}
-
-/** `input.arrowCut`: the end is missing. */
-export function cut(file: string, found: string, expected: string): InputError {
-  return new InputError(
-    'input.arrowCut',
-    `${file} is cut off: ${found}; expected ${expected}`,
-    'Wait until its writer has finished and closed it, or write it again.',
-  );
 }
 
 /**

@@ -1,13 +1,17 @@
 /** Arrow IPC → Particles. */
 import { InputError } from '../../errors.ts';
+import type { Crew } from '../../parallel/crew.ts';
+import { withInput, type OpenFile } from '../files.ts';
 import type { FloatColumn, OptionalColumns, ParticleOrigin, Particles } from '../particles.ts';
+import { seldom } from '../pieces.ts';
 import type { FieldName, ReadOptions } from '../reading.ts';
-import { BatchPlanner, type PlannedBatch } from './batches.ts';
+import { BatchPlanner } from './batches.ts';
 import type { StoredColumn } from './convert.ts';
 import { readFacts } from './facts.ts';
-import { allocateColumns, loadBatch, Watch, type ColumnSet } from './load.ts';
+import { type NumberKind, type PlannedColumn } from './kinds.ts';
+import { allocateColumns, loadBatches, type ColumnSet } from './load.ts';
 import type { Schema } from './messages.ts';
-import { BYTES_OF, planColumns, type NumberKind, type PlannedColumn } from './plan.ts';
+import { planColumns } from './plan.ts';
 import { countRows, planFile, sequentialMessages, withArrowFile } from './scan.ts';
 import { fromStandardInput, StreamCursor } from './sequential.ts';
 
@@ -34,20 +38,29 @@ export { describeArrow } from './describe.ts';
  * `input.nulls`, `input.tooManyComponents`; else `input.metadata`, `input.units`,
  * `input.noParticles`, `input.tooLarge`, `input.changed`; InterruptedError
  */
-export async function readArrow(path: string, options: ReadOptions = {}): Promise<Particles> {
+export async function readArrow(
+  path: string,
+  options: ReadOptions = {},
+  crew?: Crew,
+): Promise<Particles> {
   if (path === '-') return readArrowStream(fromStandardInput(), path, options);
-  return withArrowFile(path, async (file, isFile) => {
+  return withInput(path, (file) => readArrowFile(file, options, crew));
+}
+
+/** {@link readArrow} for a file that is open. */
+export async function readArrowFile(
+  file: OpenFile,
+  options: ReadOptions,
+  crew?: Crew,
+): Promise<Particles> {
+  const { path } = file;
+  return withArrowFile(file, async (isFile) => {
     const planner = particlePlanner(path, options);
     const batches = await planFile(file, isFile, planner, options);
     const count = countRows(batches);
     assertParticles(count, path);
     const columns = allocateColumns(planner.plan, count, path);
-    const watch = new Watch(bytesToLoad(batches, planner.plan), options);
-    let row = 0;
-    for (const batch of batches) {
-      await loadBatch(batch, planner.plan, columns, row, path, watch);
-      row += batch.rows;
-    }
+    await loadBatches(batches, planner.plan, columns, path, options, crew);
     return assemble(planner, columns, count, isFile ? 'arrow-file' : 'arrow-stream');
   });
 }
@@ -60,13 +73,17 @@ export async function readArrowStream(
 ): Promise<Particles> {
   const planner = particlePlanner(name, options);
   const cursor = new StreamCursor(source, name, options.signal);
-  const watch = new Watch(0, options);
+  const { signal } = options;
+  const tell = seldom(options.onProgress);
+  let bytes = 0;
   const parts: { rows: number; columns: ColumnSet }[] = [];
   for await (const message of sequentialMessages(cursor, name, options)) {
     const batch = await planner.take(message);
     if (!batch || batch.rows === 0) continue;
     const columns = allocateColumns(planner.plan, batch.rows, name);
-    await loadBatch(batch, planner.plan, columns, 0, name, watch);
+    await loadBatches([batch], planner.plan, columns, name, { signal });
+    bytes += batch.bodyLength;
+    tell(bytes, 0);
     parts.push({ rows: batch.rows, columns });
   }
   const count = parts.reduce((sum, { rows }) => sum + rows, 0);
@@ -89,17 +106,6 @@ function assertParticles(count: number, file: string): void {
     `${file} holds no bodies: its batches have 0 rows; expected at least one`,
     'Look whether the program that wrote it selected any.',
   );
-}
-
-function bytesToLoad(batches: readonly PlannedBatch[], plan: readonly PlannedColumn[]): number {
-  let bytes = 0;
-  for (const { rows, codec, regions } of batches) {
-    for (let i = 0; i < plan.length; i++) {
-      const { kind, targets } = plan[i];
-      if (rows > 0) bytes += codec ? regions[i].length : rows * targets.length * BYTES_OF[kind];
-    }
-  }
-  return bytes;
 }
 
 /** Joins the columns of batches; frees those of a column as soon as it is joined. */

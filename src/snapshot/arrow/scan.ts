@@ -1,30 +1,27 @@
 /** From a path or a stream of bytes to messages and planned batches, whichever format it has. */
 import { InputError } from '../../errors.ts';
-import { assertUnchanged, openInput, readExactly, type OpenFile } from '../files.ts';
+import { assertUnchanged, readExactly, type OpenFile } from '../files.ts';
 import type { ReadOptions } from '../reading.ts';
 import type { BatchPlanner, PlannedBatch } from './batches.ts';
 import { assertNotAborted, FileCursor, readBlock, readFooter, streamMessages } from './framing.ts';
 import { hasFileMagic } from './magic.ts';
 import type { StreamCursor } from './sequential.ts';
 
-/** Opens a file, says whether it has the file format, and notices if it changes meanwhile. */
+/** Says whether a file has the file format, runs `work`, and notices if the file changes meanwhile. */
 export async function withArrowFile<T>(
-  path: string,
-  work: (file: OpenFile, isFile: boolean) => Promise<T>,
+  file: OpenFile,
+  work: (isFile: boolean) => Promise<T>,
 ): Promise<T> {
-  const file = await openInput(path);
   try {
     const head = new Uint8Array(Math.min(file.size, 8));
     await readExactly(file, head, 0, head.length, 0);
-    const result = await work(file, hasFileMagic(head));
+    const result = await work(hasFileMagic(head));
     await assertUnchanged(file);
     return result;
   } catch (error) {
     // A file that is being written looks damaged; that it changes is the better message.
     if (error instanceof InputError) await assertUnchanged(file);
     throw error;
-  } finally {
-    await file.handle.close();
   }
 }
 

@@ -1,6 +1,7 @@
 /** An Arrow stream that can be read only once, in order: standard input. */
 import { InputError, InterruptedError, SettlemarkError } from '../../errors.ts';
-import { memoryBody, type Body, type Cursor } from './framing.ts';
+import type { Body } from './body.ts';
+import type { Cursor } from './framing.ts';
 
 /**
  * Takes bytes from a stream in order. A body is held in memory until it is loaded.
@@ -49,7 +50,7 @@ export class StreamCursor implements Cursor {
       bytes.set(part, at);
       at += part.length;
     });
-    return taken === count ? memoryBody(bytes) : null;
+    return taken === count ? bytes : null;
   }
 
   /** Hands on the next `count` bytes in parts; gives how many there were. */

@@ -6,7 +6,7 @@ import { takeBuffer } from '../../numerics/reuse.ts';
 import type { FloatColumn, IdColumn } from '../particles.ts';
 import { NATIVE_ORDER, type ByteOrder, type NumberType } from './types.ts';
 
-/** The bytes of a chunk seen as what the kernels need; made once for a reused buffer. */
+/** The bytes of a chunk seen as what the kernels need. */
 export interface Chunk {
   readonly bytes: Buffer;
   readonly view: DataView;
@@ -14,8 +14,20 @@ export interface Chunk {
   readonly floats: Float32Array;
 }
 
-/** Allocates a chunk of at least `bytes` bytes. */
-export function allocateChunk(bytes: number): Chunk {
+let spare: Chunk | null = null;
+
+/** A chunk of at least `bytes` bytes, to be given back: new memory costs more than the decoding. */
+export function takeChunk(bytes: number): Chunk {
+  const chunk = spare !== null && spare.bytes.length >= bytes ? spare : allocateChunk(bytes);
+  spare = null;
+  return chunk;
+}
+
+export function giveChunk(chunk: Chunk): void {
+  spare = chunk;
+}
+
+function allocateChunk(bytes: number): Chunk {
   const buffer = new ArrayBuffer(Math.ceil(bytes / 8) * 8);
   return {
     bytes: Buffer.from(buffer),

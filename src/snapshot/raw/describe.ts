@@ -1,6 +1,6 @@
 /** What is in a raw file, from its header and its first and last bodies. */
 import { InputError } from '../../errors.ts';
-import { openInput } from '../files.ts';
+import { withInput } from '../files.ts';
 import { allocateColumn, type FloatColumn, type Particles, type Remark } from '../particles.ts';
 import type { DescribedColumn, FieldName, ReadOptions, SnapshotDescription } from '../reading.ts';
 import { screenSample } from '../screen.ts';
@@ -25,8 +25,7 @@ export async function describeRaw(
   path: string,
   options: ReadOptions,
 ): Promise<SnapshotDescription> {
-  const file = await openInput(path);
-  try {
+  return withInput(path, async (file) => {
     const found = await findLayout(path, options.layout);
     const { layout } = found;
     const structure = await layOverOrExplain(file, layout, found.file);
@@ -56,9 +55,7 @@ export async function describeRaw(
         ...screened(path, structure, targets, planned.plan, ranges),
       ],
     };
-  } finally {
-    await file.handle.close();
-  }
+  });
 }
 
 function sampleRanges(count: number): BodyRange[] {

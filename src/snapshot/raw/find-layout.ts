@@ -1,8 +1,8 @@
 /** Which layout a raw file has: named, found beside it, or the default. */
-import { open, readdir } from 'node:fs/promises';
+import { constants } from 'node:fs';
 import { basename, dirname, extname, join } from 'node:path';
 import { InputError } from '../../errors.ts';
-import { asReadError } from '../files.ts';
+import { asReadError, disk } from '../files.ts';
 import type { Remark } from '../particles.ts';
 import { DEFAULT_LAYOUT, type Layout } from './layout.ts';
 import { parseLayout } from './layout-check.ts';
@@ -55,33 +55,63 @@ interface Beside {
 
 async function besideData(path: string): Promise<Beside> {
   const folder = dirname(path);
-  let names: string[];
+  let names: readonly string[];
   try {
-    names = await readdir(folder);
+    names = await layoutsIn(folder);
   } catch {
     return { file: null, candidates: [] }; // Files in it may still be readable by name, or the data's own error tells.
   }
   const own = `${basename(path, extname(path))}.layout.json`;
-  const candidates = names
-    .filter((name) => name.endsWith('.layout.json') && !name.startsWith('.'))
-    .sort();
+  const candidates = names.filter((name) => name !== COMMON);
   const name = candidates.includes(own)
     ? own
     : candidates.length === 1
       ? candidates[0]
-      : names.includes('layout.json')
-        ? 'layout.json'
+      : names.includes(COMMON)
+        ? COMMON
         : null;
   return { file: name === null ? null : join(folder, name), candidates };
 }
 
+const COMMON = 'layout.json';
+/** Changes that follow each other faster than this may leave a folder the same time of change. */
+const CLOCK_TICK_MS = 2000;
+
+let listed: { folder: string; layouts: readonly string[] } | null = null;
+
+/**
+ * Names of the layouts in a folder, in order. A series lies in one folder, which takes long to list
+ * for each of its snapshots: it is listed again only if it has changed.
+ */
+async function layoutsIn(path: string): Promise<readonly string[]> {
+  const { dev, ino, mtimeMs, mtimeNs } = await disk.stat(path, { bigint: true });
+  const folder = `${dev} ${ino} ${mtimeNs}`;
+  if (listed?.folder === folder) return listed.layouts;
+  const isSettled = Date.now() - Number(mtimeMs) > CLOCK_TICK_MS;
+  const layouts = (await disk.readdir(path))
+    .filter((name) => name === COMMON || (name.endsWith('.layout.json') && !name.startsWith('.')))
+    .sort();
+  listed = isSettled ? { folder, layouts } : null;
+  return layouts;
+}
+
+/** The layout read last: the snapshots of a series share theirs. */
+let parsed: { file: string; text: string; layout: Layout } | null = null;
+
 /** Reads and checks a layout file. */
 export async function loadLayout(file: string): Promise<Layout> {
-  let text: string;
+  const text = await readText(file);
+  if (parsed?.file !== file || parsed.text !== text) {
+    parsed = { file, text, layout: parseLayout(text, file) };
+  }
+  return parsed.layout;
+}
+
+async function readText(file: string): Promise<string> {
   try {
-    const handle = await open(file, 'r');
+    const descriptor = await disk.open(file, constants.O_RDONLY);
     try {
-      const { size } = await handle.stat();
+      const { size } = await disk.fstat(descriptor, { bigint: true });
       if (size > LAYOUT_BYTES_AT_MOST) {
         throw new InputError(
           'input.layoutNotJson',
@@ -89,9 +119,9 @@ export async function loadLayout(file: string): Promise<Layout> {
           'Name the layout file with --layout, not the data.',
         );
       }
-      text = await handle.readFile('utf8');
+      return await disk.readFile(descriptor, 'utf8');
     } finally {
-      await handle.close();
+      await disk.close(descriptor);
     }
   } catch (error) {
     const known = asReadError(file, error);
@@ -105,5 +135,4 @@ export async function loadLayout(file: string): Promise<Layout> {
     }
     throw known;
   }
-  return parseLayout(text, file);
 }

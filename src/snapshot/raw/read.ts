@@ -1,6 +1,7 @@
 /** The reader of raw files: layout, structure, plan, columns. */
 import { InputError } from '../../errors.ts';
-import { assertUnchanged, openInput, type OpenFile } from '../files.ts';
+import type { Crew } from '../../parallel/crew.ts';
+import { assertUnchanged, withInput, type OpenFile } from '../files.ts';
 import {
   allocateColumn,
   type FloatColumn,
@@ -20,32 +21,37 @@ import { TYPE_DIGITS } from './types.ts';
 
 /**
  * Reads a raw file as its layout says. Memory: one copy of the columns that are wanted, and one
- * chunk of about 4 MiB. Fields of float32 without a scale stay float32; all others are float64.
+ * chunk of 2 MiB a thread. Fields of float32 without a scale stay float32; all others are float64.
  * The values are not judged here (`screenParticles` does).
  *
  * @param path - a regular file
  * @throws InputError with a code of `openInput`, `findLayout`, `layOver`, `planColumns` or
  * `readBodies`; `input.tooLarge` if memory does not suffice; InterruptedError
  */
-export async function readRaw(path: string, options: ReadOptions): Promise<Particles> {
-  const file = await openInput(path);
-  try {
-    const found = await findLayout(path, options.layout);
-    const structure = await layOverOrExplain(file, found.layout, found.file);
-    const plan = planColumns(path, found.layout, options);
-    const columns = allocate(file, structure.count, plan);
-    await readBodies(
-      file,
-      structure,
-      [...columns.values()],
-      [{ begin: 0, end: structure.count }],
-      options,
-    );
-    await assertUnchanged(file);
-    return assemble(path, found, structure, plan, columns, options);
-  } finally {
-    await file.handle.close();
-  }
+export function readRaw(path: string, options: ReadOptions, crew?: Crew): Promise<Particles> {
+  return withInput(path, (file) => readRawFile(file, options, crew));
+}
+
+/** {@link readRaw} for a file that is open. */
+export async function readRawFile(
+  file: OpenFile,
+  options: ReadOptions,
+  crew?: Crew,
+): Promise<Particles> {
+  const found = await findLayout(file.path, options.layout);
+  const structure = await layOverOrExplain(file, found.layout, found.file);
+  const plan = planColumns(file.path, found.layout, options);
+  const columns = allocate(file, structure.count, plan);
+  await readBodies(
+    file,
+    structure,
+    [...columns.values()],
+    [{ begin: 0, end: structure.count }],
+    options,
+    crew,
+  );
+  await assertUnchanged(file);
+  return assemble(file.path, found, structure, plan, columns, options);
 }
 
 const ID_QUANTITIES: ReadonlySet<Quantity> = new Set(['id', 'group', 'subgroup']);
