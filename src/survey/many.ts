@@ -1,10 +1,10 @@
 /** Many snapshots: small ones spread whole over the workers, large ones worked on by all together. */
-import { stat } from 'node:fs/promises';
 import type { MeasureRecord } from '../dynamics/record.ts';
 import { InputError, UnanswerableError, UsageError, type SettlemarkError } from '../errors.ts';
 import type { Crew, TaskModule } from '../parallel/crew.ts';
+import { received } from '../parallel/protocol.ts';
+import { fileBytes } from '../snapshot/files.ts';
 import { measureFile, type SurveyOptions } from './measure.ts';
-import { received } from './measure.task.ts';
 import type * as MeasureTask from './measure.task.ts';
 
 const TASK: TaskModule<typeof MeasureTask> = {
@@ -31,32 +31,63 @@ export async function* measureMany(
   options: SurveyOptions,
   crew: Crew,
 ): AsyncGenerator<FileOutcome> {
-  const most = crew.threads * FILES_A_WORKER;
-  for (let at = 0; at < paths.length;) {
-    const batch: string[] = [];
-    while (crew.threads > 1 && batch.length < most && at + batch.length < paths.length) {
-      const path = paths[at + batch.length];
-      if (!(await isSmall(path))) break;
-      batch.push(path);
+  let round = await beginRound(paths, 0, options, crew);
+  try {
+    for (let at = 0; at < paths.length;) {
+      if (round === null) {
+        yield await measureAlone(paths[at++], options, crew);
+        round = await beginRound(paths, at, options, crew);
+        continue;
+      }
+      const { files, outcomes } = round;
+      at += files;
+      // The next round waits at the workers, so that none of them waits for the last file of this one.
+      round = await beginRound(paths, at, options, crew);
+      yield* await outcomes;
     }
-    if (batch.length > 1) yield* measureTogether(batch, options, crew);
-    else yield await measureAlone(paths[at], options, crew);
-    at += Math.max(1, batch.length);
+  } finally {
+    await round?.outcomes.catch(() => undefined);
   }
+}
+
+interface SmallRound {
+  readonly files: number;
+  readonly outcomes: Promise<FileOutcome[]>;
+}
+
+/** Gives small files from index `begin` on to the workers; null if there are not even two. */
+async function beginRound(
+  paths: readonly string[],
+  begin: number,
+  options: SurveyOptions,
+  crew: Crew,
+): Promise<SmallRound | null> {
+  const batch = await smallFiles(paths, begin, crew);
+  if (batch.length < 2) return null;
+  const outcomes = measureTogether(batch, options, crew);
+  outcomes.catch(() => undefined); // Whoever waits for them hears of it, which may be later.
+  return { files: batch.length, outcomes };
+}
+
+/** The small files from index `begin` on, as many as make a round; none for a crew of one. */
+async function smallFiles(paths: readonly string[], begin: number, crew: Crew): Promise<string[]> {
+  if (crew.threads === 1) return [];
+  const some = paths.slice(begin, begin + crew.threads * FILES_A_WORKER);
+  const small = await Promise.all(some.map(isSmall));
+  const end = small.indexOf(false);
+  return end < 0 ? some : some.slice(0, end);
 }
 
 /** A path that cannot be looked at is left to the reader, which says what is wrong with it. */
 async function isSmall(path: string): Promise<boolean> {
-  if (path === '-') return false;
-  const found = await stat(path).catch(() => null);
-  return found !== null && found.isFile() && found.size <= SMALL_BYTES;
+  return path !== '-' && ((await fileBytes(path)) ?? Infinity) <= SMALL_BYTES;
 }
 
-async function* measureTogether(
+async function measureTogether(
   paths: readonly string[],
   options: SurveyOptions,
   crew: Crew,
-): AsyncGenerator<FileOutcome> {
+): Promise<FileOutcome[]> {
   const { onStage, read, ...measurement } = options;
   onStage?.('together', null);
   const readable = { ...read };
@@ -65,11 +96,12 @@ async function* measureTogether(
   const round = { paths, options: { ...measurement, read: readable } };
   const outcomes = (await crew.run(TASK, 'measureFiles', round, paths.length)).flat();
   outcomes.sort((a, b) => a.job - b.job);
-  for (const outcome of outcomes) {
+  return outcomes.map((outcome) => {
     const file = paths[outcome.job];
-    if ('record' in outcome) yield { file, record: outcome.record, error: null };
-    else yield { file, record: null, error: received(outcome.error) };
-  }
+    return 'record' in outcome
+      ? { file, record: outcome.record, error: null }
+      : { file, record: null, error: received(outcome.error) };
+  });
 }
 
 async function measureAlone(

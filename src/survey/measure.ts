@@ -38,7 +38,7 @@ export async function measureFile(
   };
   return reusingMemory(async () => {
     await requireMemory(path, options.read ?? {}, (options.softening ?? 0) > 0);
-    const particles = await readSnapshot(path, read);
+    const particles = await readSnapshot(path, read, crew);
     const readSeconds = (performance.now() - start) / 1000;
     return measureParticles(particles, options, crew, { readSeconds, onStage: options.onStage });
   });

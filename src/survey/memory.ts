@@ -1,7 +1,7 @@
 /** Memory that a measurement will take, asked for before anything is read. */
-import { stat } from 'node:fs/promises';
 import { freemem } from 'node:os';
 import { InputError } from '../errors.ts';
+import { fileBytes } from '../snapshot/files.ts';
 import { describeSnapshot } from '../snapshot/read.ts';
 import type { ReadOptions, SnapshotDescription } from '../snapshot/reading.ts';
 
@@ -39,9 +39,8 @@ export async function requireMemory(
   softened: boolean,
   available?: number,
 ): Promise<void> {
-  const found = path === '-' ? null : await stat(path).catch(() => null);
-  if (found === null || !found.isFile() || found.size < ASK_ABOVE_BYTES) return;
-  const description = await describeSnapshot(path, options);
+  if (path === '-' || ((await fileBytes(path)) ?? 0) < ASK_ABOVE_BYTES) return;
+  const description = await describeSnapshot(path, options, 'no values');
   const needed = memoryNeeded(description, softened);
   const free = available ?? memoryAvailable();
   if (needed <= free) return;
