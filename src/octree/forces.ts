@@ -3,6 +3,7 @@
  * measured errors, by direct sums where those are cheaper and by the cell–cell walk elsewhere.
  */
 import { takeDoubles } from '../numerics/reuse.ts';
+import type * as DirectTask from './direct.task.ts';
 import type * as ForcesTask from './forces.task.ts';
 import { crewOfOne, type Crew, type TaskModule } from '../parallel/crew.ts';
 import { buildOctree, type BodyColumns } from './build.ts';
@@ -18,7 +19,8 @@ import {
   type SampledError,
 } from './errorSample.ts';
 import { expansionOf } from './expansion.ts';
-import { DIRECT_TARGETS, type FieldColumns } from './forces.task.ts';
+import type { FieldColumns } from './forces.task.ts';
+import { DIRECT_TARGETS, pairJobs, type DirectRound } from './direct.task.ts';
 import { gatherSlot, leastOfChildren } from './multipoles.ts';
 import { firstLevel, nextLevel, treeCost, type Level } from './levels.ts';
 import { plummerSquare, splineSupport, type Softening } from './softening.ts';
@@ -28,6 +30,11 @@ import type { Acceptance, SourceTree, WalkCounts } from './walk.ts';
 const TASK: TaskModule<typeof ForcesTask> = {
   url: new URL('./forces.task.js', import.meta.url),
   load: () => import('./forces.task.ts'),
+};
+
+const DIRECT_TASK: TaskModule<typeof DirectTask> = {
+  url: new URL('./direct.task.js', import.meta.url),
+  load: () => import('./direct.task.ts'),
 };
 
 /** Up to this many bodies sums are always direct. */
@@ -116,7 +123,7 @@ export async function sumForces(
 const DIRECT_PAST_LAST = 3;
 
 /** Nanoseconds of one thread that direct sums take, roughly; only ratios to {@link treeCost} matter. */
-const directCost = (count: number): number => 2.8 * count * count;
+const directCost = (count: number): number => 1.8 * count * count;
 
 async function sumAllDirectly(
   columns: BodyColumns,
@@ -135,12 +142,7 @@ async function sumAllDirectly(
     softening: options.softening,
     field,
   };
-  // Few bodies: one thread that takes each pair once is as fast as several that take it twice.
-  const left =
-    count <= DIRECT_COUNT
-      ? await crewOfOne().run(TASK, 'sumAllPairs', round, 1)
-      : await crew.run(TASK, 'sumDirectly', round, Math.ceil(count / DIRECT_TARGETS));
-  const pairs = left.reduce((sum, n) => sum + n, 0);
+  const coincidentPairs = await sumPairs(round, crew);
   const seconds = { tree: 0, forces: (performance.now() - start) / 1000, error: 0 };
   const costs = {
     cellInteractions: 0,
@@ -153,10 +155,30 @@ async function sumAllDirectly(
     error: null,
     accelerationError: options.accelerations === true ? 0 : null,
     level: null,
-    coincidentPairs: count <= DIRECT_COUNT ? pairs : pairs / 2,
+    coincidentPairs,
     costs,
     tree: null,
   });
+}
+
+/** Bodies that are worth a block of their own, and the most blocks. */
+const BLOCK = 256;
+const BLOCKS = 64;
+
+/** Sums all pairs into the round's field; returns the pairs at one point, left out of unsoftened sums. */
+async function sumPairs(round: DirectRound, crew: Crew): Promise<number> {
+  const count = round.mass.length;
+  const wanted = 2 * Math.floor(Math.min(BLOCKS, count / BLOCK) / 2);
+  const blocks = Math.max(1, wanted);
+  const done = new Int32Array(new SharedArrayBuffer(4));
+  const workers = blocks === 1 ? crewOfOne() : crew;
+  const total = (list: readonly number[]) => list.reduce((sum, n) => sum + n, 0);
+  const pairs = { ...round, blocks, done };
+  const left = total(await workers.run(DIRECT_TASK, 'sumAllPairs', pairs, pairJobs(blocks)));
+  if (blocks === 1 || round.field.phi.every(Number.isFinite)) return left;
+  // Bodies at one point in two blocks: the slower sums that leave such pairs out.
+  const jobs = Math.ceil(count / DIRECT_TARGETS);
+  return total(await crew.run(DIRECT_TASK, 'sumDirectly', round, jobs)) / 2;
 }
 
 async function sumByTree(

@@ -5,6 +5,7 @@ import { expansionOf } from '../../src/octree/expansion.ts';
 import { acceptanceOf, PROMISED_SIGMAS, sumForces } from '../../src/octree/forces.ts';
 import { LEVELS } from '../../src/octree/levels.ts';
 import { pairKernelsOf, pairSofteningOf } from '../../src/octree/pairs.ts';
+import { NO_SOFTENING } from '../../src/octree/softening.ts';
 import {
   columnsOf,
   cubeColumns,
@@ -161,4 +162,31 @@ it.each(SOFTENINGS)('the classical walk finds the same sums: $kernel', async (so
     direct += m / (softening.kernel === 'plummer' ? Math.hypot(r, softening.length) : r);
   });
   expect(Math.abs(out[0] / direct - 1)).toBeLessThan(1e-4);
+});
+
+describe('direct sums in blocks', () => {
+  it.each([900, 1500, 2900])('of %i bodies are those of a plain double loop', async (count) => {
+    const bodies = modelColumns('plummer', count, 21);
+    for (const softening of SOFTENINGS) {
+      const plain = plainField(bodies, softening);
+      const forces = await sumForces(bodies, natural(softening, { accelerations: true }));
+      // As many roundings as bodies at most, of terms of one sign.
+      expect(rmsDifference(forces.potential, plain.phi)).toBeLessThan(1e-13);
+      expect(rmsDifference(forces.clausiusShare, plain.share)).toBeLessThan(1e-13);
+      const a = forces.acceleration;
+      expect(rmsDifference(a?.x ?? [], plain.ax)).toBeLessThan(1e-12 * rms(plain.ax));
+      expect(rmsDifference(a?.z ?? [], plain.az)).toBeLessThan(1e-12 * rms(plain.az));
+    }
+  });
+
+  it('leave out bodies at one point in different blocks', async () => {
+    const bodies = modelColumns('plummer', 3000, 22);
+    for (const column of [bodies.x, bodies.y, bodies.z]) column.copyWithin(2500, 0, 10);
+    const forces = await sumForces(bodies, natural(NO_SOFTENING, { exact: true }));
+    expect(forces.coincidentPairs).toBe(10);
+    expect(Number.isFinite(forces.potentialEnergy)).toBe(true);
+    const tree = await sumForces(bodies, natural(NO_SOFTENING, { level: LEVELS[3] }));
+    expect(tree.coincidentPairs).toBe(10);
+    expect(Math.abs(forces.potentialEnergy / tree.potentialEnergy - 1)).toBeLessThan(1e-5);
+  });
 });
