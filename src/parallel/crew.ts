@@ -235,9 +235,9 @@ async function watched<T>(
   if (signal?.aborted === true) stop();
   try {
     const results = await settled;
-    if (signal?.aborted === true) throw new InterruptedError();
     if (failures.length > 0) throw failures[0];
-    onProgress?.(jobs);
+    if (signal?.aborted !== true) onProgress?.(jobs);
+    if (signal?.aborted === true) throw new InterruptedError();
     return results;
   } finally {
     clearInterval(timer);

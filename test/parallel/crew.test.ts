@@ -8,6 +8,7 @@ import { crewOfOne, defaultThreads, startCrew, type Crew } from '../../dist/para
 
 /** A task module that does what tests ask of it; written to a file, as workers load it from there. */
 const SOURCE = `
+const ERRORS = '${new URL('../../dist/errors.js', import.meta.url).href}';
 export function square({ out }, takeJob) {
   let done = 0;
   for (let job = takeJob(); job >= 0; job = takeJob()) { out[job] = job * job; done++; }
@@ -29,6 +30,20 @@ export function leave(_argument, takeJob) {
   process.exit(0);
 }
 export function unsendable() { return () => 1; }
+export async function refuse({ at }, takeJob) {
+  const { InputError } = await import(ERRORS);
+  for (let job = takeJob(); job >= 0; job = takeJob()) {
+    if (job >= at) throw new InputError('input.test', 'job ' + job, 'try ' + job);
+  }
+}
+export async function linger({ out, ms }, takeJob) {
+  for (let job = takeJob(); job >= 0; job = takeJob()) {
+    out[0]++;
+    await new Promise((resolve) => setTimeout(resolve, ms));
+    out[1] = Math.max(out[1], out[0]);
+    out[0]--;
+  }
+}
 `;
 
 interface Tasks {
@@ -37,6 +52,8 @@ interface Tasks {
   wait: (argument: { gate: Int32Array }, takeJob: () => number) => string;
   leave: (argument: null, takeJob: () => number) => void;
   unsendable: (argument: unknown, takeJob: () => number) => unknown;
+  refuse: (argument: { at: number }, takeJob: () => number) => Promise<void>;
+  linger: (argument: { out: Float64Array; ms: number }, takeJob: () => number) => Promise<void>;
   missing: (argument: null, takeJob: () => number) => void;
 }
 
@@ -117,6 +134,57 @@ describe.each([1, 2, 3, 7])('a crew of %i', (threads) => {
     });
   });
 
+  it('hands on an error that a user can cause as it is, and that of the lowest job', async () => {
+    await withCrew(threads, async (crew) => {
+      for (let again = 0; again < 20; again++) {
+        const round = crew.run(tasks, 'refuse', { at: 30 }, 100);
+        await expect(round).rejects.toMatchObject({
+          name: 'InputError',
+          code: 'input.test',
+          message: 'job 30',
+          remedy: 'try 30',
+        });
+      }
+    });
+  });
+
+  it('tells its progress up to the last job', async () => {
+    await withCrew(threads, async (crew) => {
+      const told: number[] = [];
+      const watch = { onProgress: (done: number) => void told.push(done) };
+      await crew.run(tasks, 'linger', { out: shared(2), ms: 8 }, 60, watch);
+      expect(told.length).toBeGreaterThan(1);
+      expect(told).toEqual([...told].sort((a, b) => a - b));
+      expect(told.at(-1)).toBe(60);
+    });
+  });
+
+  it('begins no further job once the signal is aborted', async () => {
+    await withCrew(threads, async (crew) => {
+      const control = new AbortController();
+      const watch = { signal: control.signal, onProgress: () => control.abort() };
+      const round = crew.run(tasks, 'linger', { out: shared(2), ms: 5 }, 1e6, watch);
+      await expect(round).rejects.toMatchObject({ code: 'interrupted' });
+      const late = crew.run(tasks, 'linger', { out: shared(2), ms: 5 }, 1e6, watch);
+      await expect(late).rejects.toMatchObject({ code: 'interrupted' });
+      const out = shared(10);
+      await crew.run(tasks, 'square', { out }, 10);
+      expect(out[9]).toBe(81);
+    });
+  });
+
+  it('hands on what its watcher throws', async () => {
+    await withCrew(threads, async (crew) => {
+      const watch = {
+        onProgress: () => {
+          throw new Error('enough');
+        },
+      };
+      const round = crew.run(tasks, 'linger', { out: shared(2), ms: 5 }, 1e6, watch);
+      await expect(round).rejects.toThrow('enough');
+    });
+  });
+
   it('runs rounds that are asked for at once', async () => {
     await withCrew(threads, async (crew) => {
       const outs = [10, 20, 30].map(shared);
@@ -127,6 +195,14 @@ describe.each([1, 2, 3, 7])('a crew of %i', (threads) => {
 });
 
 describe('a crew of workers', () => {
+  it('does one round after the other in each worker', async () => {
+    await withCrew(2, async (crew) => {
+      const out = shared(2);
+      await Promise.all([1, 2, 3].map(() => crew.run(tasks, 'linger', { out, ms: 10 }, 1)));
+      expect(out[1]).toBe(1); // never two at once
+    });
+  });
+
   it('stops the others when one task has failed', async () => {
     await withCrew(2, async (crew) => {
       await expect(crew.run(tasks, 'fail', { at: 3 }, 1e9)).rejects.toThrow(/job \d has gone/);

@@ -1,5 +1,5 @@
 /** Many snapshots over workers: order, errors, and the same figures as one by one. */
-import { mkdtemp, rm, writeFile } from 'node:fs/promises';
+import { mkdtemp, readFile, rm, writeFile } from 'node:fs/promises';
 import { tmpdir } from 'node:os';
 import { join } from 'node:path';
 import { afterAll, beforeAll, expect, it } from 'vitest';
@@ -78,4 +78,40 @@ it('gives a bad file its error in its place, as if it were read alone', async ()
     expect(outcomes[1].error?.name).toBe('InputError');
     expect(outcomes[1].error?.remedy).toMatch(/--layout/);
   }
+});
+
+it('says the same of a bad file whoever reads it', async () => {
+  const put = async (name: string, bytes: Uint8Array | string) => {
+    const path = join(folder, name);
+    await writeFile(path, bytes);
+    return path;
+  };
+  const nan = Buffer.alloc(112, 1);
+  nan.writeDoubleLE(NaN, 64);
+  const whole = await readFile(join(import.meta.dirname, '../../fixtures/arrow/polars-lz4.arrow'));
+  const bad = [
+    await put('empty.bin', ''),
+    await put('nan.bin', nan),
+    await put('cut.arrow', whole.subarray(0, 900)),
+    await put('broken.arrow', Buffer.from(whole).fill(7, 300, 700)),
+    await put('none.arrows', 'no stream'),
+    await put('zeros.bin', Buffer.alloc(56 * 1000)),
+  ];
+  const errorsOf = async (threads: 1 | 2) =>
+    (await outcomesOf([paths[0], ...bad], threads)).map(({ error }) =>
+      error === null ? null : [error.name, error.code, error.message, error.remedy],
+    );
+  const alone = await errorsOf(1);
+  expect(alone.filter((error) => error !== null)).toHaveLength(bad.length);
+  expect(await errorsOf(2)).toEqual(alone);
+});
+
+it('ends well when nobody wants the rest', async () => {
+  const many = Array.from({ length: 5 }, () => paths).flat();
+  for await (const { file } of await measureFiles(many, {}, crew)) {
+    expect(file).toBe(paths[0]);
+    break;
+  }
+  const again = await outcomesOf(paths.slice(0, 3), 2);
+  expect(again.map(({ error }) => error)).toEqual([null, null, null]);
 });
