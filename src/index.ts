@@ -162,10 +162,15 @@ export async function averageBalance(records: readonly MeasureRecord[]): Promise
 /**
  * Reads a snapshot, raw or Arrow, into shared memory and screens its values.
  * @param path - a file, or `-` for an Arrow stream on standard input
+ * @param crew - workers that load a large file together; without it the calling thread does
  * @throws InputError, UsageError, InterruptedError
  */
-export async function readSnapshot(path: string, options: ReadOptions = {}): Promise<Particles> {
-  return (await import('./snapshot/read.ts')).readSnapshot(path, options);
+export async function readSnapshot(
+  path: string,
+  options: ReadOptions = {},
+  crew?: Crew,
+): Promise<Particles> {
+  return (await import('./snapshot/read.ts')).readSnapshot(path, options, crew);
 }
 
 /** Says what is in a snapshot and reads no more of it than that takes; errors as {@link readSnapshot}. */
