@@ -17,6 +17,7 @@ import type { BodyColumns } from './octree/build.ts';
 import type { ForceOptions, Forces } from './octree/forces.ts';
 import { defaultThreads, startCrew, type Crew } from './parallel/crew.ts';
 import type { Particles } from './snapshot/particles.ts';
+import type { Units } from './snapshot/ownUnits.ts';
 import type { FieldName, ReadOptions, SnapshotDescription } from './snapshot/reading.ts';
 import type { AveragedBalance } from './survey/average.ts';
 import type { MakeSnapshotOptions } from './survey/make.ts';
@@ -35,6 +36,7 @@ export {
 } from './errors.ts';
 export { defaultThreads, startCrew, type Crew } from './parallel/crew.ts';
 export { UNIT_SYSTEMS, type Dimension, type UnitName, type UnitSystem } from './snapshot/units.ts';
+export type { Units, UnitsDefinition } from './snapshot/ownUnits.ts';
 export { unitText, yearsPerTimeUnit } from './snapshot/unitText.ts';
 export { findQuantity, QUANTITIES, type Quantity } from './dynamics/registry.ts';
 export type {
@@ -47,6 +49,7 @@ export type {
   Setting,
   SettingOrigin,
   SofteningSetting,
+  UnitsSetting,
   Vector,
 } from './dynamics/record.ts';
 export type { MeasureOptions } from './dynamics/settings.ts';
@@ -135,7 +138,11 @@ export async function measureSnapshot(
 ): Promise<MeasureRecord> {
   const { onStage, ...measurement } = options;
   const { measureParticles } = await import('./dynamics/measure.ts');
-  return measureParticles(particles, measurement, crew, { onStage });
+  const settled =
+    measurement.units === undefined
+      ? measurement
+      : { ...measurement, units: await loadUnits(measurement.units) };
+  return measureParticles(particles, settled, crew, { onStage });
 }
 
 /**
@@ -187,6 +194,14 @@ export async function describeSnapshot(
  */
 export async function findSnapshots(paths: readonly string[]): Promise<string[]> {
   return (await import('./snapshot/series.ts')).expandPaths(paths);
+}
+
+/**
+ * Reads a file of units if `units` names one (it ends in `.json`); names and sizes pass as they are.
+ * @throws InputError `input.units`, and those of opening a file
+ */
+export async function loadUnits(units: Units): Promise<Units> {
+  return (await import('./snapshot/ownUnits.ts')).loadUnits(units);
 }
 
 /** Parses `name=column,…` for {@link ReadOptions.columns}. @throws UsageError */

@@ -1,6 +1,7 @@
 /** `settlemark measure`: one record a snapshot. */
 import {
   findSnapshots,
+  loadUnits,
   measureFiles,
   parseColumns,
   type CentreMethod,
@@ -45,6 +46,7 @@ export async function measure(
   const { layout, columns, threads, format: asked, out, quiet = false, ...measurement } = options;
   const survey: SurveyOptions = {
     ...measurement,
+    ...(options.units !== undefined && { units: await loadUnits(options.units) }),
     read: {
       ...(layout !== undefined && { layout }),
       ...(columns !== undefined && { columns: await parseColumns(columns) }),

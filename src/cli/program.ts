@@ -80,7 +80,7 @@ function reading(command: Command): Command {
 
 function measuring(command: Command): Command {
   return command
-    .option('--units <name>', 'unit system: natural, kpc-kms-msun, ...; sets G')
+    .option('--units <name|file>', 'unit system: natural, kpc-kms-msun, ..., or FILE.json; sets G')
     .option('--gravity <G>', 'constant of gravitation', numberOf('--gravity'))
     .option('--softening <length>', 'Plummer-equivalent length', numberOf('--softening'))
     .addOption(kernel())
@@ -121,7 +121,7 @@ function making(command: Command): Command {
     .option('--velocity <vx,vy,vz>', 'added to all velocities', vectorOf('--velocity'))
     .option('--scale-radius <a>', 'scale radius of the model (1)', numberOf('--scale-radius'))
     .option('--mass <M>', 'mass of the model before any cut (1)', numberOf('--mass'))
-    .option('--units <name>', 'unit system: natural, pc-kms-msun, ...; sets G')
+    .option('--units <name|file>', 'unit system: natural, pc-kms-msun, ..., or FILE.json; sets G')
     .option('--gravity <G>', 'constant of gravitation (1)', numberOf('--gravity'))
     .option('--softening <length>', 'Plummer-equivalent, for scaling', numberOf('--softening'))
     .addOption(kernel())

@@ -36,7 +36,8 @@ export function recordTable(record: MeasureRecord, paint: Paint = NO_PAINT): str
 
 function unitSystemOf(record: MeasureRecord): UnitSystem {
   const known = UNIT_SYSTEMS as Readonly<Record<string, UnitSystem>>;
-  const name = record.settings.units.value;
+  const { value: name, system } = record.settings.units;
+  if (system !== undefined) return { name: 'own', ...system };
   return Object.hasOwn(known, name) ? known[name] : UNIT_SYSTEMS.natural;
 }
 

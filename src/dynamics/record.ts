@@ -6,6 +6,7 @@
  */
 import type { SofteningKernel } from '../octree/softening.ts';
 import type { Remark } from '../snapshot/particles.ts';
+import type { UnitSystem } from '../snapshot/units.ts';
 
 /** Version of the record's form; grows only when a key changes its meaning. */
 export const RECORD_VERSION = 1;
@@ -16,6 +17,11 @@ export type SettingOrigin = 'option' | 'run file' | 'snapshot' | 'default';
 export interface Setting<T> {
   readonly value: T;
   readonly from: SettingOrigin;
+}
+
+/** A unit system; one of the user's own with its symbols, its G and, where stated, its sizes in SI. */
+export interface UnitsSetting extends Setting<string> {
+  readonly system?: Omit<UnitSystem, 'name'>;
 }
 
 export type CentreMethod = 'density' | 'shrinking' | 'mass' | 'potential';
@@ -30,7 +36,7 @@ export interface SofteningSetting {
 
 export interface RecordSettings {
   readonly gravity: Setting<number>;
-  readonly units: Setting<string>;
+  readonly units: UnitsSetting;
   readonly softening: Setting<SofteningSetting>;
   readonly coulombFactor: Setting<number>;
   readonly error: Setting<number>;

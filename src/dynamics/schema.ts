@@ -21,6 +21,20 @@ export async function recordSchema(): Promise<ZodType> {
     .describe('where the value came from');
   const setting = (value: ZodType, text: string) =>
     z.object({ value, from: origin }).describe(text);
+  const ownSystem = z
+    .object({
+      ...{ mass: z.string(), length: z.string(), velocity: z.string(), time: z.string() },
+      gravity: z.number().positive().describe('G in these units'),
+      si: z
+        .object({
+          length: z.number().positive(),
+          mass: z.number().positive(),
+          velocity: z.number().positive(),
+        })
+        .optional()
+        .describe('sizes of the units in m, kg and m/s'),
+    })
+    .describe('symbols and sizes of own units; only where value is own');
   const centreMethod = z.enum(['density', 'shrinking', 'mass', 'potential']);
 
   const settings = z.object({
@@ -28,7 +42,15 @@ export async function recordSchema(): Promise<ZodType> {
       z.number().positive(),
       'constant of gravitation G [length³ mass⁻¹ time⁻²] that was used',
     ),
-    units: setting(z.string(), 'name of the unit system'),
+    units: z
+      .object({
+        value: z
+          .string()
+          .describe('name of the unit system; own if it is none of the built-in ones'),
+        from: origin,
+        system: ownSystem.optional(),
+      })
+      .describe('unit system'),
     softening: setting(
       z.object({
         length: atLeast0('Plummer-equivalent length [length]; 0 without softening'),

@@ -2,13 +2,20 @@
 import { UsageError } from '../errors.ts';
 import { SPLINE_SUPPORT, type SofteningKernel } from '../octree/softening.ts';
 import type { Particles } from '../snapshot/particles.ts';
-import { UNIT_SYSTEMS, unitSystemNamed, type UnitSystem } from '../snapshot/units.ts';
-import type { CentreMethod, RecordSettings, Setting, SettingOrigin } from './record.ts';
+import { unitSystemOf, type Units } from '../snapshot/ownUnits.ts';
+import { UNIT_SYSTEMS, type UnitSystem } from '../snapshot/units.ts';
+import type {
+  CentreMethod,
+  RecordSettings,
+  Setting,
+  SettingOrigin,
+  UnitsSetting,
+} from './record.ts';
 
 /** What the user may set; everything is optional. */
 export interface MeasureOptions {
-  /** Name of a unit system; sets G unless `gravity` is given at the same level. */
-  readonly units?: string;
+  /** Name of a unit system, or sizes of your own; sets G unless `gravity` is given at the same level. */
+  readonly units?: Units;
   readonly gravity?: number;
   /** Plummer-equivalent softening length [length]. */
   readonly softening?: number;
@@ -23,6 +30,8 @@ export interface MeasureOptions {
   readonly fractions?: readonly number[];
   /** What to do with bodies at one point without softening. */
   readonly coincident?: 'leave-out' | 'refuse';
+  /** Which of these options a run file decided; all others count as stated by the caller. */
+  readonly fromRunFile?: readonly (keyof MeasureOptions)[];
 }
 
 export const DEFAULT_ERROR = 1e-5;
@@ -39,59 +48,92 @@ const GRAVITY_CLASH = 1e-4;
  */
 export function settle(options: MeasureOptions, particles: Particles): RecordSettings {
   const { gravity, units } = settleGravity(options, particles);
-  const fractions = settleFractions(options.fractions);
+  const fractions = settleFractions(options);
   return {
     gravity,
     units,
     softening: settleSoftening(options, particles),
-    coulombFactor: fromOption(
+    coulombFactor: decide(
+      options,
+      'coulombFactor',
       positive('--coulomb-factor', options.coulombFactor),
       DEFAULT_COULOMB_FACTOR,
     ),
-    error: fromOption(inRange('--error', options.error, 1e-15, 1), DEFAULT_ERROR),
-    centre: fromOption(options.centre, 'density'),
+    error: decide(options, 'error', inRange('--error', options.error, 1e-15, 1), DEFAULT_ERROR),
+    centre: decide(options, 'centre', options.centre, 'density'),
     fractions,
-    exact: fromOption(options.exact, false),
+    exact: decide(options, 'exact', options.exact, false),
   };
 }
 
-function fromOption<T>(value: T | undefined, fallback: T): Setting<T> {
-  return value === undefined ? { value: fallback, from: 'default' } : { value, from: 'option' };
+function decide<T>(
+  options: MeasureOptions,
+  key: keyof MeasureOptions,
+  value: T | undefined,
+  fallback: T,
+): Setting<T> {
+  return value === undefined
+    ? { value: fallback, from: 'default' }
+    : { value, from: originOf(options, key) };
+}
+
+/** Who stated an option that is there. */
+function originOf(options: MeasureOptions, key: keyof MeasureOptions): SettingOrigin {
+  return options.fromRunFile?.includes(key) === true ? 'run file' : 'option';
 }
 
 function settleGravity(
   options: MeasureOptions,
   particles: Particles,
-): { gravity: Setting<number>; units: Setting<string> } {
-  const stated = positive('--gravity', options.gravity);
-  const named = options.units === undefined ? undefined : unitSystemNamed(options.units);
+): { gravity: Setting<number>; units: UnitsSetting } {
+  const gravity = positive('--gravity', options.gravity) ?? null;
+  const units = options.units === undefined ? null : unitSystemOf(options.units);
+  const stated = (from: SettingOrigin) => ({
+    units: units !== null && originOf(options, 'units') === from ? units : null,
+    gravity: gravity !== null && originOf(options, 'gravity') === from ? gravity : null,
+    from,
+  });
   const levels: { units: UnitSystem | null; gravity: number | null; from: SettingOrigin }[] = [
-    { units: named ?? null, gravity: stated ?? null, from: 'option' },
+    stated('option'),
+    stated('run file'),
     { units: particles.units, gravity: particles.gravity, from: 'snapshot' },
   ];
-  for (const { units, gravity, from } of levels) {
-    if (units && gravity !== null && units.name !== 'natural' && units.name !== 'own') {
-      const clash = Math.abs(gravity / units.gravity - 1);
-      if (clash > GRAVITY_CLASH) {
-        throw new UsageError(
-          'usage.gravityClash',
-          `${from === 'option' ? '' : `${particles.origin.file}: `}units ${units.name} mean G = ${units.gravity}, but G = ${gravity} is stated with them`,
-          'state the one or the other, or a G that agrees with the units',
-        );
-      }
-    }
+  for (const level of levels) {
+    const place = level.from === 'snapshot' ? particles.origin.file : level.from;
+    refuseClash(level.from === 'option' ? '' : `${place}: `, level.units, level.gravity);
   }
   const unitsLevel = levels.find((level) => level.units !== null);
   // Units given at a higher level than a number for G speak last: they set G.
   const gravityLevel = levels.find((level) => level.gravity !== null || level.units !== null);
   const system = unitsLevel?.units ?? UNIT_SYSTEMS.natural;
+  const { name, ...own } = system;
   return {
-    units: { value: system.name, from: unitsLevel?.from ?? 'default' },
+    units: {
+      value: name,
+      from: unitsLevel?.from ?? 'default',
+      ...(name === 'own' && { system: own }),
+    },
     gravity: {
       value: gravityLevel?.gravity ?? gravityLevel?.units?.gravity ?? system.gravity,
       from: gravityLevel?.from ?? 'default',
     },
   };
+}
+
+/**
+ * Refuses units and a G that contradict each other.
+ * @param place - begins the message: file and place, or nothing for the command line
+ * @throws UsageError `usage.gravityClash`
+ */
+export function refuseClash(place: string, units: UnitSystem | null, gravity: number | null): void {
+  // `natural` says nothing about G but that it is 1 if nobody states it.
+  if (units === null || gravity === null || units.name === 'natural') return;
+  if (Math.abs(gravity / units.gravity - 1) <= GRAVITY_CLASH) return;
+  throw new UsageError(
+    'usage.gravityClash',
+    `${place}units ${units.name === 'own' ? 'of your own' : units.name} mean G = ${units.gravity}, but G = ${gravity} is stated with them`,
+    'state the one or the other, or a G that agrees with the units',
+  );
 }
 
 function settleSoftening(
@@ -108,7 +150,7 @@ function settleSoftening(
   }
   const stated = options.softening !== undefined || options.softeningKernel !== undefined;
   const from: SettingOrigin = stated
-    ? 'option'
+    ? originOf(options, options.softening !== undefined ? 'softening' : 'softeningKernel')
     : particles.softening !== null
       ? 'snapshot'
       : 'default';
@@ -125,7 +167,8 @@ function settleSoftening(
   return { value: { length, support, kernel }, from };
 }
 
-function settleFractions(asked: readonly number[] | undefined): RecordSettings['fractions'] {
+function settleFractions(options: MeasureOptions): RecordSettings['fractions'] {
+  const asked = options.fractions;
   for (const f of asked ?? []) {
     if (!(f > 0 && f < 1)) {
       throw new UsageError(
@@ -136,7 +179,7 @@ function settleFractions(asked: readonly number[] | undefined): RecordSettings['
     }
   }
   const value = [...new Set([...(asked ?? DEFAULT_FRACTIONS), 0.1, 0.5])].sort((a, b) => a - b);
-  return { value, from: asked ? 'option' : 'default' };
+  return { value, from: asked ? originOf(options, 'fractions') : 'default' };
 }
 
 function positive(option: string, value: number | undefined): number | undefined {

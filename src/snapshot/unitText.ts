@@ -1,5 +1,5 @@
 /** A dimension in the symbols of a unit system, for print: energy in `pc-kms-msun` is `Msun (km/s)²`. */
-import { PARSEC_PER_KMS_IN_MYR, type Dimension, type UnitSystem } from './units.ts';
+import { JULIAN_YEAR, PARSEC_PER_KMS_IN_MYR, type Dimension, type UnitSystem } from './units.ts';
 
 const SUPERSCRIPTS = ['⁰', '¹', '²', '³', '⁴', '⁵', '⁶', '⁷', '⁸', '⁹'];
 
@@ -32,9 +32,12 @@ export function unitText(dimension: Dimension, units: UnitSystem): string {
         [units.length, length],
         [units.time, time],
       ];
-  return factors
-    .map(([symbol, power]) => raise(symbol, power))
-    .filter(Boolean)
+  const used = factors.filter(([, power]) => power !== 0);
+  // `1e10 Msun` is clear alone; beside other factors its number would seem to belong to all.
+  const apart = (symbol: string) =>
+    used.length > 1 && symbol.includes(' ') ? `(${symbol})` : symbol;
+  return used
+    .map(([symbol, power]) => raise(power === 1 ? apart(symbol) : symbol, power))
     .join(' ');
 }
 
@@ -45,7 +48,7 @@ function raise(symbol: string, power: number): string {
     .split('')
     .map((digit) => SUPERSCRIPTS[Number(digit)] ?? digit)
     .join('');
-  const base = symbol.includes('/') ? `(${symbol})` : symbol;
+  const base = /[/ ]/.test(symbol) ? `(${symbol})` : symbol;
   return `${base}${power < 0 ? '⁻' : ''}${exponent}`;
 }
 
@@ -54,6 +57,9 @@ function raise(symbol: string, power: number): string {
  * a year or has no length.
  */
 export function yearsPerTimeUnit(units: UnitSystem): number | null {
+  if (units.si !== undefined && units.time !== 'yr') {
+    return units.si.length / units.si.velocity / JULIAN_YEAR;
+  }
   if (units.name === 'pc-kms-msun') return PARSEC_PER_KMS_IN_MYR * 1e6;
   if (units.name === 'kpc-kms-msun') return PARSEC_PER_KMS_IN_MYR * 1e9;
   return null;

@@ -30,12 +30,20 @@ export interface UnitSystem {
   readonly time: string;
   /** G in [length · velocity² / mass] of this system. */
   readonly gravity: number;
+  /** How large the units of an own system are, in m, kg and m/s; absent if only symbols are known. */
+  readonly si?: { readonly length: number; readonly mass: number; readonly velocity: number };
 }
 
-const GM_SUN = 1.3271244e20;
-const AU = 149597870700;
-const PARSEC = (648000 / Math.PI) * AU;
-const JULIAN_YEAR = 365.25 * 86400;
+/** GM of the Sun [m³ s⁻²]. */
+export const GM_SUN = 1.3271244e20;
+/** Astronomical unit [m]. */
+export const AU = 149597870700;
+/** Parsec [m]. */
+export const PARSEC = (648000 / Math.PI) * AU;
+/** Julian year [s]. */
+export const JULIAN_YEAR = 365.25 * 86400;
+/** G in SI [m³ kg⁻¹ s⁻²]. */
+export const GRAVITY_SI = 6.6743e-11;
 
 /** G in pc (km/s)² / Msun. */
 const G_PC_KMS = GM_SUN / (PARSEC * 1e6);
@@ -67,7 +75,7 @@ export const UNIT_SYSTEMS: Readonly<Record<Exclude<UnitName, 'own'>, UnitSystem>
     time: 'yr',
     gravity: (GM_SUN * JULIAN_YEAR * JULIAN_YEAR) / (AU * AU * AU),
   },
-  si: { name: 'si', mass: 'kg', length: 'm', velocity: 'm/s', time: 's', gravity: 6.6743e-11 },
+  si: { name: 'si', mass: 'kg', length: 'm', velocity: 'm/s', time: 's', gravity: GRAVITY_SI },
 };
 
 /** Length of pc/(km/s), in megayears of 10⁶ Julian years; kpc/(km/s) is the same number of gigayears. */
@@ -83,6 +91,6 @@ export function unitSystemNamed(name: string): UnitSystem {
   throw new UsageError(
     'usage.units',
     `--units ${name} is not a known unit system`,
-    `known are ${Object.keys(known).join(', ')}`,
+    `known are ${Object.keys(known).join(', ')}; a file with units of your own must end in .json`,
   );
 }

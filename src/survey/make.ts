@@ -1,5 +1,6 @@
 /** A model snapshot in its own frame, scaled to a virial ratio if wanted, and set on its way. */
 import { CompensatedSum } from '../numerics/compensated.ts';
+import { refuseClash } from '../dynamics/settings.ts';
 import { UsageError } from '../errors.ts';
 import { makeModel, type MakeOptions } from '../models/make.ts';
 import { recentre, scaleVelocities, shift, virialScaling } from '../models/scaling.ts';
@@ -7,11 +8,11 @@ import { sumForces } from '../octree/forces.ts';
 import type { SofteningKernel } from '../octree/softening.ts';
 import type { Crew } from '../parallel/crew.ts';
 import type { Particles } from '../snapshot/particles.ts';
-import { unitSystemNamed } from '../snapshot/units.ts';
+import { loadUnits, unitSystemOf, type Units } from '../snapshot/ownUnits.ts';
 
 export interface MakeSnapshotOptions extends MakeOptions {
-  /** Name of a unit system; sets G unless `gravity` is given. */
-  readonly units?: string;
+  /** Name of a unit system, a file of units (`.json`), or sizes; sets G unless `gravity` is given. */
+  readonly units?: Units;
   /** Wanted 2T/|W| with the softening given; without it nothing is scaled. */
   readonly virialRatio?: number;
   /** Plummer-equivalent length of the softening the bodies will be run with [length]. */
@@ -28,12 +29,13 @@ const ERROR_OF_SCALING = 1e-6;
  * and bulk velocity are added after that.
  *
  * @returns particles that state G, the units if named, and the softening if it is Plummer's
- * @throws UsageError of `makeModel`, `usage.units`, `usage.softening`, `usage.softeningKernel`,
- * `usage.virialRatio`; UnanswerableError `unanswerable.virialScaling`
+ * @throws UsageError of `makeModel`, `usage.units`, `usage.gravityClash`, `usage.softening`, `usage.softeningKernel`,
+ * `usage.virialRatio`; InputError of a file of units; UnanswerableError `unanswerable.virialScaling`
  */
 export async function makeSnapshot(options: MakeSnapshotOptions, crew: Crew): Promise<Particles> {
-  const { units: name, virialRatio, softening: length = 0, offset, velocity, ...model } = options;
-  const units = name === undefined ? null : unitSystemNamed(name);
+  const { units: stated, virialRatio, softening: length = 0, offset, velocity, ...model } = options;
+  const units = stated === undefined ? null : unitSystemOf(await loadUnits(stated));
+  refuseClash('', units, options.gravity ?? null);
   const gravity = options.gravity ?? units?.gravity ?? 1;
   const kernel = options.softeningKernel ?? (length > 0 ? 'plummer' : 'none');
   requireSoftening(length, kernel);

@@ -4,6 +4,7 @@ import { measureParticles } from '../dynamics/measure.ts';
 import type { MeasureRecord } from '../dynamics/record.ts';
 import type { MeasureOptions } from '../dynamics/settings.ts';
 import type { Crew } from '../parallel/crew.ts';
+import { loadUnits } from '../snapshot/ownUnits.ts';
 import { readSnapshot } from '../snapshot/read.ts';
 import type { ReadOptions } from '../snapshot/reading.ts';
 import { requireMemory } from './memory.ts';
@@ -40,6 +41,8 @@ export async function measureFile(
     await requireMemory(path, options.read ?? {}, (options.softening ?? 0) > 0);
     const particles = await readSnapshot(path, read, crew);
     const readSeconds = (performance.now() - start) / 1000;
-    return measureParticles(particles, options, crew, { readSeconds, onStage: options.onStage });
+    const settled: MeasureOptions =
+      options.units === undefined ? options : { ...options, units: await loadUnits(options.units) };
+    return measureParticles(particles, settled, crew, { readSeconds, onStage: options.onStage });
   });
 }

@@ -322,6 +322,8 @@ describe('settings', () => {
     [{ gravity: 0 }, 'usage.range', '--gravity 0'],
     [{ gravity: NaN }, 'usage.range', 'NaN'],
     [{ units: 'kpc-kms-msun', gravity: 1 }, 'usage.gravityClash', 'kpc-kms-msun'],
+    [{ units: { length: 1, mass: 1, velocity: 1 }, gravity: 1 }, 'usage.gravityClash', 'your own'],
+    [{ units: { length: 1, mass: 'x', velocity: 1 } }, 'usage.units', 'units.mass'],
     [{ softening: -1 }, 'usage.softening', '-1'],
     [{ softening: Infinity }, 'usage.softening', 'Infinity'],
     [{ softeningKernel: 'spline' as const }, 'usage.softeningKernel', 'spline'],

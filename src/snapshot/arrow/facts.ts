@@ -2,6 +2,7 @@
 import { InputError } from '../../errors.ts';
 import { nearestName } from '../../numerics/nearest.ts';
 import type { Frame } from '../particles.ts';
+import { checkUnits, ownUnits, UNITS_KEYS, type RefuseUnits } from '../ownUnits.ts';
 import { UNIT_SYSTEMS, type UnitSystem } from '../units.ts';
 
 export interface SnapshotFacts {
@@ -27,7 +28,7 @@ const OWN_UNIT_TEXTS = ['mass', 'length', 'velocity', 'time'] as const;
 /**
  * Reads the facts; what is not there is null, and the frame is physical unless a scale factor says
  * otherwise. `settlemark.units` is the name of a system, or an object in JSON with the symbols
- * `mass`, `length`, `velocity`, `time` and the number `gravity`.
+ * `mass`, `length`, `velocity`, `time` and the number `gravity`; or sizes as in a file of units.
  * @throws InputError `input.metadata` (not a number, or out of its domain), `input.units`
  */
 export function readFacts(metadata: ReadonlyMap<string, string>, file: string): SnapshotFacts {
@@ -76,9 +77,9 @@ function required(hubbleRate: number | null, file: string): number {
 
 function readUnits(text: string | undefined, file: string): UnitSystem | null {
   if (text === undefined) return null;
-  if (text in UNIT_SYSTEMS) return UNIT_SYSTEMS[text as keyof typeof UNIT_SYSTEMS];
+  if (Object.hasOwn(UNIT_SYSTEMS, text)) return UNIT_SYSTEMS[text as keyof typeof UNIT_SYSTEMS];
   const names = Object.keys(UNIT_SYSTEMS);
-  const own = ownUnits(text);
+  const own = statedUnits(text, file);
   if (own) return own;
   const nearest = nearestName(text, names);
   throw new InputError(
@@ -88,7 +89,7 @@ function readUnits(text: string | undefined, file: string): UnitSystem | null {
   );
 }
 
-function ownUnits(text: string): UnitSystem | null {
+function statedUnits(text: string, file: string): UnitSystem | null {
   let value: unknown;
   try {
     value = JSON.parse(text);
@@ -99,10 +100,31 @@ function ownUnits(text: string): UnitSystem | null {
   const given = value as Record<string, unknown>;
   const texts = OWN_UNIT_TEXTS.map((key) => given[key]);
   const { gravity } = given;
-  if (!texts.every((entry) => typeof entry === 'string')) return null;
-  if (typeof gravity !== 'number' || !(gravity > 0)) return null;
-  const [mass, length, velocity, time] = texts;
-  return { name: 'own', mass, length, velocity, time, gravity };
+  const areSymbols = texts.every((entry) => typeof entry === 'string');
+  // Four symbols say too much to be sizes, of which one follows from the others.
+  if (areSymbols && typeof gravity === 'number' && gravity > 0) {
+    const [mass, length, velocity, time] = texts;
+    const si = sizesOf(given['si']);
+    return { name: 'own', mass, length, velocity, time, gravity, ...(si && { si }) };
+  }
+  if (!UNITS_KEYS.some((key) => key in given)) return null;
+  const refuse: RefuseUnits = (key, found, remedy) => {
+    throw new InputError(
+      'input.units',
+      `${file}: the schema's metadata has ${KEY.units} = "${shortened(text)}": ${key === null ? '' : `${key}: `}${found}`,
+      remedy,
+    );
+  };
+  return ownUnits(checkUnits(value, refuse), refuse);
+}
+
+function sizesOf(value: unknown): UnitSystem['si'] {
+  if (typeof value !== 'object' || value === null) return undefined;
+  const { length, mass, velocity } = value as Record<string, unknown>;
+  const isSize = (size: unknown): size is number => typeof size === 'number' && size > 0;
+  return isSize(length) && isSize(mass) && isSize(velocity)
+    ? { length, mass, velocity }
+    : undefined;
 }
 
 /** The metadata that {@link readFacts} reads back; numbers keep all their digits. */

@@ -2,6 +2,8 @@
 import type { z } from 'zod';
 import { InputError } from '../../errors.ts';
 import { nearestName } from '../../numerics/nearest.ts';
+import { parseJson } from '../jsonText.ts';
+import { expectation, foundText, keyPath, lookUp, offer, type Issue } from '../schemaIssues.ts';
 import { isSkip, LAYOUT_KEYS, layoutSchema, type Layout } from './layout.ts';
 import { TYPE_BYTES } from './types.ts';
 
@@ -18,13 +20,14 @@ const NOT_YET: Readonly<Record<string, string>> = {
  * @throws InputError `input.layoutNotJson`, `input.layoutInvalid`, `input.layoutUnsupported`
  */
 export function parseLayout(text: string, file: string): Layout {
-  const json = text.replace(/^\uFEFF/, '');
-  let value: unknown;
-  try {
-    value = JSON.parse(json);
-  } catch (error) {
-    throw notJson(json, file, error);
-  }
+  const value = parseJson(text, (at, cause) => {
+    throw new InputError(
+      'input.layoutNotJson',
+      `${file}, line ${at.line}, column ${at.column}: expected JSON, found ${at.found}`,
+      'Correct the layout file there; JSON knows no comments and no comma after the last item.',
+      { cause },
+    );
+  });
   return checkLayout(value, file);
 }
 
@@ -48,60 +51,6 @@ export function checkLayout(value: unknown, file: string): Layout {
   return result.data;
 }
 
-function notJson(text: string, file: string, error: unknown): InputError {
-  const at = firstBadCharacter(text);
-  const before = text.slice(0, at);
-  const line = before.split('\n').length;
-  const column = before.length - before.lastIndexOf('\n');
-  return new InputError(
-    'input.layoutNotJson',
-    `${file}, line ${line}, column ${column}: expected JSON, found ${
-      at < text.length ? JSON.stringify(text[at]) : 'the end of the text'
-    }`,
-    'Correct the layout file there; JSON knows no comments and no comma after the last item.',
-    { cause: error },
-  );
-}
-
-/**
- * Index of the character at which the text stops being JSON. Not every message of the engine tells
- * the position, but whether a beginning of the text is only too short or already wrong it does.
- */
-function firstBadCharacter(text: string): number {
-  let good = 0;
-  let bad = text.length + 1;
-  while (bad - good > 1) {
-    const middle = (good + bad) >> 1;
-    if (isWrong(text.slice(0, middle))) bad = middle;
-    else good = middle;
-  }
-  return good;
-}
-
-function isWrong(beginning: string): boolean {
-  try {
-    JSON.parse(beginning);
-    return false;
-  } catch (error) {
-    const message = error instanceof Error ? error.message : '';
-    const position = /position (\d+)/.exec(message)?.[1];
-    return position === undefined
-      ? !message.includes('end of JSON')
-      : Number(position) < beginning.length;
-  }
-}
-
-/** `fields[0].type`, or `the layout` for the whole. */
-function keyPath(path: readonly PropertyKey[]): string {
-  if (path.length === 0) return 'the layout';
-  return path
-    .map((key) => (typeof key === 'number' ? `[${key}]` : `.${String(key)}`))
-    .join('')
-    .replace(/^\./, '');
-}
-
-type Issue = z.core.$ZodIssue;
-
 /** An item of `fields` matches one of two kinds: take the errors of the kind it was meant to be. */
 function unwrap(issue: Issue, value: unknown): Issue[] {
   if (issue.code !== 'invalid_union') return [issue];
@@ -109,15 +58,6 @@ function unwrap(issue: Issue, value: unknown): Issue[] {
   const isObject = typeof item === 'object' && item !== null;
   const branch = issue.errors[isObject && 'skip' in item ? 1 : 0] ?? [];
   return branch.map((inner) => ({ ...inner, path: [...issue.path, ...inner.path] }));
-}
-
-function lookUp(value: unknown, path: readonly PropertyKey[]): unknown {
-  let at = value;
-  for (const key of path) {
-    if (typeof at !== 'object' || at === null) return undefined;
-    at = (at as Record<PropertyKey, unknown>)[key];
-  }
-  return at;
 }
 
 function invalid(file: string, value: unknown, issues: readonly Issue[]): InputError {
@@ -128,10 +68,8 @@ function invalid(file: string, value: unknown, issues: readonly Issue[]): InputE
   const found = lookUp(value, issue.path);
   return new InputError(
     'input.layoutInvalid',
-    `${file}: ${keyPath(issue.path)}: found ${
-      found === undefined ? 'nothing' : shorten(JSON.stringify(found))
-    }; expected ${expectation(issue)}`,
-    offer(issue, found),
+    `${file}: ${keyPath(issue.path, 'the layout')}: found ${foundText(found)}; expected ${expectation(issue)}`,
+    offer(issue, found) ?? 'Correct the layout file there.',
   );
 }
 
@@ -142,43 +80,9 @@ function unknownKey(file: string, issue: z.core.$ZodIssueUnrecognizedKeys): Inpu
   const nearest = nearestName(key, known);
   return new InputError(
     'input.layoutInvalid',
-    `${file}: ${keyPath(issue.path)}: found the unknown key "${key}"; expected only ${known.join(', ')}`,
+    `${file}: ${keyPath(issue.path, 'the layout')}: found the unknown key "${key}"; expected only ${known.join(', ')}`,
     nearest === null ? 'Remove it.' : `Did you mean "${nearest}"?`,
   );
-}
-
-const KINDS: Readonly<Record<string, string>> = {
-  int: 'a whole number',
-  number: 'a number',
-  string: 'a text',
-  array: 'a list',
-  object: 'an object',
-};
-
-function expectation(issue: Issue): string {
-  if (issue.code === 'invalid_type') return KINDS[issue.expected] ?? `a ${issue.expected}`;
-  if (issue.code === 'invalid_value') {
-    return issue.values.map((one) => JSON.stringify(one)).join(' or ');
-  }
-  if (issue.code === 'too_small') {
-    if (issue.origin === 'array') return 'at least one item';
-    if (issue.origin === 'string') return 'a name';
-    return issue.inclusive ? `at least ${issue.minimum}` : `more than ${issue.minimum}`;
-  }
-  if (issue.code === 'too_big') return `at most ${issue.maximum}`;
-  return issue.message;
-}
-
-function offer(issue: Issue, found: unknown): string {
-  if (issue.code === 'invalid_value' && typeof found === 'string') {
-    const nearest = nearestName(found, issue.values.map(String));
-    if (nearest !== null) return `Did you mean "${nearest}"?`;
-  }
-  return 'Correct the layout file there.';
-}
-
-function shorten(text: string): string {
-  return text.length > 60 ? `${text.slice(0, 57)}...` : text;
 }
 
 const VECTORS: Readonly<Record<string, readonly string[]>> = {

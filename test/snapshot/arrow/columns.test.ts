@@ -8,6 +8,7 @@ import { InterruptedError } from '../../../src/errors.ts';
 import { readArrow, readArrowStream } from '../../../src/snapshot/arrow/read.ts';
 import { writeArrow } from '../../../src/snapshot/arrow/write.ts';
 import { readFacts, writeFacts } from '../../../src/snapshot/arrow/facts.ts';
+import { unitSystemOf } from '../../../src/snapshot/ownUnits.ts';
 import { expectInputError, inPieces, temporaryFolder } from './sample.ts';
 
 const folder = await temporaryFolder();
@@ -269,7 +270,19 @@ describe('facts in the metadata of the schema', () => {
     expect(code('scaleFactor', '0.5')).toMatch(/^input\.metadata.*hubbleRate/);
     expect(code('units', 'kpc')).toMatch(/^input\.units.*"kpc".*kpc-kms-msun/);
     expect(code('units', '{"mass":"u"}')).toMatch(/^input\.units/);
+    expect(code('units', 'toString')).toMatch(/^input\.units/);
+    const misspelt = '{"length":"kcp","mass":1,"velocity":1}';
+    expect(code('units', misspelt)).toMatch(/^input\.units: a\.arrow.*length: found "kcp"/);
     expect(code('time', '1e3')).toBe('none');
+  });
+
+  it('may be sizes of own units, and come back as they were read', () => {
+    const sizes = { length: 'au', mass: 2e30, time: '3 yr' };
+    const read = (text: string) => readFacts(new Map([['settlemark.units', text]]), 'a');
+    const first = read(JSON.stringify(sizes));
+    expect(first.units).toEqual(unitSystemOf(sizes));
+    const written = writeFacts(first).get('settlemark.units') ?? '';
+    expect(read(written).units).toEqual(first.units);
   });
 
   it('are written with all digits', () => {
