@@ -1,4 +1,4 @@
-import { appendFile, chmod, mkdir, truncate, writeFile } from 'node:fs/promises';
+import { appendFile, chmod, mkdir, truncate, unlink, utimes, writeFile } from 'node:fs/promises';
 import { join } from 'node:path';
 import { beforeEach, describe, expect, it, vi } from 'vitest';
 import type { Particles } from '../../../src/snapshot/particles.ts';
@@ -292,6 +292,24 @@ describe('which layout', () => {
         text: expect.stringContaining('(a.layout.json, b.layout.json)') as string,
       },
     ]);
+  });
+
+  it('sees a layout that comes later, or changes, in a folder that was at rest', async () => {
+    const path = await put(folder, 'larkhill.bin', bodies('little', 4));
+    const found = async (): Promise<string[]> =>
+      (await readRaw(path, {})).origin.remarks.map(({ code }) => code);
+    const long = new Date(Date.now() - 60_000);
+    await utimes(folder, long, long);
+    expect(await found()).toEqual([]);
+    expect(await found()).toEqual([]);
+    await putLayout(folder, { fields: VECTORS }, 'layout.json');
+    expect(await found()).toEqual(['layout.found']);
+    await utimes(folder, long, long);
+    expect(await found()).toEqual(['layout.found']);
+    await putLayout(folder, { fields: VECTORS, constants: { time: 3 } }, 'layout.json');
+    expect((await readRaw(path, {})).time).toBe(3);
+    await unlink(join(folder, 'layout.json'));
+    expect(await found()).toEqual([]);
   });
 
   it('says that a field is nearly named like one it knows', async () => {
