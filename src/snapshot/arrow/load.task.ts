@@ -6,6 +6,7 @@ import { codecNamed, decompress } from './codecs.ts';
 import { convertRows, isInPlace, type StoredColumn } from './convert.ts';
 import { damaged } from './damage.ts';
 import { BYTES_OF, type PlannedColumn } from './kinds.ts';
+import { PIECE_BYTES } from '../pieces.ts';
 import type { Piece } from './load.ts';
 
 export interface LoadRound {
@@ -23,20 +24,24 @@ export interface LoadRound {
 /** A job is a piece. @throws InputError `input.arrowDamaged`, `input.changed`, `input.unreadable` */
 export async function loadPieces(round: LoadRound, takeJob: TakeJob): Promise<void> {
   const { plan, batches, pieces } = round;
-  for (let job = takeJob(); job >= 0; job = takeJob()) {
-    const piece = pieces[job];
-    const { body, bodyLength } = batches[piece.batch];
-    if (piece.column !== null) {
-      await loadColumn(round, piece, piece.column, body);
-      continue;
-    }
-    // A small batch is read whole: one call instead of one a column.
-    await withScratch(bodyLength, async (bytes) => {
-      await readBody(body, bytes, 0);
-      for (let column = 0; column < plan.length; column++) {
-        await loadColumn(round, piece, column, bytes);
+  try {
+    for (let job = takeJob(); job >= 0; job = takeJob()) {
+      const piece = pieces[job];
+      const { body, bodyLength } = batches[piece.batch];
+      if (piece.column !== null) {
+        await loadColumn(round, piece, piece.column, body);
+        continue;
       }
-    });
+      // A small batch is read whole: one call instead of one a column.
+      await withScratch(bodyLength, async (bytes) => {
+        await readBody(body, bytes, 0);
+        for (let column = 0; column < plan.length; column++) {
+          await loadColumn(round, piece, column, bytes);
+        }
+      });
+    }
+  } finally {
+    spares = spares.filter(({ length }) => length <= KEPT_BYTES);
   }
 }
 
@@ -67,6 +72,8 @@ async function loadColumn(
       await readBody(body, packed, region.offset);
       convert(decompress(codec, packed, rows * rowBytes, round.file, place));
     });
+    // What a codec in native code gave is freed in a turn of the event loop, and not before.
+    if (rows * rowBytes > PIECE_BYTES) await new Promise((resolve) => setImmediate(resolve));
   } else if (isInPlace(column)) {
     // The bytes of the file are the bytes of the column.
     const bytes = new Uint8Array(targets[0].buffer, begin * rowBytes, rows * rowBytes);
@@ -79,7 +86,10 @@ async function loadColumn(
   }
 }
 
-const spares: Uint8Array[] = [];
+/** Larger rooms are kept for the time of a round only. */
+const KEPT_BYTES = 2 ** 24;
+
+let spares: Uint8Array[] = [];
 
 /** Runs `work` with `length` bytes, aligned to 8, that are used again: new memory costs more than reading. */
 async function withScratch(
