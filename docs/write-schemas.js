@@ -1,14 +1,16 @@
-// Writes what in docs/ is made from the code: the two JSON Schemas and the table of quantities.
+// Writes what in docs/ is made from the code: the JSON Schemas and the table of quantities.
 // Run by "npm run schemas", which builds dist/ first.
 import { readFile, writeFile } from 'node:fs/promises';
 import { quantityTable } from '../dist/dynamics/registryText.js';
 import { recordJsonSchema } from '../dist/dynamics/schema.js';
 import { layoutJsonSchema } from '../dist/snapshot/raw/layout.js';
+import { runFileJsonSchema } from '../dist/survey/runFileSchema.js';
 
 const at = (name) => new URL(name, import.meta.url);
 const asFile = (schema) => `${JSON.stringify(schema, null, 2)}\n`;
 
 await writeFile(at('layout.schema.json'), asFile(layoutJsonSchema()));
+await writeFile(at('run.schema.json'), asFile(runFileJsonSchema()));
 await writeFile(at('record.schema.json'), asFile(await recordJsonSchema()));
 
 const BEGIN = '<!-- quantities: made by npm run schemas -->';

@@ -23,6 +23,8 @@ import type { AveragedBalance } from './survey/average.ts';
 import type { MakeSnapshotOptions } from './survey/make.ts';
 import type { FileOutcome } from './survey/many.ts';
 import type { SurveyOptions } from './survey/measure.ts';
+import type { PreparedSnapshot } from './survey/prepare.ts';
+import type { RunFile } from './survey/runFile.ts';
 
 export {
   EXIT,
@@ -77,10 +79,12 @@ export type { AveragedBalance } from './survey/average.ts';
 export type { MakeSnapshotOptions } from './survey/make.ts';
 export type { FileOutcome } from './survey/many.ts';
 export type { Stage, SurveyOptions } from './survey/measure.ts';
+export type { PreparedSnapshot } from './survey/prepare.ts';
+export type { RunFile, RunSettings } from './survey/runFile.ts';
 
 /** Options of {@link measure}: those of the measurement, of the reader, and the number of threads. */
 export interface MeasureCall extends SurveyOptions {
-  /** Worker threads; as many as the machine offers if not given. */
+  /** Worker threads; if not given, as many as the run file says or the machine offers. */
   readonly threads?: number;
 }
 
@@ -93,38 +97,60 @@ export interface MeasureCall extends SurveyOptions {
  */
 export async function measure(path: string, options: MeasureCall = {}): Promise<MeasureRecord> {
   const { threads, ...survey } = options;
-  const crew = startCrew(threads ?? defaultThreads());
+  const [prepared] = await prepareSnapshots([path], survey);
+  const crew = startCrew(threads ?? prepared.threads ?? defaultThreads());
   const signal = options.read?.signal;
   const stop = (): void => void crew.close();
   signal?.addEventListener('abort', stop, { once: true });
   try {
-    return await measureFile(path, survey, crew);
+    return await measureFile(prepared, survey, crew);
   } finally {
     signal?.removeEventListener('abort', stop);
     await crew.close();
   }
 }
 
-/** Reads and measures one snapshot with a crew that the caller has started; errors as {@link measure}. */
+/**
+ * Reads and measures one snapshot with a crew that the caller has started; errors as {@link measure}.
+ * @param snapshot - a file, or one of {@link prepareSnapshots}, whose own options count then
+ */
 export async function measureFile(
-  path: string,
+  snapshot: string | PreparedSnapshot,
   options: SurveyOptions,
   crew: Crew,
 ): Promise<MeasureRecord> {
-  return (await import('./survey/measure.ts')).measureFile(path, options, crew);
+  return (await import('./survey/measure.ts')).measureFile(snapshot, options, crew);
+}
+
+/**
+ * Settles the options of snapshots before any is read: the caller's go before those of the run file
+ * `settlemark.json` in the folder of a snapshot (or of `options.runFile`).
+ * @throws UsageError for a wrong run file; InputError if it, or a file that it names, cannot be read
+ */
+export async function prepareSnapshots(
+  files: readonly string[],
+  options: SurveyOptions = {},
+): Promise<PreparedSnapshot[]> {
+  return (await import('./survey/prepare.ts')).prepareSnapshots(files, options);
+}
+
+/** Reads and checks a run file; errors as {@link prepareSnapshots}. */
+export async function readRunFile(path: string): Promise<RunFile> {
+  return (await import('./survey/runFile.ts')).readRunFile(path);
 }
 
 /**
  * Reads and measures many snapshots: small ones spread whole over the crew's workers, large ones
- * worked on by all together. Records and errors come in the order of the paths.
+ * worked on by all together. Records and errors come in the order given.
+ * @param snapshots - files, or snapshots of {@link prepareSnapshots}, whose own options count then
  * @returns an async iterator of outcomes, each with a record or the error that kept it from one
  */
 export async function measureFiles(
-  paths: readonly string[],
+  snapshots: readonly (string | PreparedSnapshot)[],
   options: SurveyOptions,
   crew: Crew,
 ): Promise<AsyncGenerator<FileOutcome>> {
-  return (await import('./survey/many.ts')).measureMany(paths, options, crew);
+  return (await import('./survey/many.ts')).measureMany(snapshots, options, crew);
 }
 
 /**

@@ -9,6 +9,7 @@ import type { Streams } from '../src/cli/streams.ts';
 import { parseLayout } from '../src/snapshot/raw/layout-check.ts';
 import { bodyBytes } from '../src/snapshot/raw/layout.ts';
 import { UNIT_SYSTEMS } from '../src/snapshot/units.ts';
+import { RUN_FILE_KEYS, runFileSchema } from '../src/survey/runFileSchema.ts';
 
 const ROOT = fileURLToPath(new URL('..', import.meta.url));
 const read = (name: string) => readFileSync(join(ROOT, name), 'utf8');
@@ -108,6 +109,23 @@ describe('layouts in the docs', () => {
     const bytes = layouts.map(({ text }) => bodyBytes(parseLayout(text, 'formats.md')));
     // sizeof of the C structure on a machine with 8-byte alignment of doubles, as compiled with gcc.
     expect(bytes).toContain(48);
+  });
+});
+
+describe('run files in the docs', () => {
+  const files = fencesOf('docs/runs.md').filter(
+    ({ language, text }) => language === 'json' && text.includes('"settlemark": "run/1"'),
+  );
+
+  it('are run files', () => {
+    expect(files.length).toBeGreaterThanOrEqual(1);
+    for (const { text } of files)
+      expect(runFileSchema.safeParse(JSON.parse(text)).error?.message).toBeUndefined();
+  });
+
+  it('have all their keys in the table', () => {
+    const page = read('docs/runs.md');
+    for (const key of RUN_FILE_KEYS) expect(page, key).toContain(`\`${key}\``);
   });
 });
 

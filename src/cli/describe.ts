@@ -2,6 +2,7 @@
 import {
   describeSnapshot,
   parseColumns,
+  prepareSnapshots,
   type ExitCode,
   type SnapshotDescription,
 } from '../index.ts';
@@ -17,6 +18,7 @@ import type { Streams } from './streams.ts';
 export interface DescribeOptions {
   readonly layout?: string;
   readonly columns?: string;
+  readonly runFile?: string | boolean;
   readonly format?: 'table' | 'json';
   readonly out?: string;
 }
@@ -32,13 +34,16 @@ export async function describe(
     ...(options.columns !== undefined && { columns: await parseColumns(options.columns) }),
     signal: streams.interrupt,
   };
+  const { runFile } = options;
+  const survey = { read, ...(runFile !== undefined && runFile !== true && { runFile }) };
   const format = formatOf(options.format, options.out);
   const paint = options.out === undefined ? paintFor(streams.stdout, streams.env) : NO_PAINT;
   await refuseOverwriting(options.out, files);
   return withOutput(options.out, streams, async (sink) => {
     const found: SnapshotDescription[] = [];
     const code = await eachPath(files, streams, async (file) => {
-      const description = await describeSnapshot(file, read);
+      const [prepared] = await prepareSnapshots([file], survey);
+      const description = await describeSnapshot(file, prepared.options.read);
       if (format === 'table') {
         await sink((found.length > 0 ? '\n' : '') + descriptionTable(description, paint));
       }

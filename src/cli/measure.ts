@@ -1,9 +1,9 @@
 /** `settlemark measure`: one record a snapshot. */
 import {
   findSnapshots,
-  loadUnits,
   measureFiles,
   parseColumns,
+  prepareSnapshots,
   type CentreMethod,
   type ExitCode,
   type MeasureRecord,
@@ -21,6 +21,8 @@ import { write, type Streams } from './streams.ts';
 export interface MeasureCommandOptions {
   readonly layout?: string;
   readonly columns?: string;
+  /** True is commander's word for an option that was not given. */
+  readonly runFile?: string | boolean;
   readonly units?: string;
   readonly gravity?: number;
   readonly softening?: number;
@@ -43,10 +45,10 @@ export async function measure(
   options: MeasureCommandOptions,
   streams: Streams,
 ): Promise<ExitCode> {
-  const { layout, columns, threads, format: asked, out, quiet = false, ...measurement } = options;
+  const { layout, columns, runFile, threads, format: asked, out, quiet = false, ...rest } = options;
   const survey: SurveyOptions = {
-    ...measurement,
-    ...(options.units !== undefined && { units: await loadUnits(options.units) }),
+    ...rest,
+    ...(runFile !== undefined && runFile !== true && { runFile }),
     read: {
       ...(layout !== undefined && { layout }),
       ...(columns !== undefined && { columns: await parseColumns(columns) }),
@@ -58,11 +60,13 @@ export async function measure(
     files.push(...(await findSnapshots([arg])));
   });
   await refuseOverwriting(out, files);
+  const snapshots = await prepareSnapshots(files, survey);
   const format = formatOf(asked, out);
   const isSeveral = args.length > 1 || files.length > 1;
   const remarksApart = !quiet && (format !== 'table' || out !== undefined);
 
-  return withCrew(threads, streams.interrupt, async (crew) => {
+  const asksFor = snapshots.find((snapshot) => snapshot.threads !== null)?.threads ?? undefined;
+  return withCrew(threads ?? asksFor, streams.interrupt, async (crew) => {
     const progress = startProgress(streams.stderr, quiet, crew);
     return withOutput(out, streams, async (sink) => {
       const records: MeasureRecord[] = [];
@@ -71,7 +75,7 @@ export async function measure(
       const name = () =>
         files.length > 1 ? `${begun + 1} of ${files.length}, ${files[begun]}` : files[0];
       const outcomes = await measureFiles(
-        files,
+        snapshots,
         { ...survey, onStage: (stage, fraction) => progress.stage(name(), stage, fraction) },
         crew,
       );

@@ -75,7 +75,9 @@ export function buildProgram(streams: Streams, done: (code: ExitCode) => void): 
 function reading(command: Command): Command {
   return command
     .option('--layout <file>', 'layout of a raw binary snapshot (JSON)')
-    .option('--columns <name=column,...>', 'which column of the file is meant by which name');
+    .option('--columns <name=column,...>', 'which column of the file is meant by which name')
+    .option('--run-file <file>', 'defaults of these options (settlemark.json in the folder)')
+    .option('--no-run-file', 'do not look for a run file');
 }
 
 function measuring(command: Command): Command {

@@ -57,7 +57,9 @@ function heading(record: MeasureRecord, paint: Paint): string {
       : `time ${withUnit(short(record.time, 8), unitText(TIME, unitSystemOf(record)))}`;
   const said = `units ${units.value} (${units.from}), G\u00a0=\u00a0${short(gravity.value, 9)} (${gravity.from})`;
   const facts = `${bodies(record.whole.particles)}, ${time}, ${said}, ${softened}`;
-  return `${paint.strong(shorten(record.file, PAGE_WIDTH))}\n${wrap(facts, '  ')}`;
+  const run =
+    record.runFile === null ? '' : `\n${wrap(`with the run file ${record.runFile}`, '  ')}`;
+  return `${paint.strong(shorten(record.file, PAGE_WIDTH))}\n${wrap(facts, '  ')}${run}`;
 }
 
 const TIME = { mass: 0, length: 0, time: 1 } as const;

@@ -20,6 +20,8 @@ const PAIRS_NAMED = 3;
 export interface MeasureContext {
   /** Seconds that reading took, for the engine's report. */
   readonly readSeconds?: number;
+  /** Run file whose defaults are among the options, for the record. */
+  readonly runFile?: string | null;
   readonly onStage?:
     ((stage: ForceStage | 'dynamics', fraction: number | null) => void) | undefined;
 }
@@ -120,6 +122,7 @@ export async function measureParticles(
     record: RECORD_VERSION,
     file,
     time: particles.time,
+    runFile: context.runFile ?? null,
     settings,
     frame: {
       centreOfMass: vector(frame.frame, 0),

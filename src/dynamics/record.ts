@@ -104,6 +104,8 @@ export interface MeasureRecord {
   readonly record: typeof RECORD_VERSION;
   readonly file: string;
   readonly time: number | null;
+  /** Run file whose defaults were used, or null. */
+  readonly runFile: string | null;
   readonly settings: RecordSettings;
   readonly frame: {
     readonly centreOfMass: Vector;

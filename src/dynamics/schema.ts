@@ -100,6 +100,7 @@ export async function recordSchema(): Promise<ZodType> {
     record: z.literal(RECORD_VERSION).describe('version of the form of the record'),
     file: z.string().describe('the snapshot as it was named; - for standard input'),
     time: z.number().nullable().describe('time of the snapshot [time]; null if it is not stated'),
+    runFile: z.string().nullable().describe('run file whose defaults were used; null without one'),
     settings: settings.describe('what was used, and where it came from'),
     frame: { centreMethod: centreMethod.describe('method of frame.centre that was used') },
   };

@@ -4,8 +4,9 @@ import { InputError, UnanswerableError, UsageError, type SettlemarkError } from 
 import type { Crew, TaskModule } from '../parallel/crew.ts';
 import { received } from '../parallel/protocol.ts';
 import { fileBytes } from '../snapshot/files.ts';
-import { measureFile, type SurveyOptions } from './measure.ts';
+import { measurePrepared, type SurveyOptions } from './measure.ts';
 import type * as MeasureTask from './measure.task.ts';
+import { prepareSnapshots, type PreparedSnapshot } from './prepare.ts';
 
 const TASK: TaskModule<typeof MeasureTask> = {
   url: new URL('./measure.task.js', import.meta.url),
@@ -22,32 +23,75 @@ export type FileOutcome =
   | { readonly file: string; readonly record: MeasureRecord; readonly error: null }
   | { readonly file: string; readonly record: null; readonly error: SettlemarkError };
 
+/** A snapshot that is ready to be measured, or the error of its run file. */
+type Entry = PreparedSnapshot | (FileOutcome & { readonly record: null });
+
 /**
- * Measures files and gives their outcomes in the order of the paths, as soon as that order allows.
- * The figures of a record do not depend on how the work was spread.
+ * Measures snapshots and gives their outcomes in the order of the paths, as soon as that order
+ * allows. The figures of a record do not depend on how the work was spread.
+ * @param snapshots - files, or prepared snapshots, whose own options count: of `options` only progress
+ *   and signal are used for these
  */
 export async function* measureMany(
-  paths: readonly string[],
+  snapshots: readonly (string | PreparedSnapshot)[],
   options: SurveyOptions,
   crew: Crew,
 ): AsyncGenerator<FileOutcome> {
-  let round = await beginRound(paths, 0, options, crew);
+  const entries = await prepareAll(snapshots, options);
+  let round = await beginRound(entries, 0, options, crew);
   try {
-    for (let at = 0; at < paths.length;) {
+    for (let at = 0; at < entries.length;) {
       if (round === null) {
-        yield await measureAlone(paths[at++], options, crew);
-        round = await beginRound(paths, at, options, crew);
+        const entry = entries[at++];
+        yield isFailed(entry) ? entry : await measureAlone(entry, options, crew);
+        round = await beginRound(entries, at, options, crew);
         continue;
       }
       const { files, outcomes } = round;
       at += files;
       // The next round waits at the workers, so that none of them waits for the last file of this one.
-      round = await beginRound(paths, at, options, crew);
+      round = await beginRound(entries, at, options, crew);
       yield* await outcomes;
     }
   } finally {
     await round?.outcomes.catch(() => undefined);
   }
+}
+
+/** Prepares what is a path; all at once if that goes well, else one by one, to tell which do not. */
+async function prepareAll(
+  snapshots: readonly (string | PreparedSnapshot)[],
+  options: SurveyOptions,
+): Promise<Entry[]> {
+  const paths = snapshots.filter((snapshot) => typeof snapshot === 'string');
+  let prepared: Iterator<Entry>;
+  try {
+    prepared = (await prepareSnapshots(paths, options)).values();
+  } catch (error) {
+    if (!isOfInput(error)) throw error;
+    const each = paths.map(async (file): Promise<Entry> => {
+      try {
+        return (await prepareSnapshots([file], options))[0];
+      } catch (reason) {
+        if (!isOfInput(reason)) throw reason;
+        return { file, record: null, error: reason };
+      }
+    });
+    prepared = (await Promise.all(each)).values();
+  }
+  return snapshots.map((snapshot) =>
+    typeof snapshot === 'string' ? (prepared.next().value as Entry) : snapshot,
+  );
+}
+
+function isFailed(entry: Entry): entry is Exclude<Entry, PreparedSnapshot> {
+  return 'error' in entry;
+}
+
+function isOfInput(error: unknown): error is SettlemarkError {
+  return (
+    error instanceof InputError || error instanceof UnanswerableError || error instanceof UsageError
+  );
 }
 
 interface SmallRound {
@@ -57,12 +101,12 @@ interface SmallRound {
 
 /** Gives small files from index `begin` on to the workers; null if there are not even two. */
 async function beginRound(
-  paths: readonly string[],
+  entries: readonly Entry[],
   begin: number,
   options: SurveyOptions,
   crew: Crew,
 ): Promise<SmallRound | null> {
-  const batch = await smallFiles(paths, begin, crew);
+  const batch = await smallFiles(entries, begin, crew);
   if (batch.length < 2) return null;
   const outcomes = measureTogether(batch, options, crew);
   outcomes.catch(() => undefined); // Whoever waits for them hears of it, which may be later.
@@ -70,12 +114,18 @@ async function beginRound(
 }
 
 /** The small files from index `begin` on, as many as make a round; none for a crew of one. */
-async function smallFiles(paths: readonly string[], begin: number, crew: Crew): Promise<string[]> {
+async function smallFiles(
+  entries: readonly Entry[],
+  begin: number,
+  crew: Crew,
+): Promise<PreparedSnapshot[]> {
   if (crew.threads === 1) return [];
-  const some = paths.slice(begin, begin + crew.threads * FILES_A_WORKER);
-  const small = await Promise.all(some.map(isSmall));
+  const some = entries.slice(begin, begin + crew.threads * FILES_A_WORKER);
+  const bad = some.findIndex(isFailed);
+  const good = (bad < 0 ? some : some.slice(0, bad)) as PreparedSnapshot[];
+  const small = await Promise.all(good.map(({ file }) => isSmall(file)));
   const end = small.indexOf(false);
-  return end < 0 ? some : some.slice(0, end);
+  return end < 0 ? good : good.slice(0, end);
 }
 
 /** A path that cannot be looked at is left to the reader, which says what is wrong with it. */
@@ -84,39 +134,48 @@ async function isSmall(path: string): Promise<boolean> {
 }
 
 async function measureTogether(
-  paths: readonly string[],
-  options: SurveyOptions,
+  snapshots: readonly PreparedSnapshot[],
+  { onStage }: SurveyOptions,
   crew: Crew,
 ): Promise<FileOutcome[]> {
-  const { onStage, read, ...measurement } = options;
   onStage?.('together', null);
-  const readable = { ...read };
-  delete readable.onProgress;
-  delete readable.signal;
-  const round = { paths, options: { ...measurement, read: readable } };
-  const outcomes = (await crew.run(TASK, 'measureFiles', round, paths.length)).flat();
+  // One object for all that have the same options, so that it is sent once.
+  const sendable = new Map<PreparedSnapshot['options'], PreparedSnapshot['options']>();
+  const round = {
+    snapshots: snapshots.map((snapshot) => {
+      const known = sendable.get(snapshot.options);
+      const options = known ?? withoutFunctions(snapshot.options);
+      if (known === undefined) sendable.set(snapshot.options, options);
+      return { ...snapshot, options };
+    }),
+  };
+  const outcomes = (await crew.run(TASK, 'measureFiles', round, snapshots.length)).flat();
   outcomes.sort((a, b) => a.job - b.job);
   return outcomes.map((outcome) => {
-    const file = paths[outcome.job];
+    const { file } = snapshots[outcome.job];
     return 'record' in outcome
       ? { file, record: outcome.record, error: null }
       : { file, record: null, error: received(outcome.error) };
   });
 }
 
+function withoutFunctions(options: PreparedSnapshot['options']): PreparedSnapshot['options'] {
+  const read = { ...options.read };
+  delete read.onProgress;
+  delete read.signal;
+  return { ...options, read };
+}
+
 async function measureAlone(
-  file: string,
+  snapshot: PreparedSnapshot,
   options: SurveyOptions,
   crew: Crew,
 ): Promise<FileOutcome> {
+  const { file } = snapshot;
   try {
-    return { file, record: await measureFile(file, options, crew), error: null };
+    return { file, record: await measurePrepared(snapshot, options, crew), error: null };
   } catch (error) {
-    const expected =
-      error instanceof InputError ||
-      error instanceof UnanswerableError ||
-      error instanceof UsageError;
-    if (!expected) throw error;
+    if (!isOfInput(error)) throw error;
     return { file, record: null, error };
   }
 }

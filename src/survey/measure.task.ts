@@ -2,12 +2,12 @@
 import type { MeasureRecord } from '../dynamics/record.ts';
 import { crewOfOne, type TakeJob } from '../parallel/crew.ts';
 import { sendable, type SentError } from '../parallel/protocol.ts';
-import { measureFile, type SurveyOptions } from './measure.ts';
+import { measurePrepared } from './measure.ts';
+import type { PreparedSnapshot } from './prepare.ts';
 
 export interface FilesRound {
-  readonly paths: readonly string[];
   /** Without functions and signals, which cannot be sent to a worker. */
-  readonly options: SurveyOptions;
+  readonly snapshots: readonly PreparedSnapshot[];
 }
 
 /** What became of one path: its record, or its error in a form that can be sent. */
@@ -20,7 +20,7 @@ export async function measureFiles(round: FilesRound, takeJob: TakeJob): Promise
   const outcomes: SentOutcome[] = [];
   for (let job = takeJob(); job >= 0; job = takeJob()) {
     try {
-      outcomes.push({ job, record: await measureFile(round.paths[job], round.options, crew) });
+      outcomes.push({ job, record: await measurePrepared(round.snapshots[job], {}, crew) });
     } catch (error) {
       const expected = sendable(error);
       if (expected === null) throw error;

@@ -4,45 +4,64 @@ import { measureParticles } from '../dynamics/measure.ts';
 import type { MeasureRecord } from '../dynamics/record.ts';
 import type { MeasureOptions } from '../dynamics/settings.ts';
 import type { Crew } from '../parallel/crew.ts';
-import { loadUnits } from '../snapshot/ownUnits.ts';
 import { readSnapshot } from '../snapshot/read.ts';
 import type { ReadOptions } from '../snapshot/reading.ts';
 import { requireMemory } from './memory.ts';
+import { prepareSnapshots, type PreparedSnapshot } from './prepare.ts';
 
 /** Stages of one snapshot, for progress; `together` stands for several small ones at once. */
 export type Stage = 'together' | 'reading' | 'tree' | 'forces' | 'error' | 'dynamics';
 
 export interface SurveyOptions extends MeasureOptions {
   readonly read?: ReadOptions;
+  /**
+   * Run file whose defaults stand below these options; false for none. If not given, it is
+   * `settlemark.json` in the folder of the snapshot, if there is one.
+   */
+  readonly runFile?: string | false;
   /** Called when a stage begins and, while reading, as bytes come in. */
   readonly onStage?: (stage: Stage, fraction: number | null) => void;
 }
 
 /**
  * Reads one snapshot and measures it.
- * @param path - a file, or `-` for an Arrow stream on standard input
- * @throws InputError if the file cannot be read or used or will not fit into memory, UsageError for options that contradict it
+ * @param snapshot - a file, `-` for an Arrow stream on standard input, or a prepared snapshot, whose
+ *   own options count then: of `options` only progress and signal are used
+ * @throws InputError if the file cannot be read or used or will not fit into memory, UsageError for
+ *   options that contradict it, or for its run file
  */
 export async function measureFile(
-  path: string,
+  snapshot: string | PreparedSnapshot,
   options: SurveyOptions,
   crew: Crew,
 ): Promise<MeasureRecord> {
+  const [prepared] =
+    typeof snapshot === 'string' ? await prepareSnapshots([snapshot], options) : [snapshot];
+  return measurePrepared(prepared, options, crew);
+}
+
+/** {@link measureFile} for a snapshot whose options are settled. */
+export async function measurePrepared(
+  { file, options, runFile }: PreparedSnapshot,
+  watch: Pick<SurveyOptions, 'read' | 'onStage'>,
+  crew: Crew,
+): Promise<MeasureRecord> {
   const start = performance.now();
-  options.onStage?.('reading', null);
+  watch.onStage?.('reading', null);
+  const { signal } = watch.read ?? {};
   const read: ReadOptions = {
     ...options.read,
+    ...(signal !== undefined && { signal }),
     onProgress: (done, total) => {
-      options.read?.onProgress?.(done, total);
-      options.onStage?.('reading', total > 0 ? done / total : null);
+      watch.read?.onProgress?.(done, total);
+      watch.onStage?.('reading', total > 0 ? done / total : null);
     },
   };
   return reusingMemory(async () => {
-    await requireMemory(path, options.read ?? {}, (options.softening ?? 0) > 0);
-    const particles = await readSnapshot(path, read, crew);
+    await requireMemory(file, options.read ?? {}, (options.softening ?? 0) > 0);
+    const particles = await readSnapshot(file, read, crew);
     const readSeconds = (performance.now() - start) / 1000;
-    const settled: MeasureOptions =
-      options.units === undefined ? options : { ...options, units: await loadUnits(options.units) };
-    return measureParticles(particles, settled, crew, { readSeconds, onStage: options.onStage });
+    const { onStage } = watch;
+    return measureParticles(particles, options, crew, { readSeconds, onStage, runFile });
   });
 }

@@ -28,6 +28,7 @@ export function madeRecord(change: Change = {}): MeasureRecord {
     record: 1,
     file: 'shoal.bin',
     time: 12.5,
+    runFile: null,
     settings: {
       gravity: { value: 1, from: 'default' },
       units: { value: 'natural', from: 'default' },

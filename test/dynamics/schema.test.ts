@@ -10,6 +10,7 @@ import type { MeasureOptions } from '../../src/dynamics/settings.ts';
 import { makeModel } from '../../src/models/make.ts';
 import { crewOfOne } from '../../src/parallel/crew.ts';
 import { layoutJsonSchema } from '../../src/snapshot/raw/layout.ts';
+import { runFileJsonSchema } from '../../src/survey/runFileSchema.ts';
 
 const docs = (name: string) => readFileSync(new URL(`../../docs/${name}`, import.meta.url), 'utf8');
 
@@ -29,6 +30,7 @@ describe('committed files', () => {
   it('of the schemas say what the code says', async () => {
     expect(JSON.parse(docs('record.schema.json'))).toEqual(await recordJsonSchema());
     expect(JSON.parse(docs('layout.schema.json'))).toEqual(layoutJsonSchema());
+    expect(JSON.parse(docs('run.schema.json'))).toEqual(runFileJsonSchema());
   });
 
   it('have the table of quantities of the registry', () => {

@@ -105,3 +105,92 @@ describe('--units FILE.json', () => {
     expect(err).toContain('(usage.units)');
   });
 });
+
+describe('settlemark.json in the folder of a run', () => {
+  beforeAll(() => {
+    // Positions before masses, so that nothing fits without the layout that the run file names.
+    put('run/one.dat', [0.5, 0, 0, 0, Math.SQRT1_2, 0, 1, -0.5, 0, 0, 0, -Math.SQRT1_2, 0, 1]);
+    put('run/forms/moved.json', {
+      settlemark: 'layout/1',
+      fields: [
+        { name: 'position', type: 'float64', width: 3 },
+        { name: 'velocity', type: 'float64', width: 3 },
+        { name: 'weight', type: 'float64' },
+      ],
+    });
+    put('run/settlemark.json', {
+      settlemark: 'run/1',
+      layout: 'forms/moved.json',
+      columns: { mass: 'weight' },
+      gravity: 2,
+      softening: 0.75,
+      centre: 'mass',
+      threads: 1,
+    });
+  });
+
+  it('decides what the command line leaves open, and the record says so', async () => {
+    const [record] = await records(at('run'));
+    expect(record.runFile).toBe(at('run/settlemark.json'));
+    // Two unit masses 1 apart, G = 2, ε = 0.75: U = −2/√(1 + 0.5625) = −1.6.
+    expect(record.whole.potential).toBeCloseTo(-1.6, 14);
+    expect(record.settings).toMatchObject({
+      gravity: { value: 2, from: 'run file' },
+      softening: { value: { length: 0.75, kernel: 'plummer' }, from: 'run file' },
+      centre: { value: 'mass', from: 'run file' },
+      error: { from: 'default' },
+      units: { value: 'natural', from: 'default' },
+    });
+    expect(record.engine.threads).toBe(1);
+  });
+
+  it('yields to the command line and goes before the snapshot', async () => {
+    put('arrow/settlemark.json', { gravity: 3, units: 'henon' });
+    const made = ['make', 'plummer', '--count', '30', '--units', 'pc-kms-msun', '--quiet', '--out'];
+    await settlemark([...made, at('arrow/a.arrow')]);
+    // henon means G = 1 and contradicts 3.
+    expect(await failure(2, 'measure', at('arrow'))).toContain('(usage.gravityClash)');
+    put('arrow/settlemark.json', { gravity: 3 });
+    const [over] = await records(at('arrow'));
+    expect(over.settings.gravity).toEqual({ value: 3, from: 'run file' });
+    expect(over.settings.units).toEqual({ value: 'pc-kms-msun', from: 'snapshot' });
+    const [option] = await records(at('arrow'), '--units', 'henon', '--threads', '2');
+    // Units on the command line speak last: they set G.
+    expect(option.settings.gravity).toEqual({ value: 1, from: 'option' });
+    expect(option.engine.threads).toBe(2);
+    const [none] = await records(at('arrow'), '--no-run-file');
+    expect(none.settings.gravity.from).toBe('snapshot');
+    expect(none.runFile).toBeNull();
+  });
+
+  it('of another place may be named', async () => {
+    const elsewhere = put('elsewhere/other.json', { gravity: 5 });
+    const [record] = await records(at('arrow/a.arrow'), '--run-file', elsewhere);
+    expect(record.settings.gravity).toEqual({ value: 5, from: 'run file' });
+    expect(record.runFile).toBe(elsewhere);
+  });
+
+  it('is named on the page, and used by describe', async () => {
+    const page = await settlemark(['measure', at('run/one.dat')], undefined, folder);
+    expect(page.out).toContain('G = 2 (run file)');
+    expect(page.out).toContain('with the run file');
+    expect(page.out.split('\n').filter((line) => line.length > 80)).toEqual([]);
+    const { code, out } = await settlemark(['describe', at('run/one.dat')]);
+    expect(code).toBe(0);
+    expect(out).toMatch(/weight +mass/);
+  });
+
+  it('that is wrong stops the command before anything is measured', async () => {
+    put('wrong/settlemark.json', '{\n  "sofetning": 0.1\n}');
+    put('wrong/one.bin', PAIR);
+    const err = await failure(2, 'measure', at('pair.bin'), at('wrong'));
+    expect(err).toContain(`${at('wrong/settlemark.json')}, line 2, column 3`);
+    expect(err).toContain('"softening"');
+    expect(err).toContain('(usage.runFileUnknownKey)');
+    expect(await failure(2, 'describe', at('wrong/one.bin'))).toContain(
+      '(usage.runFileUnknownKey)',
+    );
+    const missing = await failure(3, 'measure', at('pair.bin'), '--run-file', at('none.json'));
+    expect(missing).toContain('(input.notFound)');
+  });
+});

@@ -1,0 +1,83 @@
+/**
+ * The form of a run file: one schema for validation and for the published JSON Schema. `docs/runs.md`
+ * tells users what the keys mean. Only what reads a run file imports this module.
+ */
+import { z } from 'zod';
+import { FIELD_NAMES } from '../snapshot/reading.ts';
+import { UNIT_SYSTEMS } from '../snapshot/units.ts';
+import type { RunSettings } from './runFile.ts';
+
+const size = (what: string) =>
+  z
+    .union([z.number().positive(), z.string().min(1)], {
+      error: 'a number in SI, or a text such as "2 kpc"',
+    })
+    .describe(`${what}: a number in SI, or a named unit with or without a factor`);
+
+const ownUnits = z
+  .strictObject({
+    length: size('unit of length'),
+    mass: size('unit of mass'),
+    velocity: size('unit of velocity').optional(),
+    time: size('unit of time, instead of velocity').optional(),
+    gravity: z.number().positive().optional().describe('G in these units, instead of velocity'),
+  })
+  .describe('units of your own');
+
+const columnNames = Object.fromEntries(
+  [...FIELD_NAMES].map((name) => [name, z.string().min(1).optional()]),
+);
+
+/** One schema for every key of RunSettings, options of a measurement among them: a new one must come here. */
+const shape = {
+  layout: z.string().min(1).optional().describe('layout of raw snapshots, a path from this file'),
+  columns: z
+    .strictObject(columnNames)
+    .optional()
+    .describe('from the names of Settlemark to those of columns in the files'),
+  units: z
+    .union([z.string().min(1), ownUnits], {
+      error: 'a name, a file that ends in .json, or an object with length, mass and velocity',
+    })
+    .optional()
+    .describe(
+      `unit system: ${Object.keys(UNIT_SYSTEMS).join(', ')}; a file of units, a path from this file; or sizes`,
+    ),
+  gravity: z.number().positive().optional().describe('constant of gravitation G'),
+  softening: z.number().min(0).optional().describe('Plummer-equivalent softening length'),
+  softeningKernel: z.enum(['none', 'plummer', 'spline']).optional(),
+  error: z.number().min(1e-15).max(1).optional().describe('relative error wanted of U'),
+  exact: z.boolean().optional().describe('direct sums over all pairs'),
+  fractions: z
+    .array(z.number().gt(0).lt(1))
+    .min(1)
+    .optional()
+    .describe('mass fractions of Lagrangian radii'),
+  centre: z.enum(['density', 'shrinking', 'mass', 'potential']).optional(),
+  coulombFactor: z.number().positive().optional().describe('γ in Λ = γN'),
+  coincident: z
+    .enum(['leave-out', 'refuse'])
+    .optional()
+    .describe('what to do with bodies at one point, unsoftened'),
+  threads: z.int().min(1).optional().describe('worker threads'),
+} satisfies Record<keyof RunSettings, z.ZodType>;
+
+export const runFileSchema = z
+  .strictObject({
+    $schema: z.string().optional().describe('for editors; not used'),
+    settlemark: z.literal('run/1').optional().describe('kind and version of this file'),
+    ...shape,
+  })
+  .meta({
+    title: 'Settlemark run file',
+    description:
+      'Defaults for the snapshots in its folder (settlemark.json). The command line goes before them, and they go before what the snapshots say themselves.',
+  });
+
+/** Names of the keys that a run file may have, for messages about a misspelt one. */
+export const RUN_FILE_KEYS: readonly string[] = ['settlemark', ...Object.keys(shape)];
+
+/** JSON Schema (draft 2020-12) of run files, for editors and for `docs/run.schema.json`. */
+export function runFileJsonSchema(): Record<string, unknown> {
+  return z.toJSONSchema(runFileSchema, { target: 'draft-2020-12', io: 'input' });
+}
