@@ -11,6 +11,7 @@
  */
 import type { MeasureRecord } from './dynamics/record.ts';
 import type { MeasureOptions } from './dynamics/settings.ts';
+import { verdictOf as judge, type Verdict } from './settling/verdict.ts';
 import type { LeapfrogOptions } from './models/leapfrog.ts';
 import type { MakeOptions } from './models/make.ts';
 import type { BodyColumns } from './octree/build.ts';
@@ -58,6 +59,9 @@ export type { MeasureOptions } from './dynamics/settings.ts';
 export type { BodyColumns } from './octree/build.ts';
 export type { ForceOptions, Forces } from './octree/forces.ts';
 export type { Softening, SofteningKernel } from './octree/softening.ts';
+export type { Verdict, VerdictName } from './settling/verdict.ts';
+export type { Audit } from './settling/audit.ts';
+export type { Finding } from './settling/rule.ts';
 export type { LeapfrogOptions } from './models/leapfrog.ts';
 export type { MakeOptions, ModelName } from './models/make.ts';
 export type {
@@ -246,6 +250,22 @@ export async function makeModel(options: MakeOptions): Promise<Particles> {
  */
 export async function makeSnapshot(options: MakeSnapshotOptions, crew: Crew): Promise<Particles> {
   return (await import('./survey/make.ts')).makeSnapshot(options, crew);
+}
+
+/**
+ * Reads records that were made earlier, one JSON object a line.
+ * @throws InputError `input.notARecord`, `input.recordVersion`, `input.notFound`
+ */
+export async function readRecords(path: string): Promise<MeasureRecord[]> {
+  return (await import('./survey/records.ts')).readRecords(path);
+}
+
+/**
+ * Judges a run by its records: whether, when and how well it settled, and why one can say so.
+ * @throws UnanswerableError `unanswerable.series` with fewer than two times
+ */
+export function verdictOf(records: readonly MeasureRecord[]): Verdict {
+  return judge(records);
 }
 
 /**

@@ -5,6 +5,7 @@ import type { DemoOptions } from './demo.ts';
 import type { DescribeOptions } from './describe.ts';
 import type { MakeCommandOptions } from './make.ts';
 import type { MeasureCommandOptions } from './measure.ts';
+import type { TrackOptions } from './track.ts';
 import { listOf, numberOf, vectorOf, wholeOf } from './parse.ts';
 import type { Streams } from './streams.ts';
 import type { ExitCode } from '../errors.ts';
@@ -50,6 +51,15 @@ export function buildProgram(streams: Streams, done: (code: ExitCode) => void): 
     .option('--quiet', 'no progress and no remarks on standard error')
     .action(async (snapshots: string[], options: MeasureCommandOptions) => {
       done(await (await import('./measure.ts')).measure(snapshots, options, streams));
+    });
+
+  measuring(reading(program.command('track <snapshots|folder|records...>')))
+    .description('say whether a run has settled, since when, and on what evidence')
+    .addOption(formats(['table', 'json']))
+    .addOption(new Option('--out <file>', 'write to a file; its ending may name the format'))
+    .option('--quiet', 'no progress on standard error')
+    .action(async (inputs: string[], options: TrackOptions) => {
+      done(await (await import('./track.ts')).track(inputs, options, streams));
     });
 
   making(program.command('make <model>'))

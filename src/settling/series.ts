@@ -12,7 +12,7 @@ export interface Series {
   readonly records: readonly MeasureRecord[];
   readonly set: SetName;
   readonly ratio: RatioKind;
-  /** Length of a crossing time, the median over the second half of the run [time]. */
+  /** Length of a crossing time [time]: the smaller of the medians over the first quarter and the second half. */
   readonly crossingTime: number;
   readonly track: Track;
   readonly remarks: readonly Remark[];
@@ -63,7 +63,9 @@ export function seriesOf(records: readonly MeasureRecord[]): Series | null {
   const { ordered, remarks } = inOrderOfTime(records);
   const last = ordered.at(-1);
   if (last === undefined) return null;
-  const set: SetName = last.bound.mass < (1 - UNBOUND_SHARE) * last.whole.mass ? 'bound' : 'whole';
+  const boundShare = last.bound.mass / last.whole.mass;
+  // What has come apart is no remnant with escapers.
+  const set: SetName = boundShare < 1 - UNBOUND_SHARE && boundShare > 0.5 ? 'bound' : 'whole';
   const softened = ordered.some(({ settings }) => settings.softening.value.kernel !== 'none');
   const ratio: RatioKind = softened ? 'clausiusRatio' : 'virialRatio';
   const judged = ordered.filter(
@@ -74,7 +76,11 @@ export function seriesOf(records: readonly MeasureRecord[]): Series | null {
   );
   if (judged.length < 2) return null;
   const late = judged.slice(judged.length >> 1);
-  const crossingTime = median(late.map((record) => record.crossingTime as number));
+  const early = judged.slice(0, Math.max(1, judged.length >> 2));
+  const typical = (list: readonly MeasureRecord[]) =>
+    median(list.map((record) => record.crossingTime as number));
+  // A system that flies apart is judged by the time it had, not by the ever longer one that it has.
+  const crossingTime = Math.min(typical(early), typical(late));
   const column = (of: (record: MeasureRecord) => number) => Float64Array.from(judged, of);
   const optional = (of: (record: MeasureRecord) => number | null): Float64Array | null => {
     const values = judged.map(of);

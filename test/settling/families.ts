@@ -1,5 +1,5 @@
 /** Made series whose state is known: transients, drifts, waves, steps, with the noise of finite N. */
-import { Random } from '../../src/numerics/random.ts';
+import type { Random } from '../../src/numerics/random.ts';
 import type { State, Track } from '../../src/settling/rule.ts';
 
 export interface Made {
@@ -58,7 +58,10 @@ function process(t: Float64Array, tau: number, period: number, random: Random): 
       const phase = period > 0 ? (TAU * dt) / period : 0;
       const [c, s] = [a * Math.cos(phase), a * Math.sin(phase)];
       const fresh = Math.sqrt(1 - a * a);
-      [re, im] = [c * re - s * im + fresh * random.normal(), s * re + c * im + fresh * random.normal()];
+      [re, im] = [
+        c * re - s * im + fresh * random.normal(),
+        s * re + c * im + fresh * random.normal(),
+      ];
     }
     return re;
   });
@@ -91,7 +94,8 @@ export function make(family: Family, n: number, random: Random): Made {
   const kind = family === 'long memory' ? 'long memory' : kinds[Math.floor(4 * random.uniform())];
   const ratio = noiseOf(t, kind, random).map((x) => 1 + sigmaQ * x);
   const logHalf = noiseOf(t, kind, random).map((x) => sigmaR * x);
-  const add = (x: Float64Array, of: (time: number) => number) => x.forEach((_, k) => (x[k] += of(t[k])));
+  const add = (x: Float64Array, of: (time: number) => number) =>
+    x.forEach((_, k) => (x[k] += of(t[k])));
   let wanted: Made['wanted'] = 'settled';
   let settledAt: number | null = null;
   let energyError: Float64Array | null = null;
@@ -167,7 +171,10 @@ export function make(family: Family, n: number, random: Random): Made {
       const period = within(random, 0.8, 2.5);
       const phase = TAU * random.uniform();
       add(ratio, (time) => size * Math.exp(-time / tau) * Math.cos((TAU * time) / period + phase));
-      add(logHalf, (time) => 0.4 * size * Math.exp(-time / tau) * Math.sin((TAU * time) / period + phase));
+      add(
+        logHalf,
+        (time) => 0.4 * size * Math.exp(-time / tau) * Math.sin((TAU * time) / period + phase),
+      );
       wanted = 'oscillating';
       break;
     }

@@ -1,0 +1,110 @@
+/** `settlemark track`: has the run settled, when, and how do we know? */
+import {
+  findSnapshots,
+  InputError,
+  measureFiles,
+  parseColumns,
+  readRecords,
+  UnanswerableError,
+  verdictOf,
+  type ExitCode,
+  EXIT,
+  type MeasureRecord,
+  type Remark,
+  type SurveyOptions,
+  type Verdict,
+} from '../index.ts';
+import { turn, withCrew } from './crew.ts';
+import { reportFailure } from './failure.ts';
+import type { MeasureCommandOptions } from './measure.ts';
+import { refuseOverwriting, withOutput } from './output.ts';
+import { startProgress } from './progress.ts';
+import { NO_PAINT, paintFor } from './style.ts';
+import type { Streams } from './streams.ts';
+
+export interface TrackOptions extends Omit<MeasureCommandOptions, 'format'> {
+  readonly format?: 'table' | 'json';
+}
+
+/** Measures the series or takes records of it, and says what has become of the run. */
+export async function track(
+  args: readonly string[],
+  options: TrackOptions,
+  streams: Streams,
+): Promise<ExitCode> {
+  const { out, quiet = false } = options;
+  const format = options.format ?? (out?.endsWith('.json') === true ? 'json' : 'table');
+  const records: MeasureRecord[] = [];
+  const snapshots: string[] = [];
+  for (const arg of args) {
+    if (/\.(ndjson|jsonl)$/i.test(arg)) records.push(...(await readRecords(arg)));
+    else snapshots.push(...(await findSnapshots([arg])));
+  }
+  await refuseOverwriting(out, snapshots);
+  const skipped =
+    snapshots.length > 0 ? await measureAll(snapshots, options, records, streams, quiet) : [];
+  if (records.length === 0) {
+    throw new UnanswerableError(
+      'unanswerable.series',
+      'no snapshot of the series could be measured',
+      'see what was said of each of them above',
+    );
+  }
+  const found = verdictOf(records);
+  const remarks: Remark[] = [...found.remarks];
+  if (skipped.length > 0) {
+    remarks.unshift({
+      code: 'snapshotsSkipped',
+      text: `${skipped.length} of ${snapshots.length} snapshots could not be measured and are left out: ${skipped.slice(0, 3).join(', ')}${skipped.length > 3 ? ', …' : ''}`,
+      remedy: 'see what was said of each of them above',
+    });
+  }
+  const verdict: Verdict = { ...found, remarks };
+  await withOutput(out, streams, async (sink) => {
+    if (format === 'json') return sink(`${JSON.stringify(verdict, null, 2)}\n`);
+    const { verdictPage } = await import('./verdictPage.ts');
+    return sink(
+      verdictPage(verdict, out === undefined ? paintFor(streams.stdout, streams.env) : NO_PAINT),
+    );
+  });
+  return EXIT.done;
+}
+
+/** Measures all snapshots; those that cannot be are told on standard error and returned. */
+async function measureAll(
+  files: readonly string[],
+  options: TrackOptions,
+  records: MeasureRecord[],
+  streams: Streams,
+  quiet: boolean,
+): Promise<string[]> {
+  const { layout, columns, threads } = options;
+  const survey: SurveyOptions = {
+    ...options,
+    read: {
+      ...(layout !== undefined && { layout }),
+      ...(columns !== undefined && { columns: await parseColumns(columns) }),
+      signal: streams.interrupt,
+    },
+  };
+  const skipped: string[] = [];
+  await withCrew(threads, streams.interrupt, async (crew) => {
+    const progress = startProgress(streams.stderr, quiet, crew);
+    try {
+      let done = 0;
+      for await (const { file, record, error } of await measureFiles(files, survey, crew)) {
+        await turn(streams.interrupt);
+        progress.say(`${file}, ${done + 1} of ${files.length}`, ++done / files.length);
+        if (error === null) records.push(record);
+        else if (error instanceof InputError || error instanceof UnanswerableError) {
+          progress.clear();
+          await reportFailure(error, streams);
+          skipped.push(file);
+        } else throw error;
+      }
+    } finally {
+      progress.close();
+    }
+  });
+  return skipped;
+}
