@@ -12,7 +12,7 @@ export interface Series {
   readonly records: readonly MeasureRecord[];
   readonly set: SetName;
   readonly ratio: RatioKind;
-  /** Length of a crossing time [time]: the smaller of the medians over the first quarter and the second half. */
+  /** Length of a crossing time [time]: the first snapshot's or the median of the second half, whichever is less. */
   readonly crossingTime: number;
   readonly track: Track;
   readonly remarks: readonly Remark[];
@@ -76,11 +76,9 @@ export function seriesOf(records: readonly MeasureRecord[]): Series | null {
   );
   if (judged.length < 2) return null;
   const late = judged.slice(judged.length >> 1);
-  const early = judged.slice(0, Math.max(1, judged.length >> 2));
-  const typical = (list: readonly MeasureRecord[]) =>
-    median(list.map((record) => record.crossingTime as number));
+  const typical = median(late.map((record) => record.crossingTime as number));
   // A system that flies apart is judged by the time it had, not by the ever longer one that it has.
-  const crossingTime = Math.min(typical(early), typical(late));
+  const crossingTime = Math.min(judged[0].crossingTime as number, typical);
   const column = (of: (record: MeasureRecord) => number) => Float64Array.from(judged, of);
   const optional = (of: (record: MeasureRecord) => number | null): Float64Array | null => {
     const values = judged.map(of);
