@@ -4,6 +4,7 @@ import {
   InputError,
   measureFiles,
   parseColumns,
+  prepareSnapshots,
   readRecords,
   UnanswerableError,
   verdictOf,
@@ -78,21 +79,24 @@ async function measureAll(
   streams: Streams,
   quiet: boolean,
 ): Promise<string[]> {
-  const { layout, columns, threads } = options;
+  const { layout, columns, runFile, threads, ...rest } = options;
   const survey: SurveyOptions = {
-    ...options,
+    ...rest,
+    ...(runFile !== undefined && runFile !== true && { runFile }),
     read: {
       ...(layout !== undefined && { layout }),
       ...(columns !== undefined && { columns: await parseColumns(columns) }),
       signal: streams.interrupt,
     },
   };
+  const snapshots = await prepareSnapshots(files, survey);
+  const asksFor = snapshots.find((snapshot) => snapshot.threads !== null)?.threads ?? undefined;
   const skipped: string[] = [];
-  await withCrew(threads, streams.interrupt, async (crew) => {
+  await withCrew(threads ?? asksFor, streams.interrupt, async (crew) => {
     const progress = startProgress(streams.stderr, quiet, crew);
     try {
       let done = 0;
-      for await (const { file, record, error } of await measureFiles(files, survey, crew)) {
+      for await (const { file, record, error } of await measureFiles(snapshots, survey, crew)) {
         await turn(streams.interrupt);
         progress.say(`${file}, ${done + 1} of ${files.length}`, ++done / files.length);
         if (error === null) records.push(record);
