@@ -53,7 +53,7 @@ export function buildProgram(streams: Streams, done: (code: ExitCode) => void): 
       done(await (await import('./measure.ts')).measure(snapshots, options, streams));
     });
 
-  measuring(reading(program.command('track <snapshots|folder|records...>')))
+  measuring(reading(program.command('track <run...>')))
     .description('say whether a run has settled, since when, and on what evidence')
     .addOption(formats(['table', 'json']))
     .addOption(new Option('--out <file>', 'write to a file; its ending may name the format'))
@@ -70,9 +70,7 @@ export function buildProgram(streams: Streams, done: (code: ExitCode) => void): 
 
   program
     .command('demo')
-    .description(
-      'the solar system, a sphere of 100,000 stars, and a run of 2,000 that fall together',
-    )
+    .description('the solar system, 100,000 stars at rest, and 2,000 that fall together')
     .option('--out <folder>', 'keep the snapshots of the run')
     .option('--quiet', 'no progress on standard error')
     .addOption(threads())
