@@ -61,8 +61,7 @@ const changedBodies = (p: Particles, change: (body: number[], i: number) => void
   );
 
 describe('the registry and a record', () => {
-  const OUTSIDE =
-    /^(record|runFile|file|runFile|time|settings|engine|remarks|frame\.centreMethod)(\.|$)/;
+  const OUTSIDE = /^(record|file|runFile|time|settings|engine|remarks|frame\.centreMethod)(\.|$)/;
 
   it('have the same figures', async () => {
     const record = await measureModel('plummer', 500, 1);
