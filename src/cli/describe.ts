@@ -67,12 +67,23 @@ export function descriptionTable(found: SnapshotDescription, paint: Paint = NO_P
     found.softening === null ? null : `softening ${short(found.softening, 6)}`,
   ].filter((fact) => fact !== null);
   const size = found.bytes === null ? '' : `; ${bytesText(found.bytes)}`;
+  const components = componentsText(found.components);
   const parts = [
-    `${paint.strong(shorten(found.file, PAGE_WIDTH))}\n${wrap(`${kind}${found.structure}${size}`, '  ')}\n${wrap(facts.join(', '), '  ')}`,
+    `${paint.strong(shorten(found.file, PAGE_WIDTH))}\n${wrap(`${kind}${found.structure}${size}`, '  ')}\n${wrap(facts.join(', '), '  ')}${components}`,
     columnsTable(found, paint),
     remarksText(found.remarks, paint),
   ];
   return `${parts.filter((part) => part !== '').join('\n\n')}\n`;
+}
+
+/** `components: 4,000 gas, 96,000 dark (mass 1e-6 each)`, on a line of its own; empty without any. */
+function componentsText(components: SnapshotDescription['components']): string {
+  if (components.length === 0) return '';
+  const texts = components.map(({ name, count, mass }) => {
+    const number = count === null ? '' : `${wholeNumber(count)} `;
+    return `${number}${name}${mass === null ? '' : ` (mass ${short(mass, 6)} each)`}`;
+  });
+  return `\n${wrap(`components: ${texts.join(', ')}`, '  ')}`;
 }
 
 const NAME_WIDTH = 18;

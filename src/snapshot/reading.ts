@@ -56,6 +56,8 @@ export interface SnapshotDescription {
   /** For a raw file its layout in one line; for Arrow the compression and number of batches. */
   readonly structure: string;
   readonly columns: readonly DescribedColumn[];
+  /** Kinds of bodies, as far as they are known without reading each body. */
+  readonly components: readonly DescribedComponent[];
   /** First sanity findings, from the first and last few thousand bodies. */
   readonly remarks: readonly Remark[];
 }
@@ -74,6 +76,14 @@ export interface DescribedColumn {
   /** Smallest and largest finite value among the bodies looked at, or null if none was. */
   readonly smallest: number | null;
   readonly largest: number | null;
+}
+
+export interface DescribedComponent {
+  readonly name: string;
+  /** Null where only the names are known (a dictionary of an Arrow file). */
+  readonly count: number | null;
+  /** Mass of each of its bodies, if the layout or the header states it. */
+  readonly mass: number | null;
 }
 
 export type SnapshotReader = (path: string, options: ReadOptions) => Promise<Particles>;

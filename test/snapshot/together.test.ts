@@ -72,6 +72,29 @@ async function expectSame(path: string, options: ReadOptions = {}): Promise<Part
 const isEqual = (a: unknown, b: unknown): boolean => JSON.stringify(a) === JSON.stringify(b);
 
 describe('the same particles for any number of threads', () => {
+  it('raw, in columns of components', async () => {
+    const columns = NAMES.map((name) => made[name].subarray(0, name === 'mass' ? 90_000 : COUNT));
+    const bytes = columns.map(({ buffer, byteOffset, byteLength }) =>
+      Buffer.from(buffer, byteOffset, byteLength),
+    );
+    const path = await put('components.bin', Buffer.concat(bytes));
+    const options = await putLayout('components', {
+      arrangement: 'columns',
+      components: [
+        { name: 'gas', count: 90_000 },
+        { name: 'dark', count: COUNT - 90_000, mass: 0.25 },
+      ],
+      fields: NAMES.map((name) => ({
+        name,
+        type: 'float64',
+        ...(name === 'mass' && { components: ['gas'] }),
+      })),
+    });
+    const alone = await expectSame(path, { ...options, optional: ['component'] });
+    expect(Array.from(alone.vz)).toEqual(Array.from(made.vz));
+    expect([alone.mass[89_999], alone.mass[90_000]]).toEqual([made.mass[89_999], 0.25]);
+  });
+
   it('raw, interleaved', async () => {
     const path = join(folder, 'inter.bin');
     await writeSnapshot(path, made, 'raw');

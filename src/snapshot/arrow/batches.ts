@@ -1,4 +1,5 @@
 /** From messages to the list of what is to be read: which bytes of which body fill which rows. */
+import type { DataType } from 'apache-arrow/type';
 import { InputError } from '../../errors.ts';
 import { readBody, type Body } from './body.ts';
 import {
@@ -11,10 +12,16 @@ import {
   type CodecName,
 } from './codecs.ts';
 import { damaged } from './damage.ts';
-import { assertComponentCount, ComponentNames, decodeTexts, offsetBytes } from './dictionary.ts';
+import {
+  assertComponentCount,
+  ComponentNames,
+  decodeTexts,
+  offsetBytes,
+  textIndices,
+} from './dictionary.ts';
 import type { FramedMessage } from './framing.ts';
 import { BYTES_OF, type PlannedColumn } from './kinds.ts';
-import { layoutBatch, type Region } from './layout.ts';
+import { layoutBatch, type ColumnLayout, type Region } from './layout.ts';
 import type { ArrowMessage, RecordBatch, Schema } from './messages.ts';
 
 /** One record batch, checked: all that is needed to load its planned columns. */
@@ -30,6 +37,8 @@ export interface PlannedBatch {
   readonly nulls: readonly number[];
   /** From index in the batch's dictionary to our component; null if components are not loaded. */
   readonly componentOf: Uint16Array | null;
+  /** Our component of each row, where the column holds plain texts. */
+  readonly componentIndices: Uint16Array | null;
 }
 
 /** Takes the messages of one snapshot in order and plans its batches. */
@@ -41,16 +50,17 @@ export class BatchPlanner {
   schema: Schema | null = null;
   plan: readonly PlannedColumn[] = [];
   private readonly planSchema: (schema: Schema) => readonly PlannedColumn[];
-  private readonly refuseNulls: boolean;
+  private readonly isForReading: boolean;
 
+  /** @param isForReading - else for describing: missing values are counted, not refused, and texts left */
   constructor(
     file: string,
     planSchema: (schema: Schema) => readonly PlannedColumn[],
-    refuseNulls: boolean,
+    isForReading: boolean,
   ) {
     this.file = file;
     this.planSchema = planSchema;
-    this.refuseNulls = refuseNulls;
+    this.isForReading = isForReading;
   }
 
   takeSchema(schema: Schema): void {
@@ -89,13 +99,14 @@ export class BatchPlanner {
     const codec = await this.codecOf(batch);
     const nulls: number[] = [];
     const regions: Region[] = [];
+    let componentIndices: Uint16Array | null = null;
     for (const column of this.plan) {
       const own = layout[column.fieldIndex];
       const isVector = column.targets.length === 3;
       const leaf = isVector ? own.children[0] : own;
       const values = rows * column.targets.length;
       const missing = isVector ? own.nulls + leaf.nulls : own.nulls;
-      if (missing > 0 && this.refuseNulls) throw this.missingValues(column, missing, place);
+      if (missing > 0 && this.isForReading) throw this.missingValues(column, missing, place);
       if (leaf.rows !== values)
         throw damaged(
           this.file,
@@ -104,6 +115,15 @@ export class BatchPlanner {
         );
       nulls.push(missing);
       const region = leaf.buffers[1];
+      if (column.isText) {
+        regions.push(region);
+        if (!this.isForReading) continue;
+        const type = types[column.fieldIndex];
+        const [offsets, ...data] = await this.readTexts(own, type, rows, codec, body, place);
+        const { components, file } = this;
+        componentIndices = textIndices(type, rows, offsets, data, components, file, place);
+        continue;
+      }
       await this.checkLength(region, values * BYTES_OF[column.kind], codec, body, place);
       regions.push(region);
     }
@@ -120,6 +140,7 @@ export class BatchPlanner {
       regions,
       nulls,
       componentOf,
+      componentIndices,
     };
   }
 
@@ -139,17 +160,29 @@ export class BatchPlanner {
     assertComponentCount(count, this.file);
     if (layout.nulls > 0) throw this.missingValues(column, layout.nulls, place);
     const codec = await this.codecOf(batch);
-    const [offsets, ...data] = await Promise.all(
-      layout.buffers.slice(1).map((region, i) => {
-        const needed = i === 0 && count > 0 ? offsetBytes(type, count) : 0;
-        return this.readDictionaryBuffer(region, needed, codec, body, place);
-      }),
-    );
+    const [offsets, ...data] = await this.readTexts(layout, type, count, codec, body, place);
     const texts = decodeTexts(type, count, offsets, data, this.file, place);
     this.components.add(texts, dictionary.isDelta, this.file);
   }
 
-  private async readDictionaryBuffer(
+  /** Offsets (or views) and text buffers of a column of texts. */
+  private readTexts(
+    layout: ColumnLayout,
+    type: DataType,
+    count: number,
+    codec: Codec | null,
+    body: Body,
+    place: string,
+  ): Promise<Uint8Array[]> {
+    return Promise.all(
+      layout.buffers.slice(1).map((region, i) => {
+        const needed = i === 0 && count > 0 ? offsetBytes(type, count) : 0;
+        return this.readTextBuffer(region, needed, codec, body, place);
+      }),
+    );
+  }
+
+  private async readTextBuffer(
     region: Region,
     needed: number,
     codec: Codec | null,

@@ -110,7 +110,7 @@ class Ranges {
   async look(batch: PlannedBatch, side: 'begin' | 'end', options: ReadOptions): Promise<void> {
     const { plan, file } = this.planner;
     // Columns with missing values hold anything in their place.
-    const sound = plan.map((_, i) => i).filter((i) => batch.nulls[i] === 0);
+    const sound = plan.map((_, i) => i).filter((i) => batch.nulls[i] === 0 && !plan[i].isText);
     const chosen = sound.map((i) => plan[i]);
     const regions = sound.map((i) => batch.regions[i]);
     const part = batch.codec ? { ...batch, regions } : samplePart(batch, chosen, regions, side);
@@ -194,6 +194,7 @@ function describe(
     byteOrder: 'little',
     structure: `Arrow IPC ${kind}, ${batchText}, ${compression}`,
     columns,
+    components: planner.components.names.map((name) => ({ name, count: null, mass: null })),
     remarks: findings(plan, batches, ranges),
   };
 }

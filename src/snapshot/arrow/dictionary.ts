@@ -20,17 +20,20 @@ export class ComponentNames {
     const before = extend ? (this.current ?? new Uint16Array(0)) : new Uint16Array(0);
     const map = new Uint16Array(before.length + entries.length);
     map.set(before);
-    entries.forEach((name, i) => {
-      let index = this.indexOf.get(name);
-      if (index === undefined) {
-        index = this.names.length;
-        if (index >= MOST_COMPONENTS) throw tooMany(file, index + 1);
-        this.names.push(name);
-        this.indexOf.set(name, index);
-      }
-      map[before.length + i] = index;
-    });
+    entries.forEach((name, i) => (map[before.length + i] = this.indexFor(name, file)));
     this.current = map;
+  }
+
+  /** Index of a name in {@link names}, to which it is added if it is new. */
+  indexFor(name: string, file: string): number {
+    let index = this.indexOf.get(name);
+    if (index === undefined) {
+      index = this.names.length;
+      if (index >= MOST_COMPONENTS) throw tooMany(file, index + 1);
+      this.names.push(name);
+      this.indexOf.set(name, index);
+    }
+    return index;
   }
 }
 
@@ -69,20 +72,70 @@ export function decodeTexts(
   file: string,
   place: string,
 ): string[] {
-  const view = new DataView(offsets.buffer, offsets.byteOffset, offsets.byteLength);
-  const decoder = new TextDecoder('utf-8', { fatal: true, ignoreBOM: true });
-  const texts: string[] = [];
+  const spanOf = spans(type, offsets, data, file, place);
+  return Array.from({ length: count }, (_, i) => decodeText(spanOf(i), i, file, place));
+}
+
+/**
+ * Indices of the texts of a column into {@link ComponentNames.names}; the arguments are those of
+ * {@link decodeTexts}.
+ */
+export function textIndices(
+  type: DataType,
+  count: number,
+  offsets: Uint8Array,
+  data: readonly Uint8Array[],
+  names: ComponentNames,
+  file: string,
+  place: string,
+): Uint16Array {
+  const spanOf = spans(type, offsets, data, file, place);
+  const indices = new Uint16Array(new SharedArrayBuffer(2 * count));
+  let last: Uint8Array | null = null;
+  let index = 0;
   for (let i = 0; i < count; i++) {
+    const text = spanOf(i);
+    // Neighbours mostly belong together: to decode each would be slow.
+    if (last === null || !isSame(text, last)) {
+      index = names.indexFor(decodeText(text, i, file, place), file);
+      last = text;
+    }
+    indices[i] = index;
+  }
+  return indices;
+}
+
+function isSame(a: Uint8Array, b: Uint8Array): boolean {
+  if (a.length !== b.length) return false;
+  for (let k = 0; k < a.length; k++) if (a[k] !== b[k]) return false;
+  return true;
+}
+
+const DECODER = new TextDecoder('utf-8', { fatal: true, ignoreBOM: true });
+
+function decodeText(bytes: Uint8Array, i: number, file: string, place: string): string {
+  try {
+    return DECODER.decode(bytes);
+  } catch (error) {
+    throw damaged(file, place, `text ${i} is not UTF-8`, error);
+  }
+}
+
+/** Gives the bytes of the i-th text. */
+function spans(
+  type: DataType,
+  offsets: Uint8Array,
+  data: readonly Uint8Array[],
+  file: string,
+  place: string,
+): (i: number) => Uint8Array {
+  const view = new DataView(offsets.buffer, offsets.byteOffset, offsets.byteLength);
+  return (i) => {
     const [source, begin, end] = span(i);
     if (!source || !(begin >= 0 && begin <= end && end <= source.length))
       throw damaged(file, place, `text ${i} lies outside its buffer`);
-    try {
-      texts.push(decoder.decode(source.subarray(begin, end)));
-    } catch (error) {
-      throw damaged(file, place, `text ${i} is not UTF-8`, error);
-    }
-  }
-  return texts;
+    return source.subarray(begin, end);
+  };
 
   function span(i: number): [source: Uint8Array | undefined, begin: number, end: number] {
     if (DataType.isUtf8View(type)) {

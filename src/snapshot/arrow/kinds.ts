@@ -44,4 +44,6 @@ export interface PlannedColumn {
   readonly targets: readonly FieldName[];
   /** Set for `component`: the values are indices into the dictionary of this id. */
   readonly dictionaryId: number | null;
+  /** Set for a `component` of plain texts: they become indices when a batch is planned. */
+  readonly isText: boolean;
 }

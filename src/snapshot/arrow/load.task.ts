@@ -66,7 +66,10 @@ async function loadColumn(
     throw damaged(round.file, place, `index ${stray} into a dictionary of ${names} names`);
   };
 
-  if (batch.codec !== null) {
+  if (column.isText) {
+    const indices = batch.componentIndices?.subarray(row, row + rows);
+    (targets[0] as Uint16Array).set(indices ?? [], begin);
+  } else if (batch.codec !== null) {
     const codec = await codecNamed(batch.codec);
     await withScratch(region.length, async (packed) => {
       await readBody(body, packed, region.offset);

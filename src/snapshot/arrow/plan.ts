@@ -73,8 +73,11 @@ export function planField(
 ): PlannedColumn | null {
   const { type, name: fileName } = schema.fields[fieldIndex];
   const targets = VECTORS[field] ?? [field];
-  const base = { fieldIndex, fileName, field, targets };
+  const base = { fieldIndex, fileName, field, targets, isText: false };
   if (field === 'component') {
+    if (isText(type)) {
+      return { ...base, kind: 'uint16', stored: 'uint16', dictionaryId: null, isText: true };
+    }
     if (!DataType.isDictionary(type) || !isText(type.dictionary as DataType)) return null;
     const kind = numberKind(type.indices);
     return kind && { ...base, kind, stored: 'uint16', dictionaryId: type.id };
@@ -176,7 +179,7 @@ class ColumnFinder {
     const { name, type } = this.schema.fields[fieldIndex];
     const expected =
       field === 'component'
-        ? 'a dictionary of texts'
+        ? 'texts, or a dictionary of texts'
         : VECTORS[field]
           ? 'a FixedSizeList of 3 numbers'
           : 'integers or floating-point numbers';
@@ -184,7 +187,7 @@ class ColumnFinder {
       'input.columnType',
       `${this.file}: column "${name}" (${field}) holds ${typeName(type)}; expected ${expected}`,
       field === 'component'
-        ? 'Encode the names as a dictionary (a categorical column).'
+        ? 'Write names, best as a dictionary (a categorical column).'
         : 'Cast the column before writing, or name another one with --columns.',
     );
   }

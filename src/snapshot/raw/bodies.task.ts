@@ -4,6 +4,7 @@ import type { TakeJob } from '../../parallel/crew.ts';
 import { readExactly, type OpenFile } from '../files.ts';
 import type { Piece, Target } from './bodies.ts';
 import { decodeIds, decodeReals, giveChunk, takeChunk, type Chunk } from './decode.ts';
+import type { LayoutField } from './layout.ts';
 import type { Segment } from './markers.ts';
 import type { Block, RawStructure } from './structure.ts';
 import { NATIVE_ORDER, TYPE_BYTES, type ByteOrder } from './types.ts';
@@ -24,10 +25,10 @@ export async function decodePieces(round: PiecesRound, takeJob: TakeJob): Promis
   );
   try {
     for (let job = takeJob(); job >= 0; job = takeJob()) {
-      const { block, body, at, count, bytes } = pieces[job];
+      const { block, body, first, at, count, bytes } = pieces[job];
       const { segments, stride } = structure.blocks[block];
       await readStretch(file, segments, body * stride, bytes, chunk.bytes);
-      decoders[block](body, at, count);
+      decoders[block](first, at, count);
     }
   } finally {
     giveChunk(chunk);
@@ -36,17 +37,19 @@ export async function decodePieces(round: PiecesRound, takeJob: TakeJob): Promis
 
 interface PlacedTarget {
   readonly target: Target;
+  readonly field: LayoutField;
   readonly offset: number;
 }
 
 /** Targets of a block, with the place of each one's number in the stride. */
 function placeTargets(block: Block, targets: readonly Target[]): PlacedTarget[] {
-  return targets.flatMap((target) => {
-    const { field, lane } = target.source;
-    const place = block.fields.find((placed) => placed.field === field);
-    if (place === undefined) return [];
-    return [{ target, offset: place.offset + lane * TYPE_BYTES[field.type] }];
-  });
+  return targets.flatMap((target) =>
+    target.sources.flatMap(({ field, lane }) => {
+      const place = block.fields.find((placed) => placed.field === field);
+      if (place === undefined) return [];
+      return [{ target, field, offset: place.offset + lane * TYPE_BYTES[field.type] }];
+    }),
+  );
 }
 
 /** Bytes `begin` … `begin + length` of the data that the segments make up, to the start of `into`. */
@@ -90,8 +93,8 @@ function decoderOf(
     }
     if (swap === 8) chunk.bytes.subarray(0, count * stride).swap64();
     if (swap === 4) chunk.bytes.subarray(0, count * stride).swap32();
-    for (const { target, offset } of placed) {
-      const { type, scale } = target.source.field;
+    for (const { target, field, offset } of placed) {
+      const { type, scale } = field;
       if (target.kind === 'reals') {
         const { column } = target;
         decodeReals(chunk, offset, stride, type, order, isNative, scale, column, at, count);

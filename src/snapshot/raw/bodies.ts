@@ -4,8 +4,8 @@ import type { OpenFile } from '../files.ts';
 import type { FloatColumn, IdColumn } from '../particles.ts';
 import { bytesOf, crewFor, PIECE_BYTES, watchOf, type LoadOptions } from '../pieces.ts';
 import type * as BodiesTask from './bodies.task.ts';
-import type { ComponentCodes } from './components.ts';
-import type { Source } from './plan.ts';
+import type { ComponentCodes } from './component-codes.ts';
+import type { Sources } from './plan.ts';
 import type { RawStructure } from './structure.ts';
 
 const TASK: TaskModule<typeof BodiesTask> = {
@@ -13,11 +13,11 @@ const TASK: TaskModule<typeof BodiesTask> = {
   load: () => import('./bodies.task.ts'),
 };
 
-/** Where the numbers of one source go. */
+/** Where the numbers of the sources of one column go. */
 export type Target =
-  | { readonly kind: 'reals'; readonly source: Source; readonly column: FloatColumn }
-  | { readonly kind: 'ids'; readonly source: Source; readonly column: IdColumn }
-  | { readonly kind: 'components'; readonly source: Source; readonly codes: ComponentCodes };
+  | { readonly kind: 'reals'; readonly sources: Sources; readonly column: FloatColumn }
+  | { readonly kind: 'ids'; readonly sources: Sources; readonly column: IdColumn }
+  | { readonly kind: 'components'; readonly sources: Sources; readonly codes: ComponentCodes };
 
 /** Half-open range of bodies. */
 export interface BodyRange {
@@ -25,10 +25,11 @@ export interface BodyRange {
   readonly end: number;
 }
 
-/** Bodies `body` … of a block, which go to index `at` … of the targets. */
+/** Bodies `body` … of a block, `first` … of the file, which go to index `at` … of the targets. */
 export interface Piece {
   readonly block: number;
   readonly body: number;
+  readonly first: number;
   readonly at: number;
   readonly count: number;
   readonly bytes: number;
@@ -61,17 +62,21 @@ function piecesOf(
   targets: readonly Target[],
   ranges: readonly BodyRange[],
 ): Piece[] {
-  const fields = new Set(targets.map(({ source }) => source.field));
+  const fields = new Set(targets.flatMap(({ sources }) => sources.map(({ field }) => field)));
   const pieces: Piece[] = [];
-  blocks.forEach(({ fields: placed, stride }, block) => {
+  blocks.forEach(({ fields: placed, stride, runs }, block) => {
     if (!placed.some(({ field }) => fields.has(field))) return;
     const most = Math.max(1, Math.floor(PIECE_BYTES / stride));
-    let at = 0;
-    for (const { begin, end } of ranges) {
-      for (let body = begin; body < end; body += most) {
-        const count = Math.min(most, end - body);
-        pieces.push({ block, body, at, count, bytes: count * stride });
-        at += count;
+    for (const run of runs) {
+      let passed = 0;
+      for (const { begin, end } of ranges) {
+        const last = Math.min(end, run.at + run.count);
+        for (let first = Math.max(begin, run.at); first < last; first += most) {
+          const count = Math.min(most, last - first);
+          const [body, at] = [run.body + first - run.at, passed + first - begin];
+          pieces.push({ block, body, first, at, count, bytes: count * stride });
+        }
+        passed += end - begin;
       }
     }
   });

@@ -2,12 +2,19 @@
 import { InputError } from '../../errors.ts';
 import { withInput } from '../files.ts';
 import { allocateColumn, type FloatColumn, type Particles, type Remark } from '../particles.ts';
-import type { DescribedColumn, FieldName, ReadOptions, SnapshotDescription } from '../reading.ts';
+import {
+  FIELD_NAMES,
+  type DescribedColumn,
+  type FieldName,
+  type ReadOptions,
+  type SnapshotDescription,
+} from '../reading.ts';
 import { screenSample } from '../screen.ts';
 import { readBodies, type BodyRange, type Target } from './bodies.ts';
 import { findLayout } from './find-layout.ts';
 import { layOverOrExplain } from './fit.ts';
-import { describeLayout, isSkip, type Layout, type LayoutField } from './layout.ts';
+import type { PlacedComponent } from './components.ts';
+import { describeLayout, isHeldBy, isSkip, type Layout, type LayoutField } from './layout.ts';
 import { planColumns, QUANTITIES, similarNames, type Plan, type Quantity } from './plan.ts';
 import { columnType, statedValues } from './read.ts';
 import type { RawStructure } from './structure.ts';
@@ -48,6 +55,7 @@ export async function describeRaw(
       columns: layout.fields.flatMap((entry) =>
         isSkip(entry) ? [] : [describeField(entry, structure, targets, planned.plan)],
       ),
+      components: structure.components.map(({ name, count, mass }) => ({ name, count, mass })),
       remarks: [
         ...found.remarks,
         ...similarNames(path, layout, options),
@@ -74,8 +82,10 @@ function sampleTargets(layout: Layout, ranges: readonly BodyRange[]): SampleTarg
   for (const field of layout.fields) {
     if (isSkip(field)) continue;
     for (let lane = 0; lane < field.width; lane++) {
-      const source = { field, lane };
-      targets.push({ kind: 'reals', source, column: allocateColumn(count, columnType(source)) });
+      const sources = [{ field, lane }];
+      // What a component does not hold is left as it is.
+      const column = allocateColumn(count, columnType(sources)).fill(NaN);
+      targets.push({ kind: 'reals', sources, column });
     }
   }
   return targets;
@@ -111,7 +121,7 @@ function describeField(
   let smallest = Infinity;
   let largest = -Infinity;
   for (const target of targets) {
-    if (target.source.field !== field) continue;
+    if (target.sources[0].field !== field) continue;
     for (const value of target.column) {
       if (value < smallest && value !== -Infinity) smallest = value;
       if (value > largest && value !== Infinity) largest = value;
@@ -124,7 +134,8 @@ function describeField(
     field: fieldNameOf(field, plan),
     type: field.type,
     width: field.width,
-    offset: block && place ? block.segments[0].offset + place.offset : null,
+    offset:
+      block && place && block.segments.length > 0 ? block.segments[0].offset + place.offset : null,
     stride: block?.stride ?? null,
     smallest: Number.isFinite(smallest) ? smallest : null,
     largest: Number.isFinite(largest) ? largest : null,
@@ -132,12 +143,14 @@ function describeField(
 }
 
 function fieldNameOf(field: LayoutField, plan: Plan): FieldName | null {
-  for (const [quantity, source] of plan) {
-    if (source.field !== field) continue;
+  for (const [quantity, sources] of plan) {
+    if (!sources.some((source) => source.field === field)) continue;
     if (field.width === 1) return quantity;
     return VECTOR_OF[quantity] ?? quantity;
   }
-  return null;
+  // A field of some components only is ours by name, though no column can be made of it.
+  const isOurs = (FIELD_NAMES as readonly string[]).includes(field.name);
+  return isOurs && field.components !== undefined ? (field.name as FieldName) : null;
 }
 
 const VECTOR_OF: Readonly<Partial<Record<Quantity, FieldName>>> = {
@@ -155,13 +168,24 @@ function screened(
   ranges: readonly BodyRange[],
 ): Remark[] {
   if (plan.size === 0) return [];
-  const count = targets[0].column.length;
+  const indices = ranges.flatMap(({ begin, end }) =>
+    Array.from({ length: end - begin }, (_, k) => begin + k),
+  );
+  const count = indices.length;
   const column = (quantity: Quantity): FloatColumn => {
-    const source = plan.get(quantity);
-    const target = targets.find(
-      (one) => one.source.field === source?.field && one.source.lane === source.lane,
+    const sources = plan.get(quantity) ?? [];
+    const own = targets.filter((target) =>
+      sources.some(({ field, lane }) => {
+        const [source] = target.sources;
+        return source.field === field && source.lane === lane;
+      }),
     );
-    return target?.column ?? allocateColumn(count).fill(structure.layout.constants?.mass ?? NaN);
+    const isWhole = own.length === 1 && structure.components.length === 0;
+    if (isWhole) return own[0].column;
+    return allocateColumn(count).map((_, k) => {
+      const held = own.find((target) => isHeldAt(target.sources[0].field, structure, indices[k]));
+      return held?.column[k] ?? statedAt(structure, quantity, indices[k]);
+    });
   };
   const sample: Particles = {
     count,
@@ -178,13 +202,28 @@ function screened(
     frame: { kind: 'physical' },
     origin: { file: path, format: 'raw', mantissaBits: 53, remarks: [] },
   };
-  const bodyOf = (index: number): number =>
-    index < ranges[0].end ? index : index - count + structure.count;
   try {
-    screenSample(sample, bodyOf);
+    screenSample(sample, (index) => indices[index]);
     return [];
   } catch (error) {
     if (!(error instanceof InputError)) throw error;
     return [asRemark(error)];
   }
+}
+
+function isHeldAt(field: LayoutField, { components }: RawStructure, body: number): boolean {
+  return isHeldBy(field, componentAt(components, body)?.name ?? null);
+}
+
+/** The mass that the layout states of a body. */
+function statedAt({ layout, components }: RawStructure, quantity: Quantity, body: number): number {
+  if (quantity !== 'mass') return NaN;
+  return layout.constants?.mass ?? componentAt(components, body)?.mass ?? NaN;
+}
+
+function componentAt(
+  components: readonly PlacedComponent[],
+  body: number,
+): PlacedComponent | undefined {
+  return components.find(({ begin, count }) => body >= begin && body < begin + count);
 }

@@ -1,10 +1,11 @@
 /** When a layout does not fit a file: which likely mistake, put right, would make it fit to the byte. */
 import { InputError } from '../../errors.ts';
 import { readExactly, type OpenFile } from '../files.ts';
-import { bodyBytes, isSkip, type Layout } from './layout.ts';
+import { addUp, statedComponents } from './components.ts';
+import { isSkip, type Layout } from './layout.ts';
 import { findRecord, type WordBytes } from './markers.ts';
 import { headerItemsEnd, readHeader, statedCount } from './header.ts';
-import { layOver, type RawStructure } from './structure.ts';
+import { layOver, plainBytes, type RawStructure } from './structure.ts';
 import type { ByteOrder } from './types.ts';
 
 /**
@@ -88,7 +89,9 @@ async function fittingChanges(file: OpenFile, layout: Layout): Promise<string[]>
 
 function variantsOf(layout: Layout): Variant[] {
   const other: ByteOrder = layout.byteOrder === 'little' ? 'big' : 'little';
-  const counted = layout.header.some((item) => item.name === 'count');
+  const counted =
+    layout.header.some((item) => item.name === 'count') ||
+    (layout.components ?? []).some(({ count }) => typeof count === 'object');
   const variants: Variant[] = [];
   for (const markers of ['none', 'fortran4', 'fortran8'] as const) {
     for (const byteOrder of [layout.byteOrder, other]) {
@@ -120,15 +123,19 @@ const HEADER_BYTES_AT_MOST = 65536;
 /** Another header length, if a stated count says how long the bodies are. */
 async function headerChange(file: OpenFile, layout: Layout): Promise<string[]> {
   if (layout.markers !== 'none') return [];
-  let stated: bigint | null;
+  let bodies: bigint;
   try {
-    stated = statedCount(file, layout, (await readHeader(file, layout)).header);
+    const { header } = await readHeader(file, layout);
+    const components = statedComponents(file, layout, header);
+    const total = statedCount(file, layout, header);
+    const stated = components === null ? total : addUp(file, components, total);
+    if (stated === null) return [];
+    bodies = plainBytes(layout, components, stated) - BigInt(layout.headerBytes);
   } catch (error) {
     if (error instanceof InputError) return [];
     throw error;
   }
-  if (stated === null) return [];
-  const bytes = BigInt(file.size) - stated * BigInt(bodyBytes(layout));
+  const bytes = BigInt(file.size) - bodies;
   if (bytes < BigInt(headerItemsEnd(layout)) || bytes > BigInt(HEADER_BYTES_AT_MOST)) return [];
   return [`headerBytes ${bytes}`];
 }

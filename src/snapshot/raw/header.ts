@@ -55,25 +55,28 @@ export async function readHeader(
   return { header, end };
 }
 
-/** The count that header or constants state, or null. It stays a bigint until the file proves it. */
+/**
+ * The count of all bodies that header or constants state, or null. It stays a bigint until the file
+ * proves it.
+ * @throws InputError `input.badCount`
+ */
 export function statedCount(
   file: OpenFile,
   layout: Layout,
   header: ReadonlyMap<string, number | bigint>,
 ): bigint | null {
   const value = header.get('count') ?? layout.constants?.count;
-  if (value === undefined) return null;
-  if (typeof value === 'number' && !Number.isInteger(value)) throw badCount(file, value);
-  const count = BigInt(value);
-  if (count < 0n) throw badCount(file, value);
-  if (count === 0n) throw noParticles(file, 'the header says that it holds 0 bodies');
-  return count;
+  return value === undefined ? null : countOf(file, 'count', value);
 }
 
-function badCount(file: OpenFile, value: number | bigint): InputError {
-  return new InputError(
+/** A value of the header as a count. @throws InputError `input.badCount` */
+export function countOf(file: OpenFile, what: string, value: number | bigint): bigint {
+  if (typeof value === 'bigint' ? value >= 0n : Number.isInteger(value) && value >= 0) {
+    return BigInt(value);
+  }
+  throw new InputError(
     'input.badCount',
-    `${file.path}: the header's count is ${value}; expected a whole number of at least 1`,
+    `${file.path}: the header's ${what} is ${value}; expected a whole number of at least 0`,
     'Correct type, offset or byteOrder of the count in the layout.',
   );
 }

@@ -4,12 +4,11 @@ import { InputError } from '../../errors.ts';
 import { nearestName } from '../../numerics/nearest.ts';
 import { parseJson } from '../jsonText.ts';
 import { expectation, foundText, keyPath, lookUp, offer, type Issue } from '../schemaIssues.ts';
-import { isSkip, LAYOUT_KEYS, layoutSchema, type Layout } from './layout.ts';
-import { TYPE_BYTES } from './types.ts';
+import { checkMeaning } from './layout-meaning.ts';
+import { LAYOUT_KEYS, layoutSchema, type Layout } from './layout.ts';
 
 /** Keys of the format that this version does not read yet. */
 const NOT_YET: Readonly<Record<string, string>> = {
-  components: 'Give each body its component as a field, or write one file a component.',
   parts: 'Join the parts to one file, or measure them one by one.',
 };
 
@@ -46,17 +45,20 @@ export function checkLayout(value: unknown, file: string): Layout {
   }
   const result = layoutSchema.safeParse(value);
   if (!result.success) throw invalid(file, value, result.error.issues);
-  checkNames(result.data, file);
-  checkHeader(result.data, file);
+  checkMeaning(result.data, file);
   return result.data;
 }
 
-/** An item of `fields` matches one of two kinds: take the errors of the kind it was meant to be. */
+/**
+ * An item of `fields` is a field or a gap, a number may stand in the header: take the errors of the
+ * kind it was meant to be.
+ */
 function unwrap(issue: Issue, value: unknown): Issue[] {
   if (issue.code !== 'invalid_union') return [issue];
   const item = lookUp(value, issue.path);
   const isObject = typeof item === 'object' && item !== null;
-  const branch = issue.errors[isObject && 'skip' in item ? 1 : 0] ?? [];
+  const isSecond = isObject && (issue.path[0] !== 'fields' || 'skip' in item);
+  const branch = issue.errors[isSecond ? 1 : 0] ?? [];
   return branch.map((inner) => ({ ...inner, path: [...issue.path, ...inner.path] }));
 }
 
@@ -75,8 +77,7 @@ function invalid(file: string, value: unknown, issues: readonly Issue[]): InputE
 
 function unknownKey(file: string, issue: z.core.$ZodIssueUnrecognizedKeys): InputError {
   const [key] = issue.keys;
-  const kind = issue.path[0] as keyof typeof LAYOUT_KEYS | undefined;
-  const known = LAYOUT_KEYS[kind ?? 'layout'].filter((name) => name !== '$schema');
+  const known = knownKeys(issue.path).filter((name) => name !== '$schema');
   const nearest = nearestName(key, known);
   return new InputError(
     'input.layoutInvalid',
@@ -85,113 +86,10 @@ function unknownKey(file: string, issue: z.core.$ZodIssueUnrecognizedKeys): Inpu
   );
 }
 
-const VECTORS: Readonly<Record<string, readonly string[]>> = {
-  position: ['x', 'y', 'z'],
-  velocity: ['vx', 'vy', 'vz'],
-  acceleration: ['ax', 'ay', 'az'],
-};
-
-function checkNames(layout: Layout, file: string): void {
-  const seen = new Map<string, string>();
-  layout.fields.forEach((entry, index) => {
-    if (isSkip(entry)) return;
-    const at = `fields[${index}]`;
-    if (entry.scale === 0) {
-      throw wrong(file, `${at}.scale`, 'found 0; expected another number', 'Remove the scale.');
-    }
-    const name = entry.name === 'm' ? 'mass' : entry.name;
-    const earlier = seen.get(name);
-    if (earlier !== undefined) {
-      throw wrong(
-        file,
-        `${at}.name`,
-        `"${entry.name}" stands there already as ${earlier}; expected each quantity once`,
-        'Rename the one that is not wanted.',
-      );
-    }
-    seen.set(name, at);
-    const width = Object.hasOwn(VECTORS, name) ? 3 : SCALARS.has(name) ? 1 : entry.width;
-    if (entry.width !== width) {
-      throw wrong(
-        file,
-        `${at}.width`,
-        `found ${entry.width} for ${entry.name}; expected ${width}`,
-        width === 3
-          ? 'Or give the three components as separate fields.'
-          : 'Give each number its own field.',
-      );
-    }
-  });
-  for (const [vector, scalars] of Object.entries(VECTORS)) {
-    const both = scalars.find((scalar) => seen.has(scalar));
-    if (seen.has(vector) && both !== undefined) {
-      throw wrong(
-        file,
-        'fields',
-        `found both "${vector}" and "${both}"; expected one of them`,
-        'Rename the one that is not wanted.',
-      );
-    }
-  }
-  if (seen.has('mass') && layout.constants?.mass !== undefined) {
-    throw wrong(
-      file,
-      'constants.mass',
-      `found, although ${seen.get('mass')} holds masses; expected one of them`,
-      'Remove constants.mass, or rename the field.',
-    );
-  }
-}
-
-const SCALARS = new Set([
-  'mass',
-  ...Object.values(VECTORS).flat(),
-  ...[
-    'id',
-    'component',
-    'softening',
-    'potential',
-    'specificEnergy',
-    'density',
-    'group',
-    'subgroup',
-  ],
-]);
-
-function checkHeader(layout: Layout, file: string): void {
-  const seen = new Set<string>();
-  layout.header.forEach((item, index) => {
-    const end = item.offset + TYPE_BYTES[item.type];
-    if (end > layout.headerBytes) {
-      throw wrong(
-        file,
-        `header[${index}]`,
-        `"${item.name}" ends at byte ${end}, but headerBytes is ${layout.headerBytes}`,
-        `Correct the offset, or set headerBytes to at least ${end}.`,
-      );
-    }
-    if (seen.has(item.name)) {
-      throw wrong(
-        file,
-        `header[${index}].name`,
-        `"${item.name}" stands there twice; expected each name once`,
-        'Rename one of them.',
-      );
-    }
-    seen.add(item.name);
-  });
-  for (const name of Object.keys(layout.constants ?? {})) {
-    if (seen.has(name)) {
-      throw wrong(
-        file,
-        `constants.${name}`,
-        `found, although the header holds ${name}; expected one of them`,
-        'Remove the constant, or rename the item of the header.',
-      );
-    }
-  }
-}
-
-function wrong(file: string, key: string, text: string, remedy: string): InputError {
-  return new InputError('input.layoutInvalid', `${file}: ${key}: ${text}`, remedy);
+/** Keys of the object at a place of the layout. */
+function knownKeys(path: readonly PropertyKey[]): readonly string[] {
+  const [kind = 'layout', index, ...deeper] = path;
+  const isReference = deeper.length > 0 || (kind === 'comoving' && index !== undefined);
+  if (!isReference) return LAYOUT_KEYS[kind as keyof typeof LAYOUT_KEYS];
+  return deeper[0] === 'count' ? ['header'] : LAYOUT_KEYS.reference;
 }

@@ -25,6 +25,35 @@ const headerItem = z
   })
   .describe('one number of the header');
 
+const fromHeader = z.string().min(1).describe('name of an item of the header');
+
+const reference = z.strictObject({
+  header: fromHeader,
+  scale: z.number().default(1).describe('the value is the number in the header times this'),
+});
+
+/** A number in the layout, or one of the header. */
+const stated = z.union([z.number(), reference]);
+
+const component = z
+  .strictObject({
+    name: z.string().min(1),
+    count: z
+      .union([z.int().min(0), z.strictObject({ header: fromHeader })])
+      .describe('number of bodies, 0 or more'),
+    mass: stated.optional().describe('mass of each of its bodies, if no field holds it'),
+    softening: stated
+      .optional()
+      .describe('Plummer-equivalent softening length of each of its bodies, if no field holds it'),
+  })
+  .describe('a kind of bodies that lie together');
+
+const holders = z
+  .array(z.string())
+  .min(1)
+  .optional()
+  .describe('names of the components that hold it; all if left out');
+
 const field = z
   .strictObject({
     name: z
@@ -41,6 +70,7 @@ const field = z
       .default(1)
       .describe('numbers a body: 3 for position, velocity, acceleration'),
     scale: z.number().default(1).describe('the value is the number in the file times this; not 0'),
+    components: holders,
   })
   .describe('a quantity of each body');
 
@@ -51,6 +81,7 @@ const skip = z
       .min(1)
       .max(2 ** 31)
       .describe('bytes a body to pass over'),
+    components: holders,
   })
   .describe('bytes that hold nothing of interest');
 
@@ -88,9 +119,16 @@ export const layoutSchema = z
       .describe('bytes before the first body, Fortran length words not counted'),
     header: z.array(headerItem).default([]),
     arrangement: z
-      .enum(['interleaved', 'columns'])
+      .enum(['interleaved', 'columns', 'columnsByComponent'])
       .default('interleaved')
-      .describe('all fields of a body together, or one block a field'),
+      .describe(
+        'all fields of a body together, one component after the other; or one block a field, in each the bodies of all components that hold it; or all blocks of one component after those of another',
+      ),
+    components: z
+      .array(component)
+      .min(1)
+      .optional()
+      .describe('kinds of bodies, in the order in which they lie in the file'),
     fields: z.array(z.union([field, skip])).min(1),
     constants: constants.optional(),
     units: z.enum(unitNames).optional().describe('system of units; sets G unless gravity is given'),
@@ -105,7 +143,9 @@ export const layoutSchema = z
 export const LAYOUT_KEYS = {
   layout: Object.keys(layoutSchema.shape),
   header: Object.keys(headerItem.shape),
-  fields: [...Object.keys(field.shape), ...Object.keys(skip.shape)],
+  fields: [...new Set([...Object.keys(field.shape), ...Object.keys(skip.shape)])],
+  components: Object.keys(component.shape),
+  reference: Object.keys(reference.shape),
   constants: Object.keys(constants.shape),
 } as const;
 
@@ -114,6 +154,8 @@ export type LayoutInput = z.input<typeof layoutSchema>;
 /** A layout with all defaults filled in. */
 export type Layout = z.output<typeof layoutSchema>;
 export type LayoutField = z.output<typeof field>;
+export type LayoutComponent = z.output<typeof component>;
+export type StatedNumber = z.output<typeof stated>;
 export type LayoutSkip = z.output<typeof skip>;
 
 /** Seven little-endian float64 a body: what is assumed when there is no layout at all. */
@@ -136,19 +178,35 @@ export function fieldBytes(entry: LayoutField | LayoutSkip): number {
   return isSkip(entry) ? entry.skip : TYPE_BYTES[entry.type] * entry.width;
 }
 
-/** Bytes of one body, without Fortran length words. */
-export function bodyBytes(layout: Layout): number {
-  return layout.fields.reduce((sum, entry) => sum + fieldBytes(entry), 0);
+/** Whether a component, or each body of a layout without components (null), holds a field. */
+export function isHeldBy(entry: LayoutField | LayoutSkip, component: string | null): boolean {
+  return entry.components === undefined || component === null
+    ? true
+    : entry.components.includes(component);
 }
+
+/** Bytes of one body, without Fortran length words. */
+export function bodyBytes(layout: Layout, component: string | null = null): number {
+  return layout.fields
+    .filter((entry) => isHeldBy(entry, component))
+    .reduce((sum, entry) => sum + fieldBytes(entry), 0);
+}
+
+const ARRANGEMENT_TEXT: Readonly<Record<Layout['arrangement'], string>> = {
+  interleaved: 'interleaved',
+  columns: 'columns',
+  columnsByComponent: 'columns by component',
+};
 
 /** A layout in one line, for `describe`. */
 export function describeLayout(layout: Layout): string {
-  const fields = layout.fields.map((entry) =>
-    isSkip(entry)
-      ? `(${entry.skip} bytes)`
-      : `${entry.name} ${entry.type}${entry.width > 1 ? `×${entry.width}` : ''}`,
-  );
-  const parts = [`${layout.byteOrder}-endian`, layout.arrangement];
+  const fields = layout.fields.map((entry) => {
+    const holders = entry.components === undefined ? '' : ` of ${entry.components.join(' and ')}`;
+    return isSkip(entry)
+      ? `(${entry.skip} bytes${holders})`
+      : `${entry.name} ${entry.type}${entry.width > 1 ? `×${entry.width}` : ''}${holders}`;
+  });
+  const parts = [`${layout.byteOrder}-endian`, ARRANGEMENT_TEXT[layout.arrangement]];
   if (layout.markers !== 'none') parts.push(`${layout.markers} markers`);
   if (layout.headerBytes > 0) parts.push(`header of ${layout.headerBytes} bytes`);
   return `${parts.join(', ')}: ${fields.join(', ')}`;

@@ -4,7 +4,7 @@ import { nearestName } from '../../numerics/nearest.ts';
 import { missingColumn, unknownColumn } from '../columns.ts';
 import type { Remark } from '../particles.ts';
 import { FIELD_NAMES, type FieldName, type ReadOptions } from '../reading.ts';
-import { isSkip, type Layout, type LayoutField } from './layout.ts';
+import { isHeldBy, isSkip, type Layout, type LayoutComponent, type LayoutField } from './layout.ts';
 
 /** Our columns, one number a body. */
 export const QUANTITIES = [
@@ -36,7 +36,13 @@ export interface Source {
   readonly lane: number;
 }
 
-export type Plan = ReadonlyMap<Quantity, Source>;
+/**
+ * Of one column: several if components hold it in fields of their own; none if the layout states
+ * the value (a mass or a softening).
+ */
+export type Sources = readonly Source[];
+
+export type Plan = ReadonlyMap<Quantity, Sources>;
 
 const VECTORS = [
   { vector: 'position', scalars: ['x', 'y', 'z'], needed: true },
@@ -56,89 +62,156 @@ const OPTIONAL_SCALARS = [
 
 /**
  * Plans the reading of mass, position, velocity and `id`, and of the optional columns asked for
- * that the file has.
+ * that the file has. A column is planned only if all components have it.
  * @throws InputError `input.unknownColumn`, `input.missingColumn`, `input.columnWidth`
  */
 export function planColumns(file: string, layout: Layout, options: ReadOptions): Plan {
-  const fields = new Map<string, LayoutField>();
-  for (const entry of layout.fields) if (!isSkip(entry)) fields.set(entry.name, entry);
-  const find = fieldFinder(file, fields, options);
-  const plan = new Map<Quantity, Source>();
-
-  const mass = find('mass', 1) ?? (options.columns?.mass === undefined ? find('m', 1) : null);
-  if (mass !== null) plan.set('mass', { field: mass, lane: 0 });
-  else if (layout.constants?.mass === undefined) {
-    throw missingColumn(
-      file,
-      'mass',
-      [...fields.keys()],
-      ', or give constants.mass in the layout.',
-    );
-  }
+  const finder = new FieldFinder(file, layout, options);
+  const plan = new Map<Quantity, Sources>();
   const wanted = new Set<string>(options.optional ?? []);
+
+  plan.set('mass', finder.needed('mass', finder.mass(), 'mass'));
   for (const { vector, scalars, needed } of VECTORS) {
     if (!needed && !wanted.has(vector) && !scalars.some((name) => wanted.has(name))) continue;
-    planVector(file, plan, [...fields.keys()], find, options, vector, scalars, needed);
+    const found = finder.vector(vector, scalars);
+    if (!needed && !found.every((sources) => finder.isWhole(sources))) continue;
+    const lacking = found.map((sources) => finder.lacking(sources));
+    const isAbsent = lacking.every((one) => one === lacking[0]);
+    scalars.forEach((name, k) => {
+      plan.set(name, finder.needed(name, found[k], isAbsent ? vector : name));
+    });
   }
-  const id = find('id', 1);
-  if (id !== null) plan.set('id', { field: id, lane: 0 });
-  for (const name of OPTIONAL_SCALARS) {
-    const field = wanted.has(name) ? find(name, 1) : null;
-    if (field !== null) plan.set(name, { field, lane: 0 });
+  const others = OPTIONAL_SCALARS.filter((name) => wanted.has(name));
+  for (const name of ['id', ...others] as const) {
+    const sources = finder.scalar(name);
+    if (finder.isWhole(sources, name)) plan.set(name, sources);
   }
   return plan;
 }
 
-type Finder = (name: FieldName | 'm', width: number) => LayoutField | null;
+const ALL = Symbol('all components');
 
-function fieldFinder(
-  file: string,
-  fields: ReadonlyMap<string, LayoutField>,
-  options: ReadOptions,
-): Finder {
-  return (name, width) => {
-    const column = name === 'm' ? undefined : options.columns?.[name];
-    const field = fields.get(column ?? name);
-    if (field === undefined) {
-      if (column === undefined || name === 'm') return null;
-      throw unknownColumn(file, name, column, [...fields.keys()]);
+class FieldFinder {
+  readonly #file: string;
+  readonly #layout: Layout;
+  readonly #columns: NonNullable<ReadOptions['columns']>;
+  readonly #fields: readonly LayoutField[];
+
+  constructor(file: string, layout: Layout, options: ReadOptions) {
+    this.#file = file;
+    this.#layout = layout;
+    this.#columns = options.columns ?? {};
+    this.#fields = layout.fields.flatMap((entry) => (isSkip(entry) ? [] : [entry]));
+  }
+
+  /** The fields of our name, or of the name that the user gave for it. */
+  scalar(name: FieldName): Source[] {
+    return this.#named(name, 1).map((field) => ({ field, lane: 0 }));
+  }
+
+  mass(): Source[] {
+    const own = this.scalar('mass');
+    if (this.#columns.mass !== undefined) return own;
+    return [...own, ...this.#fields.filter(isNamed('m')).map((field) => ({ field, lane: 0 }))];
+  }
+
+  /** Sources of x, y and z: from fields of width 3 and from single ones. */
+  vector(
+    vector: 'position' | 'velocity' | 'acceleration',
+    scalars: readonly FieldName[],
+  ): Source[][] {
+    const byScalars = scalars.some((name) => this.#columns[name] !== undefined);
+    const whole = byScalars ? [] : this.#named(vector, 3);
+    if (this.#columns[vector] !== undefined && !byScalars) {
+      return scalars.map((_, lane) => whole.map((field) => ({ field, lane })));
     }
-    if (field.width !== width) {
+    return scalars.map((name, lane) => [
+      ...whole.map((field) => ({ field, lane })),
+      ...this.scalar(name),
+    ]);
+  }
+
+  /** Whether all components have it. */
+  isWhole(sources: Sources, quantity?: string): boolean {
+    return this.lacking(sources, quantity) === null;
+  }
+
+  /** The sources, if all components have one. @throws InputError `input.missingColumn` */
+  needed(quantity: Quantity, sources: Sources, asked: FieldName): Sources {
+    const lacking = this.lacking(sources, quantity);
+    if (lacking === null) return sources;
+    const names = [...new Set(this.#fields.map(({ name }) => name))];
+    const alternative =
+      quantity !== 'mass'
+        ? ''
+        : lacking === ALL
+          ? ', or give constants.mass in the layout.'
+          : ', or give the component its mass in the layout.';
+    const error = missingColumn(this.#file, asked, names, alternative);
+    if (lacking === ALL) throw error;
+    throw new InputError(
+      'input.missingColumn',
+      `${this.#file}: no column for ${asked} of the component ${lacking}; the file has ${names.join(', ')}`,
+      `Add the component to the field in the layout${alternative || '.'}`,
+    );
+  }
+
+  /** The first component that has it neither in a field nor stated; {@link ALL} if none has it. */
+  lacking(sources: Sources, quantity?: string): string | typeof ALL | null {
+    const { components, constants } = this.#layout;
+    // What the layout itself can state, in place of a field.
+    const stated = quantity === 'mass' || quantity === 'softening' ? quantity : null;
+    if (stated === 'mass' && constants?.mass !== undefined) return null;
+    if (components === undefined) return sources.length > 0 ? null : ALL;
+    const isLacking = (component: LayoutComponent): boolean =>
+      (stated === null || component[stated] === undefined) &&
+      !sources.some(({ field }) => isHeldBy(field, component.name));
+    const lacking = components.filter(isLacking);
+    if (lacking.length === 0) return null;
+    return lacking.length === components.length ? ALL : lacking[0].name;
+  }
+
+  #named(name: FieldName, width: number): LayoutField[] {
+    const column = this.#columns[name];
+    const fields = this.#fields.filter(isNamed(column ?? name));
+    if (fields.length === 0 && column !== undefined) {
+      const names = [...new Set(this.#fields.map((field) => field.name))];
+      throw unknownColumn(this.#file, name, column, names);
+    }
+    for (const field of fields) {
+      if (field.width === width) continue;
       throw new InputError(
         'input.columnWidth',
-        `${file}: "${field.name}" has ${field.width} numbers a body; expected ${width} for ${name}`,
+        `${this.#file}: "${field.name}" has ${field.width} numbers a body; expected ${width} for ${name}`,
         width === 3 ? 'Name a field of width 3, or x, y and z one by one.' : 'Name another field.',
       );
     }
-    return field;
-  };
+    return fields;
+  }
 }
 
-function planVector(
+const isNamed =
+  (name: string) =>
+  (field: LayoutField): boolean =>
+    field.name === name;
+
+/** Remarks on columns that were asked for and that some components lack. */
+export function partialFields(
   file: string,
-  plan: Map<Quantity, Source>,
-  available: readonly string[],
-  find: Finder,
+  layout: Layout,
   options: ReadOptions,
-  vector: 'position' | 'velocity' | 'acceleration',
-  scalars: readonly ('x' | 'y' | 'z' | 'vx' | 'vy' | 'vz' | 'ax' | 'ay' | 'az')[],
-  needed: boolean,
-): void {
-  const byScalars = scalars.some((name) => options.columns?.[name] !== undefined);
-  const field = byScalars ? null : find(vector, 3);
-  if (field !== null) {
-    scalars.forEach((name, lane) => plan.set(name, { field, lane }));
-    return;
-  }
-  const found = scalars.map((name) => find(name, 1));
-  if (!needed && found.every((one) => one === null)) return;
-  found.forEach((one, index) => {
-    const name = scalars[index];
-    if (one === null) {
-      const missing = found.every((other) => other === null) ? vector : name;
-      throw missingColumn(file, missing, available);
-    }
-    plan.set(name, { field: one, lane: 0 });
+  plan: Plan,
+): Remark[] {
+  const wanted = new Set<string>(options.optional ?? []);
+  return layout.fields.flatMap((entry) => {
+    if (isSkip(entry) || entry.components === undefined || !wanted.has(entry.name)) return [];
+    if (plan.has((entry.name === 'acceleration' ? 'ax' : entry.name) as Quantity)) return [];
+    const remark: Remark = {
+      code: 'layout.partialField',
+      text: `${file}: ${entry.name} was left on disk: of the components only ${entry.components.join(' and ')} have it`,
+      remedy: 'Read these components alone if it is needed.',
+    };
+    return [remark];
   });
 }
 

@@ -11,11 +11,19 @@ import {
 import type { ReadOptions } from '../reading.ts';
 import { UNIT_SYSTEMS } from '../units.ts';
 import { readBodies, type Target } from './bodies.ts';
-import { ComponentCodes } from './components.ts';
+import { ComponentCodes } from './component-codes.ts';
 import { allocateIds } from './decode.ts';
 import { findLayout, type FoundLayout } from './find-layout.ts';
 import { layOverOrExplain } from './fit.ts';
-import { planColumns, similarNames, type Plan, type Quantity, type Source } from './plan.ts';
+import type { Layout } from './layout.ts';
+import {
+  partialFields,
+  planColumns,
+  similarNames,
+  type Plan,
+  type Quantity,
+  type Sources,
+} from './plan.ts';
 import type { RawStructure } from './structure.ts';
 import { TYPE_DIGITS } from './types.ts';
 
@@ -41,7 +49,7 @@ export async function readRawFile(
   const found = await findLayout(file.path, options.layout);
   const structure = await layOverOrExplain(file, found.layout, found.file);
   const plan = planColumns(file.path, found.layout, options);
-  const columns = allocate(file, structure.count, plan);
+  const columns = allocate(file, structure.count, plan, found.layout);
   await readBodies(
     file,
     structure,
@@ -58,12 +66,12 @@ const ID_QUANTITIES: ReadonlySet<Quantity> = new Set(['id', 'group', 'subgroup']
 
 type Columns = ReadonlyMap<Quantity, Target>;
 
-function allocate(file: OpenFile, count: number, plan: Plan): Columns {
+function allocate(file: OpenFile, count: number, plan: Plan, layout: Layout): Columns {
   try {
     return new Map(
-      [...plan].map(([quantity, source]) => [
+      [...plan].map(([quantity, sources]) => [
         quantity,
-        allocateTarget(file, count, quantity, source),
+        allocateTarget(file, count, quantity, sources, layout),
       ]),
     );
   } catch (error) {
@@ -77,20 +85,47 @@ function allocate(file: OpenFile, count: number, plan: Plan): Columns {
   }
 }
 
-function allocateTarget(file: OpenFile, count: number, quantity: Quantity, source: Source): Target {
-  const { type, scale } = source.field;
+function allocateTarget(
+  file: OpenFile,
+  count: number,
+  quantity: Quantity,
+  sources: Sources,
+  layout: Layout,
+): Target {
   if (quantity === 'component') {
-    return { kind: 'components', source, codes: new ComponentCodes(file.path, count) };
+    return { kind: 'components', sources, codes: new ComponentCodes(file.path, count) };
   }
-  if (ID_QUANTITIES.has(quantity) && scale === 1) {
-    return { kind: 'ids', source, column: allocateIds(count, type) };
+  if (ID_QUANTITIES.has(quantity) && sources.every(({ field }) => field.scale === 1)) {
+    return { kind: 'ids', sources, column: allocateIds(count, sources[0].field.type) };
   }
-  return { kind: 'reals', source, column: allocateColumn(count, columnType(source)) };
+  const type = isStated(layout, quantity) ? 'float64' : columnType(sources);
+  return { kind: 'reals', sources, column: allocateColumn(count, type) };
 }
 
 /** The precision of the file is kept where nothing is lost by it. */
-export function columnType(source: Source): 'float64' | 'float32' {
-  return source.field.type === 'float32' && source.field.scale === 1 ? 'float32' : 'float64';
+export function columnType(sources: Sources): 'float64' | 'float32' {
+  const isSingle = ({ field }: Sources[number]) => field.type === 'float32' && field.scale === 1;
+  return sources.every(isSingle) ? 'float32' : 'float64';
+}
+
+type StatedQuantity = 'mass' | 'softening';
+
+/** Whether the layout itself states this quantity of all bodies or of some components. */
+function isStated(layout: Layout, quantity: Quantity): quantity is StatedQuantity {
+  if (quantity !== 'mass' && quantity !== 'softening') return false;
+  const isConstant = quantity === 'mass' && layout.constants?.mass !== undefined;
+  return isConstant || (layout.components ?? []).some((one) => one[quantity] !== undefined);
+}
+
+/** Writes what the layout states into a column whose bodies have the indices of the file. */
+function fillStated(structure: RawStructure, quantity: StatedQuantity, column: FloatColumn): void {
+  const { components, layout } = structure;
+  if (quantity === 'mass' && layout.constants?.mass !== undefined) {
+    column.fill(layout.constants.mass);
+  }
+  for (const { begin, count, [quantity]: value } of components) {
+    if (value !== null) column.fill(value, begin, begin + count);
+  }
 }
 
 function assemble(
@@ -102,34 +137,56 @@ function assemble(
   options: ReadOptions,
 ): Particles {
   const { layout } = found;
-  const { count } = structure;
-  const reals = (quantity: Quantity): FloatColumn => {
-    const target = columns.get(quantity);
-    if (target?.kind === 'reals') return target.column;
-    // Only a mass can be missing here: it is the same for all bodies then.
-    return allocateColumn(count).fill(layout.constants?.mass ?? NaN);
-  };
-  const components = columns.get('component');
+  for (const [quantity, target] of columns) {
+    if (target.kind === 'reals' && isStated(layout, quantity)) {
+      fillStated(structure, quantity, target.column);
+    }
+  }
+  const [mass, x, y, z, vx, vy, vz] = PHASE_SPACE.map((name) => realsOf(columns, name));
+  const { component, componentNames } = componentsOf(structure, columns, options);
   return {
-    count,
-    mass: reals('mass'),
-    x: reals('x'),
-    y: reals('y'),
-    z: reals('z'),
-    vx: reals('vx'),
-    vy: reals('vy'),
-    vz: reals('vz'),
-    columns: optionalColumns(columns),
-    componentNames: components?.kind === 'components' ? components.codes.finish() : [],
+    count: structure.count,
+    ...{ mass, x, y, z, vx, vy, vz },
+    columns: { ...optionalColumns(columns), ...(component && { component }) },
+    componentNames,
     ...statedValues(path, structure),
     frame: { kind: 'physical' },
     origin: {
       file: path,
       format: 'raw',
       mantissaBits: mantissaBits(plan),
-      remarks: [...found.remarks, ...similarNames(path, layout, options)],
+      remarks: [
+        ...found.remarks,
+        ...similarNames(path, layout, options),
+        ...partialFields(path, layout, options, plan),
+      ],
     },
   };
+}
+
+const PHASE_SPACE = ['mass', 'x', 'y', 'z', 'vx', 'vy', 'vz'] as const;
+
+function realsOf(columns: Columns, quantity: Quantity): FloatColumn {
+  const target = columns.get(quantity);
+  if (target?.kind !== 'reals') throw new Error(`${quantity} was planned as something else`);
+  return target.column;
+}
+
+/** Components as the layout lists them, or as a field has them. */
+function componentsOf(
+  { components, count }: RawStructure,
+  columns: Columns,
+  options: ReadOptions,
+): { component?: Uint16Array; componentNames: readonly string[] } {
+  const target = columns.get('component');
+  if (target?.kind === 'components') {
+    return { componentNames: target.codes.finish(), component: target.codes.column };
+  }
+  const isWanted = options.optional?.includes('component') ?? false;
+  if (!isWanted || components.length === 0) return { componentNames: [] };
+  const component = new Uint16Array(new SharedArrayBuffer(2 * count));
+  components.forEach(({ begin, count: own }, index) => component.fill(index, begin, begin + own));
+  return { component, componentNames: components.map(({ name }) => name) };
 }
 
 function optionalColumns(columns: Columns): OptionalColumns {
@@ -144,8 +201,6 @@ function optionalColumns(columns: Columns): OptionalColumns {
       result[quantity] = target.column;
     }
   }
-  const components = columns.get('component');
-  if (components?.kind === 'components') result.component = components.codes.column;
   const [x, y, z] = (['ax', 'ay', 'az'] as const).map((quantity) => columns.get(quantity));
   if (x?.kind === 'reals' && y?.kind === 'reals' && z?.kind === 'reals') {
     result.acceleration = { x: x.column, y: y.column, z: z.column };
@@ -154,12 +209,8 @@ function optionalColumns(columns: Columns): OptionalColumns {
 }
 
 function mantissaBits(plan: Plan): number {
-  let bits = 53;
-  for (const quantity of ['mass', 'x', 'y', 'z', 'vx', 'vy', 'vz'] as const) {
-    const source = plan.get(quantity);
-    if (source !== undefined) bits = Math.min(bits, TYPE_DIGITS[source.field.type]);
-  }
-  return bits;
+  const sources = PHASE_SPACE.flatMap((quantity) => plan.get(quantity) ?? []);
+  return Math.min(53, ...sources.map(({ field }) => TYPE_DIGITS[field.type]));
 }
 
 /**

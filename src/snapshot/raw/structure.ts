@@ -1,16 +1,26 @@
-/** Where in a file the numbers lie that a layout speaks of: header, count and blocks, checked to the byte. */
+/** Where in a file the numbers lie that a layout speaks of: header, counts and blocks, checked to the byte. */
 import { InputError } from '../../errors.ts';
 import type { OpenFile } from '../files.ts';
-import { noParticles, readHeader, statedCount, wordBytesOf } from './header.ts';
 import {
-  bodyBytes,
-  fieldBytes,
-  isSkip,
-  type Layout,
-  type LayoutField,
-  type LayoutSkip,
-} from './layout.ts';
-import { findRecord, type Segment, type WordBytes } from './markers.ts';
+  addUp,
+  countsText,
+  placeComponents,
+  statedComponents,
+  type PlacedComponent,
+  type StatedComponent,
+} from './components.ts';
+import { noParticles, readHeader, statedCount, wordBytesOf } from './header.ts';
+import { bodyBytes, fieldBytes, isSkip, type Layout, type LayoutField } from './layout.ts';
+import { findRecord, type FortranRecord, type Segment, type WordBytes } from './markers.ts';
+import {
+  countIn,
+  runsOf,
+  sectionsOf,
+  strideOf,
+  type Entry,
+  type Run,
+  type Section,
+} from './sections.ts';
 
 /** A field inside a block, `offset` bytes after the beginning of each body's part of it. */
 export interface PlacedField {
@@ -23,6 +33,8 @@ export interface Block {
   readonly fields: readonly PlacedField[];
   readonly stride: number;
   readonly segments: readonly Segment[];
+  /** One; more if a field is held by components that are not neighbours. */
+  readonly runs: readonly Run[];
   /** If each body is a Fortran record of its own: the words that stand in each stride. */
   readonly bodyMarkers: { readonly wordBytes: WordBytes; readonly length: number } | null;
 }
@@ -32,6 +44,8 @@ export interface RawStructure {
   readonly count: number;
   /** All items of the header by name, 64-bit integers as bigint. */
   readonly header: ReadonlyMap<string, number | bigint>;
+  /** In the order of the file; none if the layout does not list any. */
+  readonly components: readonly PlacedComponent[];
   readonly blocks: readonly Block[];
 }
 
@@ -39,21 +53,51 @@ export interface RawStructure {
  * Lays the layout over the file.
  * @throws InputError `input.truncated` (shorter than count and layout need), `input.sizeMismatch`
  * (longer), `input.partialRecord` (no count, and not a whole number of bodies), `input.badCount`,
- * `input.noParticles`, `input.markers`
+ * `input.headerValue`, `input.noParticles`, `input.markers`
  */
 export async function layOver(file: OpenFile, layout: Layout): Promise<RawStructure> {
   const { header, end } = await readHeader(file, layout);
-  const stated = statedCount(file, layout, header);
-  if (layout.markers === 'none') {
-    const count = stated ?? countFromLength(file, layout);
-    if (stated !== null) checkLength(file, layout, stated);
-    return { layout, count: Number(count), header, blocks: plainBlocks(layout, Number(count)) };
+  const components = statedComponents(file, layout, header);
+  const total = statedCount(file, layout, header);
+  const stated = components === null ? total : addUp(file, components, total);
+  if (stated === 0n) {
+    const isWhole = components === null;
+    throw noParticles(
+      file,
+      isWhole ? 'the header says that it holds 0 bodies' : 'all its components have 0 bodies',
+    );
   }
-  const { count, blocks } =
-    layout.arrangement === 'interleaved'
-      ? await interleavedRecords(file, layout, end, stated)
-      : await columnRecords(file, layout, end, stated);
-  return { layout, count, header, blocks };
+  const sections = sectionsOf(layout, components);
+  const found =
+    layout.markers === 'none'
+      ? plainBlocks(file, layout, sections, components, stated)
+      : await recordBlocks(file, layout, end, sections, stated);
+  return { layout, header, components: placeComponents(components ?? []), ...found };
+}
+
+interface Found {
+  readonly count: number;
+  readonly blocks: Block[];
+}
+
+function plainBlocks(
+  file: OpenFile,
+  layout: Layout,
+  sections: readonly Section[],
+  components: readonly StatedComponent[] | null,
+  stated: bigint | null,
+): Found {
+  if (stated !== null) checkLength(file, layout, components, stated);
+  const count = Number(stated ?? countFromLength(file, layout));
+  let offset = layout.headerBytes;
+  const blocks = sections.map((section): Block => {
+    const stride = strideOf(section);
+    const segments = [{ offset, bytes: Number(countIn(section, BigInt(count))) * stride }];
+    offset += segments[0].bytes;
+    const runs = runsOf(section, count);
+    return { fields: place(section.entries, 0), stride, segments, runs, bodyMarkers: null };
+  });
+  return { count, blocks };
 }
 
 function countFromLength(file: OpenFile, layout: Layout): bigint {
@@ -71,12 +115,30 @@ function countFromLength(file: OpenFile, layout: Layout): bigint {
   return BigInt(bytes / stride);
 }
 
-function checkLength(file: OpenFile, layout: Layout, count: bigint): void {
-  const stride = bodyBytes(layout);
-  const expected = BigInt(layout.headerBytes) + count * BigInt(stride);
+/** Bytes that a file without length words has. */
+export function plainBytes(
+  layout: Layout,
+  components: readonly StatedComponent[] | null,
+  count: bigint,
+): bigint {
+  const bodies =
+    components === null
+      ? count * BigInt(bodyBytes(layout))
+      : components.reduce((sum, c) => sum + c.count * BigInt(bodyBytes(layout, c.name)), 0n);
+  return BigInt(layout.headerBytes) + bodies;
+}
+
+function checkLength(
+  file: OpenFile,
+  layout: Layout,
+  components: readonly StatedComponent[] | null,
+  count: bigint,
+): void {
+  const expected = plainBytes(layout, components, count);
   const size = BigInt(file.size);
   if (expected === size) return;
-  const sum = `${count} bodies of ${stride} bytes${layout.headerBytes > 0 ? ` after a header of ${layout.headerBytes}` : ''} take ${expected} bytes`;
+  const after = layout.headerBytes > 0 ? ` after a header of ${layout.headerBytes}` : '';
+  const sum = `${bodiesText(layout, components, count)}${after} take ${expected} bytes`;
   if (expected < size) {
     throw new InputError(
       'input.sizeMismatch',
@@ -84,15 +146,28 @@ function checkLength(file: OpenFile, layout: Layout, count: bigint): void {
       'Correct the layout.',
     );
   }
-  const whole = (size - BigInt(layout.headerBytes)) / BigInt(stride);
+  const isOneBlock = components === null && layout.arrangement === 'interleaved';
+  const whole = (size - BigInt(layout.headerBytes)) / BigInt(bodyBytes(layout));
   throw new InputError(
     'input.truncated',
     `${file.path} has ${size} bytes; expected ${expected}: ${sum}`,
-    `If the layout is right, the file is cut off${layout.arrangement === 'interleaved' ? ` inside body ${whole} (counted from 0)` : ''}.`,
+    `If the layout is right, the file is cut off${isOneBlock ? ` inside body ${whole} (counted from 0)` : ''}.`,
   );
 }
 
-function place(entries: readonly (LayoutField | LayoutSkip)[], start: number): PlacedField[] {
+function bodiesText(
+  layout: Layout,
+  components: readonly StatedComponent[] | null,
+  count: bigint,
+): string {
+  if (components === null) return `${count} bodies of ${bodyBytes(layout)} bytes`;
+  return components
+    .filter((c) => c.count > 0n)
+    .map((c) => `${countsText([c])} of ${bodyBytes(layout, c.name)} bytes`)
+    .join(' and ');
+}
+
+function place(entries: readonly Entry[], start: number): PlacedField[] {
   const placed: PlacedField[] = [];
   let offset = start;
   for (const entry of entries) {
@@ -102,83 +177,88 @@ function place(entries: readonly (LayoutField | LayoutSkip)[], start: number): P
   return placed;
 }
 
-function plainBlocks(layout: Layout, count: number): Block[] {
-  const parts =
-    layout.arrangement === 'interleaved' ? [layout.fields] : layout.fields.map((f) => [f]);
-  let offset = layout.headerBytes;
-  return parts.map((entries) => {
-    const stride = entries.reduce((sum, entry) => sum + fieldBytes(entry), 0);
-    const segments = [{ offset, bytes: count * stride }];
-    offset += count * stride;
-    return { fields: place(entries, 0), stride, segments, bodyMarkers: null };
-  });
-}
-
-interface Found {
-  readonly count: number;
-  readonly blocks: Block[];
-}
-
-/** One record with all bodies, or one record a body. */
-async function interleavedRecords(
+/** One record a section; or, of interleaved bodies, one a body: the length words tell. */
+async function recordBlocks(
   file: OpenFile,
   layout: Layout,
   start: number,
+  sections: readonly Section[],
   stated: bigint | null,
 ): Promise<Found> {
   if (start === file.size) throw noParticles(file, 'it ends with its header');
   const wordBytes = wordBytesOf(layout);
-  const length = bodyBytes(layout);
-  const record = await findRecord(file, start, wordBytes, layout.byteOrder);
-  if (record.bytes === length && record.end < file.size) {
-    const stride = length + 2 * wordBytes;
-    const bytes = file.size - start;
-    const count = Math.floor(bytes / stride);
-    if (bytes % stride !== 0 || (stated !== null && stated !== BigInt(count))) {
-      throw recordMismatch(file, `${bytes} bytes of records of ${stride}`, stride, stated);
-    }
-    const bodyMarkers = { wordBytes, length };
-    const fields = place(layout.fields, wordBytes);
-    return {
-      count,
-      blocks: [{ fields, stride, segments: [{ offset: start, bytes }], bodyMarkers }],
-    };
-  }
-  const count = countOfRecord(file, record.bytes, length, stated, 'the bodies');
-  checkEnd(file, record.end);
-  const fields = place(layout.fields, 0);
-  return {
-    count,
-    blocks: [{ fields, stride: length, segments: record.segments, bodyMarkers: null }],
-  };
-}
-
-/** One record a field. */
-async function columnRecords(
-  file: OpenFile,
-  layout: Layout,
-  start: number,
-  stated: bigint | null,
-): Promise<Found> {
-  if (start === file.size) throw noParticles(file, 'it ends with its header');
   const blocks: Block[] = [];
   let at = start;
   let count = stated;
-  for (const entry of layout.fields) {
-    const stride = fieldBytes(entry);
-    const record = await findRecord(file, at, wordBytesOf(layout), layout.byteOrder);
-    const name = isSkip(entry) ? `a field of ${entry.skip} bytes` : entry.name;
-    count = BigInt(countOfRecord(file, record.bytes, stride, count, name));
-    blocks.push({
-      fields: place([entry], 0),
-      stride,
-      segments: record.segments,
-      bodyMarkers: null,
-    });
-    at = record.end;
+  for (const section of sections) {
+    const expected = countIn(section, count);
+    if (expected === 0n) {
+      at = await afterEmptyRecord(file, layout, at);
+      continue;
+    }
+    const stride = strideOf(section);
+    const record = await findRecord(file, at, wordBytes, layout.byteOrder);
+    const isOneABody =
+      layout.arrangement === 'interleaved' &&
+      record.bytes === stride &&
+      (expected === null ? record.end < file.size : expected !== 1n);
+    const found = isOneABody
+      ? bodyRecords(file, at, section, wordBytes, expected)
+      : wholeRecord(file, record, section, expected);
+    count ??= BigInt(found.count);
+    blocks.push({ ...found.block, runs: runsOf(section, Number(count)) });
+    at = found.end;
   }
   checkEnd(file, at);
   return { count: Number(count), blocks };
+}
+
+/** A component without bodies may have left a record of 0 bytes, or none. */
+async function afterEmptyRecord(file: OpenFile, layout: Layout, at: number): Promise<number> {
+  if (at === file.size) return at;
+  const record = await findRecord(file, at, wordBytesOf(layout), layout.byteOrder);
+  return record.bytes === 0 ? record.end : at;
+}
+
+interface FoundRecords {
+  readonly count: number;
+  readonly block: Omit<Block, 'runs'>;
+  readonly end: number;
+}
+
+function bodyRecords(
+  file: OpenFile,
+  start: number,
+  section: Section,
+  wordBytes: WordBytes,
+  expected: bigint | null,
+): FoundRecords {
+  const length = strideOf(section);
+  const stride = length + 2 * wordBytes;
+  const left = file.size - start;
+  // Without components nothing follows.
+  const bytes = section.holders === null ? left : Math.min(left, Number(expected) * stride);
+  const count = Math.floor(bytes / stride);
+  if (bytes % stride !== 0 || (expected !== null && expected !== BigInt(count))) {
+    throw recordMismatch(file, `${bytes} bytes of records of ${stride}`, stride, expected);
+  }
+  const fields = place(section.entries, wordBytes);
+  const segments = [{ offset: start, bytes }];
+  const bodyMarkers = { wordBytes, length };
+  return { count, block: { fields, stride, segments, bodyMarkers }, end: start + bytes };
+}
+
+function wholeRecord(
+  file: OpenFile,
+  record: FortranRecord,
+  section: Section,
+  expected: bigint | null,
+): FoundRecords {
+  const stride = strideOf(section);
+  const count = countOfRecord(file, record.bytes, stride, expected, section.what);
+  const fields = place(section.entries, 0);
+  const block = { fields, stride, segments: record.segments, bodyMarkers: null };
+  return { count, block, end: record.end };
 }
 
 function countOfRecord(

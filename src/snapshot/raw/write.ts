@@ -2,6 +2,8 @@
 import { InputError } from '../../errors.ts';
 import { writeAtomically } from '../atomic.ts';
 import type { Particles } from '../particles.ts';
+import { writtenComponents, componentHeader } from './component-writer.ts';
+import type { StatedComponent } from './components.ts';
 import { sourceOf, type Values } from './encode.ts';
 import {
   bodyBytes,
@@ -13,6 +15,7 @@ import {
   type LayoutSkip,
 } from './layout.ts';
 import { RecordWriter } from './record-writer.ts';
+import { runsOf, sectionsOf } from './sections.ts';
 import { integerRange, TYPE_BYTES, writeNumber, type NumberType } from './types.ts';
 
 export interface WriteOptions {
@@ -38,9 +41,12 @@ export async function writeRaw(
   options: WriteOptions = {},
 ): Promise<void> {
   checkConstants(path, particles, layout);
-  const header = headerOf(path, particles, layout);
-  const blocks = layout.arrangement === 'interleaved' ? [layout.fields] : splitFields(layout);
-  const encoders = blocks.map((entries) => encoderOf(path, particles, layout, entries));
+  const components = writtenComponents(path, particles, layout);
+  const header = headerOf(path, particles, layout, components ?? []);
+  const blocks = sectionsOf(layout, components).map((section) => ({
+    runs: runsOf(section, particles.count),
+    encoder: encoderOf(path, particles, layout, section.entries),
+  }));
   await writeAtomically(path, async (handle) => {
     const out = new RecordWriter(handle, layout, options.subrecordBytes ?? SUBRECORD_BYTES);
     if (header.length > 0) {
@@ -48,24 +54,21 @@ export async function writeRaw(
       await out.write(header);
       await out.end();
     }
-    for (const encoder of encoders) {
-      await out.begin(encoder.stride * particles.count);
-      const perChunk = Math.max(1, Math.floor(CHUNK_BYTES / encoder.stride));
-      const chunk = new DataView(
-        new ArrayBuffer(Math.min(perChunk, particles.count) * encoder.stride),
-      );
-      for (let body = 0; body < particles.count; body += perChunk) {
-        const count = Math.min(perChunk, particles.count - body);
-        for (const encode of encoder.fields) encode(chunk, body, count);
-        await out.write(new Uint8Array(chunk.buffer, 0, count * encoder.stride));
+    for (const { runs, encoder } of blocks) {
+      const { stride } = encoder;
+      await out.begin(runs.reduce((sum, { count }) => sum + count, 0) * stride);
+      const perChunk = Math.max(1, Math.floor(CHUNK_BYTES / stride));
+      const chunk = new DataView(new ArrayBuffer(Math.min(perChunk, particles.count) * stride));
+      for (const run of runs) {
+        for (let done = 0; done < run.count; done += perChunk) {
+          const count = Math.min(perChunk, run.count - done);
+          for (const encode of encoder.fields) encode(chunk, run.at + done, count);
+          await out.write(new Uint8Array(chunk.buffer, 0, count * stride));
+        }
       }
       await out.end();
     }
   });
-}
-
-function splitFields(layout: Layout): (LayoutField | LayoutSkip)[][] {
-  return layout.fields.map((entry) => [entry]);
 }
 
 type Encode = (chunk: DataView, firstBody: number, count: number) => void;
@@ -154,13 +157,19 @@ function doesNotFit(
   );
 }
 
-function headerOf(path: string, particles: Particles, layout: Layout): Uint8Array {
+function headerOf(
+  path: string,
+  particles: Particles,
+  layout: Layout,
+  components: readonly StatedComponent[],
+): Uint8Array {
   const header = new DataView(new ArrayBuffer(layout.headerBytes));
   const values: Readonly<Record<string, number | null>> = {
     time: particles.time,
     count: particles.count,
     gravity: particles.gravity,
     softening: particles.softening,
+    ...componentHeader(path, layout, components),
   };
   for (const item of layout.header) {
     const value = Object.hasOwn(values, item.name) ? values[item.name] : null;

@@ -1,10 +1,12 @@
 /** Which columns are taken, and what is said when they cannot be. Tables are written by flechette. */
-import { chmod, mkdir, utimes, writeFile } from 'node:fs/promises';
+import { chmod, mkdir, readFile, utimes, writeFile } from 'node:fs/promises';
 import { join } from 'node:path';
 import * as fl from '@uwdata/flechette';
 import { Schema as FlatbufferSchema } from 'apache-arrow/fb/schema';
+import pl from 'nodejs-polars';
 import { describe, expect, it, vi } from 'vitest';
 import { InterruptedError } from '../../../src/errors.ts';
+import { describeArrow } from '../../../src/snapshot/arrow/describe.ts';
 import { readArrow, readArrowStream } from '../../../src/snapshot/arrow/read.ts';
 import { writeArrow } from '../../../src/snapshot/arrow/write.ts';
 import { readFacts, writeFacts } from '../../../src/snapshot/arrow/facts.ts';
@@ -100,6 +102,104 @@ describe('columns', () => {
   });
 });
 
+describe('components of plain texts', () => {
+  const names = [
+    'halo',
+    'halo',
+    'stars, old',
+    'halo',
+    '',
+    'stars, old',
+    'a name longer than twelve bytes — ☉',
+  ];
+  const many = (times: number): string[] => Array.from({ length: times }, () => names).flat();
+  const rows = (count: number): Columns =>
+    Object.fromEntries(
+      Object.keys(PLAIN).map((name, k) => [
+        name,
+        Float64Array.from({ length: count }, (_, i) => i + k),
+      ]),
+    );
+  const componentsIn = async (path: string): Promise<string[]> => {
+    const { columns, componentNames } = await readArrow(path, { optional: ['component'] });
+    expect([...new Set(componentNames)]).toEqual([...new Set(names)]);
+    return Array.from(columns.component ?? [], (index) => componentNames[index]);
+  };
+
+  it.each([
+    ['utf8', fl.utf8()],
+    ['largeUtf8', fl.largeUtf8()],
+  ])('are read as %s', async (_, type) => {
+    const path = await save({ ...rows(7), component: names }, { component: type });
+    expect(await componentsIn(path)).toEqual(names);
+    expect((await readArrow(path)).columns).toEqual({});
+    expect(await describeArrow(path)).toMatchObject({ count: 7, remarks: [] });
+  });
+
+  it.each(['uncompressed', 'lz4', 'zstd'] as const)(
+    'are read from what polars writes, %s, in batches',
+    async (compression) => {
+      const path = join(folder, `polars-${compression}.arrow`);
+      const table = pl.DataFrame({
+        ...Object.fromEntries(
+          Object.entries(rows(7000)).map(([name, list]) => [name, Array.from(list)]),
+        ),
+        component: many(1000),
+      });
+      table.writeIPC(path, { compression });
+      expect(await componentsIn(path)).toEqual(many(1000));
+    },
+  );
+
+  it('are read from a stream', async () => {
+    const table = fl.tableFromArrays(
+      { ...rows(7), component: names } as Record<string, unknown[]>,
+      {
+        types: { component: fl.utf8() },
+      },
+    );
+    const bytes = fl.tableToIPC(table, { format: 'stream' })!;
+    const particles = await readArrowStream(inPieces(bytes, 100), 'pipe', {
+      optional: ['component'],
+    });
+    expect(
+      Array.from(particles.columns.component ?? [], (index) => particles.componentNames[index]),
+    ).toEqual(names);
+  });
+
+  it('are refused with missing values, and if there are as many as bodies', async () => {
+    const missing = await save({ ...rows(2), component: ['a', null] }, { component: fl.utf8() });
+    await expectInputError(
+      readArrow(missing, { optional: ['component'] }),
+      'input.nulls',
+      /"component".*1 missing/,
+    );
+    const all = Array.from({ length: 65537 }, (_, i) => `body ${i}`);
+    const path = await save({ ...rows(65537), component: all }, { component: fl.utf8() });
+    await expectInputError(
+      readArrow(path, { optional: ['component'] }),
+      'input.tooManyComponents',
+      /65537 names or more; expected at most 65536/,
+    );
+  });
+
+  it('are refused if a text lies outside its buffer', async () => {
+    const path = await save({ ...rows(7), component: names }, { component: fl.utf8() });
+    const bytes = await readFile(path);
+    // The offsets of the texts: 0 4 8 18 22 22 32.
+    const offsets = Buffer.from(Int32Array.of(0, 4, 8, 18, 22, 22, 32).buffer);
+    const at = bytes.indexOf(offsets);
+    expect(at).toBeGreaterThan(0);
+    bytes.writeInt32LE(10 ** 6, at + 8);
+    await writeFile(path, bytes);
+    await expectInputError(
+      readArrow(path, { optional: ['component'] }),
+      'input.arrowDamaged',
+      /text 1 lies outside its buffer/,
+    );
+  });
+});
+
 describe('columns that cannot be', () => {
   it('missing', async () => {
     await expectInputError(
@@ -147,7 +247,7 @@ describe('columns that cannot be', () => {
         optional: ['component'],
       }),
       'input.columnType',
-      /"component".*Int32.*expected a dictionary/,
+      /"component".*Int32.*expected texts, or a dictionary/,
       /categorical/,
     );
   });

@@ -165,7 +165,7 @@ describe('a layout that is wrong', () => {
     );
   });
 
-  it.each(['components', 'parts'])('says that %s come later', (key) => {
+  it.each(['parts'])('says that %s come later', (key) => {
     expect(() => checkLayout({ ...FULL, [key]: [] }, 'l.json')).toThrow(
       expect.objectContaining({
         code: 'input.layoutUnsupported',
