@@ -10,6 +10,7 @@
  * ```
  */
 import type { MeasureRecord } from './dynamics/record.ts';
+import type { RecordColumn } from './dynamics/recordColumns.ts';
 import type { MeasureOptions } from './dynamics/settings.ts';
 import { verdictOf as judge, type Verdict } from './settling/verdict.ts';
 import type { LeapfrogOptions } from './models/leapfrog.ts';
@@ -42,6 +43,8 @@ export { UNIT_SYSTEMS, type Dimension, type UnitName, type UnitSystem } from './
 export type { Units, UnitsDefinition } from './snapshot/ownUnits.ts';
 export { unitText, yearsPerTimeUnit } from './snapshot/unitText.ts';
 export { findQuantity, QUANTITIES, type Quantity } from './dynamics/registry.ts';
+export { recordUnits } from './dynamics/recordUnits.ts';
+export type { Cell, CellType, RecordColumn } from './dynamics/recordColumns.ts';
 export type {
   Balance,
   CentreMethod,
@@ -194,6 +197,30 @@ export async function sumForces(
  */
 export async function averageBalance(records: readonly MeasureRecord[]): Promise<AveragedBalance> {
   return (await import('./survey/average.ts')).averageBalance(records);
+}
+
+/**
+ * Records as columns of a table, one row a record: names, types, units and values, for other formats
+ * than {@link recordsToCsv} and {@link recordsToArrow} write.
+ */
+export async function recordColumns(records: readonly MeasureRecord[]): Promise<RecordColumn[]> {
+  return (await import('./dynamics/recordColumns.ts')).recordColumns(records);
+}
+
+/** Records as comma-separated values: a head and one line a record; a null is an empty field. */
+export async function recordsToCsv(records: readonly MeasureRecord[]): Promise<string> {
+  return (await import('./dynamics/recordCsv.ts')).recordsToCsv(records);
+}
+
+/**
+ * Records as an Arrow table, one row a record, with the unit of each column in its metadata.
+ * @param format - a file, or a stream for a pipe
+ */
+export async function recordsToArrow(
+  records: readonly MeasureRecord[],
+  format: 'file' | 'stream' = 'file',
+): Promise<Uint8Array> {
+  return (await import('./dynamics/recordArrow.ts')).recordsToArrow(records, format);
 }
 
 /**

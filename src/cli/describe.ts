@@ -36,7 +36,7 @@ export async function describe(
   };
   const { runFile } = options;
   const survey = { read, ...(runFile !== undefined && runFile !== true && { runFile }) };
-  const format = formatOf(options.format, options.out);
+  const format = formatOf(options.format, options.out, ['table', 'json']);
   const paint = options.out === undefined ? paintFor(streams.stdout, streams.env) : NO_PAINT;
   await refuseOverwriting(options.out, files);
   return withOutput(options.out, streams, async (sink) => {

@@ -4,6 +4,8 @@ import {
   measureFiles,
   parseColumns,
   prepareSnapshots,
+  recordsToArrow,
+  recordsToCsv,
   type CentreMethod,
   type ExitCode,
   type MeasureRecord,
@@ -12,7 +14,14 @@ import {
 } from '../index.ts';
 import { turn, withCrew } from './crew.ts';
 import { eachPath } from './many.ts';
-import { formatOf, refuseOverwriting, withOutput, type Format } from './output.ts';
+import {
+  FORMATS,
+  formatOf,
+  refuseOverwriting,
+  refuseTerminal,
+  withOutput,
+  type Format,
+} from './output.ts';
 import { startProgress } from './progress.ts';
 import { remarksText } from './remarks.ts';
 import { paintFor, NO_PAINT } from './style.ts';
@@ -46,6 +55,8 @@ export async function measure(
   streams: Streams,
 ): Promise<ExitCode> {
   const { layout, columns, runFile, threads, format: asked, out, quiet = false, ...rest } = options;
+  const format = formatOf(asked, out, FORMATS);
+  refuseTerminal(format, out, streams);
   const survey: SurveyOptions = {
     ...rest,
     ...(runFile !== undefined && runFile !== true && { runFile }),
@@ -61,7 +72,6 @@ export async function measure(
   });
   await refuseOverwriting(out, files);
   const snapshots = await prepareSnapshots(files, survey);
-  const format = formatOf(asked, out);
   const isSeveral = args.length > 1 || files.length > 1;
   const remarksApart = !quiet && (format !== 'table' || out !== undefined);
 
@@ -89,7 +99,7 @@ export async function measure(
           if (next.done === true) throw new Error(`nothing came of ${file}`);
           const { record, error } = next.value;
           if (error !== null) throw error;
-          if (format === 'json') records.push(record);
+          if (form === null) records.push(record);
           else await sink(form(record));
           if (remarksApart && record.remarks.length > 0) {
             const text = remarksText(record.remarks, paintFor(streams.stderr, streams.env));
@@ -98,21 +108,33 @@ export async function measure(
         },
         before,
       );
-      if (format === 'json') {
-        await sink(`${JSON.stringify(isSeveral ? records : records[0], null, 2)}\n`);
-      }
+      if (form === null) await sink(await together(records, format, isSeveral, out));
       return code;
     }).finally(() => progress.close());
   });
 }
 
-/** Text of one record in a format that is written record by record. */
+/** All records in a format that cannot be begun before the last of them is known. */
+async function together(
+  records: readonly MeasureRecord[],
+  format: Format,
+  isSeveral: boolean,
+  out: string | undefined,
+): Promise<string | Uint8Array> {
+  if (format === 'csv') return recordsToCsv(records);
+  if (format === 'json') return `${JSON.stringify(isSeveral ? records : records[0], null, 2)}\n`;
+  const isStream = out === undefined || out.toLowerCase().endsWith('.arrows');
+  return recordsToArrow(records, isStream ? 'stream' : 'file');
+}
+
+/** Text of one record in a format that is written record by record; null for other formats. */
 async function formatter(
   format: Format,
   isSeveral: boolean,
   screen: Streams | null,
-): Promise<(record: MeasureRecord) => string> {
-  if (format !== 'table') return (record) => `${JSON.stringify(record)}\n`;
+): Promise<((record: MeasureRecord) => string) | null> {
+  if (format !== 'table' && format !== 'ndjson') return null;
+  if (format === 'ndjson') return (record) => `${JSON.stringify(record)}\n`;
   const { recordTable } = await import('./recordTable.ts');
   const paint = screen === null ? NO_PAINT : paintFor(screen.stdout, screen.env);
   let isFirst = true;

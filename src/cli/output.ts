@@ -3,11 +3,11 @@ import type { FileHandle } from 'node:fs/promises';
 import { InterruptedError, UsageError } from '../index.ts';
 import { write, type Streams } from './streams.ts';
 
-export const FORMATS = ['table', 'json', 'ndjson'] as const;
+export const FORMATS = ['table', 'json', 'ndjson', 'csv', 'arrow'] as const;
 export type Format = (typeof FORMATS)[number];
 
-/** Takes pieces of text; resolves when each is written. */
-export type Sink = (text: string) => Promise<void>;
+/** Takes pieces of text or bytes; resolves when each is written. */
+export type Sink = (piece: string | Uint8Array) => Promise<void>;
 
 /**
  * Runs `produce` with a sink for its results.
@@ -19,22 +19,59 @@ export async function withOutput<T>(
   streams: Streams,
   produce: (sink: Sink) => Promise<T>,
 ): Promise<T> {
-  if (out === undefined) return produce((text) => write(streams.stdout, text));
+  if (out === undefined) return produce((piece) => write(streams.stdout, piece));
   const { writeAtomically } = await import('../snapshot/atomic.ts');
   return writeAtomically(out, async (handle: FileHandle) => {
-    const result = await produce(async (text) => {
-      await handle.appendFile(text);
+    const result = await produce(async (piece) => {
+      await handle.appendFile(piece);
     });
     if (streams.interrupt.aborted) throw new InterruptedError();
     return result;
   });
 }
 
-/** The format asked for; else the one that the ending of `out` names; else a table. */
-export function formatOf(asked: Format | undefined, out: string | undefined): Format {
+const ENDINGS: Readonly<Record<string, Format>> = {
+  table: 'table',
+  json: 'json',
+  ndjson: 'ndjson',
+  jsonl: 'ndjson',
+  csv: 'csv',
+  arrow: 'arrow',
+  arrows: 'arrow',
+  feather: 'arrow',
+  ipc: 'arrow',
+};
+
+/**
+ * The format asked for, whatever the ending of `out`; else the one that the ending names; else a table.
+ * @param known - formats that the command has
+ * @throws UsageError `usage.format` for an ending that names a format that the command does not have
+ */
+export function formatOf<F extends Format>(
+  asked: F | undefined,
+  out: string | undefined,
+  known: readonly F[],
+): F | 'table' {
   if (asked !== undefined) return asked;
-  const ending = out?.split('.').at(-1)?.toLowerCase();
-  return FORMATS.find((format) => format === ending) ?? 'table';
+  const ending = /\.([^./\\]+)$/.exec(out ?? '')?.[1].toLowerCase() ?? '';
+  const named = Object.hasOwn(ENDINGS, ending) ? ENDINGS[ending] : 'table';
+  const format = known.find((one) => one === named);
+  if (format !== undefined || named === 'table') return format ?? 'table';
+  throw new UsageError(
+    'usage.format',
+    `the ending of --out ${out} names the format ${named}, which this command does not write; it writes ${known.join(', ')}`,
+    'Give another name, or say with --format which format is wanted.',
+  );
+}
+
+/** Refuses bytes that would garble a terminal. @throws UsageError `usage.terminal` */
+export function refuseTerminal(format: Format, out: string | undefined, streams: Streams): void {
+  if (format !== 'arrow' || out !== undefined || streams.stdout.isTTY !== true) return;
+  throw new UsageError(
+    'usage.terminal',
+    '--format arrow gives bytes, and standard output is a terminal',
+    'Add --out FILE, or send the output to a file or another program.',
+  );
 }
 
 /** Refuses `--out` that would overwrite one of the inputs. */

@@ -46,7 +46,7 @@ export function buildProgram(streams: Streams, done: (code: ExitCode) => void): 
 
   measuring(reading(program.command('measure <snapshot...>')))
     .description('measure snapshots: energies, virial ratio, radii, times, each with its error')
-    .addOption(formats(['table', 'json', 'ndjson']))
+    .addOption(formats(['table', 'json', 'ndjson', 'csv', 'arrow']))
     .addOption(new Option('--out <file>', 'write to a file; its ending may name the format'))
     .option('--quiet', 'no progress and no remarks on standard error')
     .action(async (snapshots: string[], options: MeasureCommandOptions) => {

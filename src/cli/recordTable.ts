@@ -1,7 +1,7 @@
 /** One record as a page for people. */
 import {
   findQuantity,
-  UNIT_SYSTEMS,
+  recordUnits,
   unitText,
   yearsPerTimeUnit,
   type MeasureRecord,
@@ -16,7 +16,7 @@ import { NO_PAINT, type Paint } from './style.ts';
 
 /** The page of a record; no line is wider than 80 columns, and it ends with a line break. */
 export function recordTable(record: MeasureRecord, paint: Paint = NO_PAINT): string {
-  const units = unitSystemOf(record);
+  const units = recordUnits(record);
   const parts = [
     heading(record, paint),
     ratio(record, paint),
@@ -34,17 +34,10 @@ export function recordTable(record: MeasureRecord, paint: Paint = NO_PAINT): str
   return `${parts.filter((part) => part !== '').join('\n\n')}\n`;
 }
 
-function unitSystemOf(record: MeasureRecord): UnitSystem {
-  const known = UNIT_SYSTEMS as Readonly<Record<string, UnitSystem>>;
-  const { value: name, system } = record.settings.units;
-  if (system !== undefined) return { name: 'own', ...system };
-  return Object.hasOwn(known, name) ? known[name] : UNIT_SYSTEMS.natural;
-}
-
 function heading(record: MeasureRecord, paint: Paint): string {
   const { gravity, units, softening } = record.settings;
   const { kernel, length, support } = softening.value;
-  const lengthUnit = unitText({ mass: 0, length: 1, time: 0 }, unitSystemOf(record));
+  const lengthUnit = unitText({ mass: 0, length: 1, time: 0 }, recordUnits(record));
   const softened =
     kernel === 'none'
       ? `no softening (${softening.from})`
@@ -54,7 +47,7 @@ function heading(record: MeasureRecord, paint: Paint): string {
   const time =
     record.time === null
       ? 'time not stated'
-      : `time ${withUnit(short(record.time, 8), unitText(TIME, unitSystemOf(record)))}`;
+      : `time ${withUnit(short(record.time, 8), unitText(TIME, recordUnits(record)))}`;
   const said = `units ${units.value} (${units.from}), G\u00a0=\u00a0${short(gravity.value, 9)} (${gravity.from})`;
   const facts = `${bodies(record.whole.particles)}, ${time}, ${said}, ${softened}`;
   const run =

@@ -27,9 +27,9 @@ export function processStreams(): Streams {
   };
 }
 
-/** Writes text and waits until the stream has taken it; a stream that fails says so by its `error` event. */
-export function write(stream: OutStream, text: string): Promise<void> {
+/** Writes a piece and waits until the stream has taken it; a stream that fails says so by its `error` event. */
+export function write(stream: OutStream, piece: string | Uint8Array): Promise<void> {
   return new Promise((resolve) => {
-    stream.write(text, () => resolve());
+    stream.write(piece, () => resolve());
   });
 }

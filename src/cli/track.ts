@@ -18,7 +18,7 @@ import {
 import { turn, withCrew } from './crew.ts';
 import { reportFailure } from './failure.ts';
 import type { MeasureCommandOptions } from './measure.ts';
-import { refuseOverwriting, withOutput } from './output.ts';
+import { formatOf, refuseOverwriting, withOutput } from './output.ts';
 import { startProgress } from './progress.ts';
 import { NO_PAINT, paintFor } from './style.ts';
 import type { Streams } from './streams.ts';
@@ -33,17 +33,35 @@ export async function track(
   options: TrackOptions,
   streams: Streams,
 ): Promise<ExitCode> {
-  const { out, quiet = false } = options;
-  const format = options.format ?? (out?.endsWith('.json') === true ? 'json' : 'table');
+  const { out } = options;
+  const format = formatOf(options.format, out, ['table', 'json']);
   const records: MeasureRecord[] = [];
   const snapshots: string[] = [];
   for (const arg of args) {
     if (/\.(ndjson|jsonl)$/i.test(arg)) records.push(...(await readRecords(arg)));
     else snapshots.push(...(await findSnapshots([arg])));
   }
-  await refuseOverwriting(out, snapshots);
+  await refuseOverwriting(out, [...args, ...snapshots]);
+  // A file that cannot be written is told of before anything is measured.
+  await withOutput(out, streams, async (sink) => {
+    const verdict = await judge(snapshots, options, records, streams);
+    if (format === 'json') return sink(`${JSON.stringify(verdict, null, 2)}\n`);
+    const { verdictPage } = await import('./verdictPage.ts');
+    return sink(
+      verdictPage(verdict, out === undefined ? paintFor(streams.stdout, streams.env) : NO_PAINT),
+    );
+  });
+  return EXIT.done;
+}
+
+async function judge(
+  snapshots: readonly string[],
+  options: TrackOptions,
+  records: MeasureRecord[],
+  streams: Streams,
+): Promise<Verdict> {
   const skipped =
-    snapshots.length > 0 ? await measureAll(snapshots, options, records, streams, quiet) : [];
+    snapshots.length > 0 ? await measureAll(snapshots, options, records, streams) : [];
   if (records.length === 0) {
     throw new UnanswerableError(
       'unanswerable.series',
@@ -60,15 +78,7 @@ export async function track(
       remedy: 'see what was said of each of them above',
     });
   }
-  const verdict: Verdict = { ...found, remarks };
-  await withOutput(out, streams, async (sink) => {
-    if (format === 'json') return sink(`${JSON.stringify(verdict, null, 2)}\n`);
-    const { verdictPage } = await import('./verdictPage.ts');
-    return sink(
-      verdictPage(verdict, out === undefined ? paintFor(streams.stdout, streams.env) : NO_PAINT),
-    );
-  });
-  return EXIT.done;
+  return { ...found, remarks };
 }
 
 /** Measures all snapshots; those that cannot be are told on standard error and returned. */
@@ -77,9 +87,8 @@ async function measureAll(
   options: TrackOptions,
   records: MeasureRecord[],
   streams: Streams,
-  quiet: boolean,
 ): Promise<string[]> {
-  const { layout, columns, runFile, threads, ...rest } = options;
+  const { layout, columns, runFile, threads, quiet = false, ...rest } = options;
   const survey: SurveyOptions = {
     ...rest,
     ...(runFile !== undefined && runFile !== true && { runFile }),
