@@ -49,6 +49,7 @@ export type {
   Balance,
   CentreMethod,
   EngineReport,
+  ForcesOrigin,
   LagrangianRadii,
   MeasureRecord,
   RecordSettings,

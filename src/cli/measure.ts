@@ -8,6 +8,7 @@ import {
   recordsToCsv,
   type CentreMethod,
   type ExitCode,
+  type ForcesOrigin,
   type MeasureRecord,
   type SofteningKernel,
   type SurveyOptions,
@@ -41,6 +42,7 @@ export interface MeasureCommandOptions {
   readonly fractions?: readonly number[];
   readonly centre?: CentreMethod;
   readonly coulombFactor?: number;
+  readonly forces?: ForcesOrigin;
   readonly coincident?: 'leave-out' | 'refuse';
   readonly threads?: number;
   readonly format?: Format;

@@ -105,6 +105,12 @@ function measuring(command: Command): Command {
         'potential',
       ]),
     )
+    .addOption(
+      new Option('--forces <origin>', 'U and W from own sums, or the columns of the file').choices([
+        'own',
+        'file',
+      ]),
+    )
     .option('--coulomb-factor <γ>', 'γ in Λ = γN (0.11)', numberOf('--coulomb-factor'))
     .addOption(
       new Option(

@@ -193,9 +193,13 @@ function engine(record: MeasureRecord, paint: Paint): string {
   const how = {
     tree: `tree walked cell by cell, order ${order}`,
     direct: 'direct sum over all pairs',
-    file: 'potentials from the file',
+    file: 'U and W from the file',
   }[origin];
-  const text = `${how}; U to ${short(errorMeasured)} of itself (asked for ${short(errorWanted)}); ${threads}\u00a0thread${threads === 1 ? '' : 's'}, ${duration(seconds.total)}`;
+  const exact =
+    origin === 'file'
+      ? `U within ${short(errorMeasured)} of our own sum`
+      : `U to ${short(errorMeasured)} of itself (asked for ${short(errorWanted)})`;
+  const text = `${how}; ${exact}; ${threads}\u00a0thread${threads === 1 ? '' : 's'}, ${duration(seconds.total)}`;
   return paint.faint(wrap(text, '  '));
 }
 

@@ -173,6 +173,6 @@ async function sumAgain(
   );
   for (let k = 0; k < size; k++) {
     field.potential[indices[k]] = again.potential[k];
-    if (field.softened) field.clausiusShare[indices[k]] = again.clausiusShare[k];
+    field.clausiusShare[indices[k]] = again.clausiusShare[k];
   }
 }

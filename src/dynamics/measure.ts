@@ -1,17 +1,20 @@
 /** Particles → record: the order of the work, and nothing else. */
 import { takeDoubles } from '../numerics/reuse.ts';
 import { InputError } from '../errors.ts';
-import { PROMISED_SIGMAS, sumForces, type ForceStage } from '../octree/forces.ts';
+import { PROMISED_SIGMAS, sumForces, type Forces, type ForceStage } from '../octree/forces.ts';
 import type { Crew } from '../parallel/crew.ts';
 import type { Particles } from '../snapshot/particles.ts';
 import { balanceOf, fieldOf } from './balance.ts';
 import { boundSet } from './bound.ts';
 import { findCentre } from './centre.ts';
 import { coincidentPairs, duplicateIds } from './duplicates.ts';
+import { fitFileForces, type FileForces } from './fileForces.ts';
+import { forcesFromFile, requireFileForces, requireForceColumns } from './forcesFromFile.ts';
 import { lagrangianRadii } from './lagrangian.ts';
 import { RECORD_VERSION, type MeasureRecord, type Vector } from './record.ts';
 import { findRemarks } from './remarks.ts';
 import { settle, type MeasureOptions } from './settings.ts';
+import { frameOf } from './sums.ts';
 import { coulombLogarithm, crossingTime, halfMassRelaxationTime, virialRadius } from './times.ts';
 
 /** Pairs of coincident bodies that a remark names. */
@@ -31,7 +34,8 @@ export interface MeasureContext {
  * @param particles - screened bodies; not changed
  * @throws UsageError for options that contradict each other or the snapshot; InputError
  *   `input.coincident` if bodies lie at one point, nothing is softened and refusal was asked for;
- *   InputError `input.comoving` for coordinates that are not physical
+ *   InputError `input.comoving` for coordinates that are not physical; `input.missingForces` and
+ *   `input.fileForces` if U and W are to come from the file and cannot
  */
 export async function measureParticles(
   particles: Particles,
@@ -51,33 +55,38 @@ export async function measureParticles(
   const settings = settle(options, particles);
   const gravity = settings.gravity.value;
   const { kernel, length } = settings.softening.value;
-  const forces = await sumForces(
+  const fromFile = settings.forces.value === 'file';
+  if (fromFile) requireForceColumns(particles, '--forces file');
+  const own = await sumForces(
     particles,
     {
       gravity,
       softening: { kernel, length },
       errorWanted: settings.error.value,
       exact: settings.exact.value,
+      accelerations: fromFile && particles.columns.acceleration !== undefined,
       onStage: (stage) => context.onStage?.(stage, null),
     },
     crew,
   );
-  if (!Number.isFinite(forces.potentialEnergy)) throw overflow(file, 'the potential energy');
+  if (!Number.isFinite(own.potentialEnergy)) throw overflow(file, 'the potential energy');
   const summed = performance.now();
   context.onStage?.('dynamics', null);
   const coincident =
-    forces.coincidentPairs > 0
+    own.coincidentPairs > 0
       ? coincidentPairs(particles.x, particles.y, particles.z, PAIRS_NAMED)
       : [];
   if (coincident.length > 0 && options.coincident === 'refuse') {
     const [a, b] = coincident[0];
     throw new InputError(
       'input.coincident',
-      `${file}: bodies ${a} and ${b} lie at one point (pairs at one point in all: ${forces.coincidentPairs})`,
+      `${file}: bodies ${a} and ${b} lie at one point (pairs at one point in all: ${own.coincidentPairs})`,
       'state the softening of the run, or leave these pairs out with --coincident leave-out',
     );
   }
 
+  const fileForces = fromFile ? fitFileForces(particles, own) : null;
+  const forces = fileForces ? await takeFromFile(particles, own, fileForces, crew) : own;
   const whole = await balanceOf({ bodies: particles, member: null }, fieldOf(forces), crew);
   if (!(whole.balance.mass > 0)) {
     throw new InputError(
@@ -161,6 +170,7 @@ export async function measureParticles(
     largestMass: largest(particles.mass),
     duplicates: duplicateIds(particles.columns.id),
     coincident,
+    fileForces,
   });
   const end = performance.now();
   const { costs } = forces;
@@ -189,6 +199,18 @@ export async function measureParticles(
     },
     remarks,
   };
+}
+
+/** @throws InputError if U and W cannot be had from the columns */
+async function takeFromFile(
+  particles: Particles,
+  own: Forces,
+  fit: FileForces,
+  crew: Crew,
+): Promise<Forces> {
+  requireFileForces(particles, fit);
+  const { frame } = await frameOf({ bodies: particles, member: null }, crew);
+  return forcesFromFile(particles, own, fit, frame);
 }
 
 const vector = (numbers: ArrayLike<number>, at: number): Vector => [

@@ -43,7 +43,11 @@ export interface RecordSettings {
   readonly centre: Setting<CentreMethod>;
   readonly fractions: Setting<readonly number[]>;
   readonly exact: Setting<boolean>;
+  readonly forces: Setting<ForcesOrigin>;
 }
+
+/** Where U and W come from: our own sums, or what the simulation wrote. */
+export type ForcesOrigin = 'own' | 'file';
 
 export type Vector = readonly [number, number, number];
 

@@ -6,6 +6,8 @@ import { UNIT_SYSTEMS } from '../snapshot/units.ts';
 import { FEWEST_FOR_NOISE } from './balance.ts';
 import type { BoundSet } from './bound.ts';
 import type { Duplicates } from './duplicates.ts';
+import { fileForceRemarks } from './fileForceRemarks.ts';
+import type { FileForces } from './fileForces.ts';
 import type { CentreMethod, MeasureRecord } from './record.ts';
 import type { SetFrame } from './sums.ts';
 import { LEAST_LAMBDA } from './times.ts';
@@ -21,6 +23,8 @@ export interface Findings {
   readonly largestMass: number;
   readonly duplicates: Duplicates;
   readonly coincident: readonly (readonly [number, number])[];
+  /** What potentials and accelerations of the file are, if they were looked at. */
+  readonly fileForces: FileForces | null;
 }
 
 const WIDE_MASS_SPECTRUM = 0.1;
@@ -40,6 +44,7 @@ type Finder = (findings: Findings) => Remark[];
 const FINDERS: readonly Finder[] = [
   noRatio,
   errorPromise,
+  inFileForces,
   coincidentBodies,
   duplicateIds,
   precision,
@@ -83,6 +88,7 @@ function noRatio({ record, frame }: Findings): Remark[] {
 
 function errorPromise({ forces, record }: Findings): Remark[] {
   const { error } = record.settings;
+  if (forces.origin === 'file') return []; // How far the file is off is not ours to mend.
   const reached = (PROMISED_SIGMAS * forces.potentialError) / Math.abs(forces.potentialEnergy);
   if (!(reached > error.value)) return [];
   return [
@@ -95,6 +101,17 @@ function errorPromise({ forces, record }: Findings): Remark[] {
           : 'Use --exact for direct sums, or a larger --error.',
     },
   ];
+}
+
+function inFileForces({ fileForces, record, forces }: Findings): Remark[] {
+  if (fileForces === null) return [];
+  const { gravity, softening } = record.settings;
+  return fileForceRemarks({
+    fit: fileForces,
+    gravity: gravity.value,
+    softened: softening.value.kernel !== 'none',
+    used: forces.origin === 'file',
+  });
 }
 
 function coincidentBodies({ forces, coincident }: Findings): Remark[] {

@@ -70,6 +70,7 @@ export async function recordSchema(): Promise<ZodType> {
     centre: setting(centreMethod, 'method of the centre that was asked for'),
     fractions: setting(z.array(z.number()), 'mass fractions of the Lagrangian radii'),
     exact: setting(z.boolean(), 'direct sums whatever they cost'),
+    forces: setting(z.enum(['own', 'file']), 'where U and W come from'),
   });
 
   const seconds = z.object({

@@ -6,6 +6,7 @@ import { unitSystemOf, type Units } from '../snapshot/ownUnits.ts';
 import { UNIT_SYSTEMS, type UnitSystem } from '../snapshot/units.ts';
 import type {
   CentreMethod,
+  ForcesOrigin,
   RecordSettings,
   Setting,
   SettingOrigin,
@@ -30,6 +31,8 @@ export interface MeasureOptions {
   readonly fractions?: readonly number[];
   /** What to do with bodies at one point without softening. */
   readonly coincident?: 'leave-out' | 'refuse';
+  /** Where U and W come from: our own sums (`own`), or the columns of the file. */
+  readonly forces?: ForcesOrigin;
   /** Which of these options a run file decided; all others count as stated by the caller. */
   readonly fromRunFile?: readonly (keyof MeasureOptions)[];
 }
@@ -63,6 +66,7 @@ export function settle(options: MeasureOptions, particles: Particles): RecordSet
     centre: decide(options, 'centre', options.centre, 'density'),
     fractions,
     exact: decide(options, 'exact', options.exact, false),
+    forces: decide(options, 'forces', options.forces, 'own'),
   };
 }
 

@@ -229,17 +229,33 @@ export async function sampleAccelerationError(
   softening: Softening,
   crew: Crew,
 ): Promise<number> {
-  const { places, of } = drawByMass(source.tree, ACCELERATION_SAMPLE);
-  if (of.length === 0) return 0;
+  const errors = await accelerationErrors(source, field, softening, ACCELERATION_SAMPLE, crew);
+  if (errors.length === 0) return 0;
+  return Math.sqrt(errors.reduce((sum, error) => sum + error * error, 0) / errors.length);
+}
+
+/**
+ * |a − a_direct|/|a_direct| of a sample of bodies, drawn by mass.
+ * @param field - accelerations in input order and without G
+ */
+export async function accelerationErrors(
+  source: SourceTree,
+  field: Pick<FieldColumns, 'ax' | 'ay' | 'az'>,
+  softening: Softening,
+  sample: number,
+  crew: Crew,
+): Promise<Float64Array> {
+  const { places, of } = drawByMass(source.tree, sample);
+  if (of.length === 0) return new Float64Array(0);
   const exact = await sumDirectly(source, softening, places, true, crew);
-  const squares = Array.from(places, (place, k) => {
+  const errors = Array.from(places, (place, k) => {
     const i = source.tree.bodies.input[place];
     const [ax, ay, az] = exact.subarray(DIRECT_SUMS * k + 2, DIRECT_SUMS * (k + 1));
     const size = Math.hypot(ax, ay, az);
     const error = Math.hypot(field.ax[i] - ax, field.ay[i] - ay, field.az[i] - az);
-    return size > 0 ? (error / size) ** 2 : 0;
+    return size > 0 ? error / size : 0;
   });
-  return Math.sqrt(of.reduce((sum, k) => sum + squares[k], 0) / of.length);
+  return Float64Array.from(of, (k) => errors[k]);
 }
 
 /** Mean and scatter of a − b in the given one of the two sums a body. */

@@ -103,6 +103,7 @@ function subtractSums(
     if (!Number.isFinite(phi[i])) return false;
     potential[i] += gravity * phi[i];
     if (softened) clausiusShare[i] += gravity * (phi[i] - psi[i]);
+    else if (clausiusShare !== potential) clausiusShare[i] += gravity * phi[i];
   }
   return true;
 }

@@ -5,8 +5,8 @@ import type { MeasureRecord } from '../dynamics/record.ts';
 import type { MeasureOptions } from '../dynamics/settings.ts';
 import type { Crew } from '../parallel/crew.ts';
 import { readSnapshot } from '../snapshot/read.ts';
-import type { ReadOptions } from '../snapshot/reading.ts';
-import { requireMemory } from './memory.ts';
+import type { FieldName, ReadOptions } from '../snapshot/reading.ts';
+import { BYTES_OF_FILE_FORCES, requireMemory } from './memory.ts';
 import { prepareSnapshots, type PreparedSnapshot } from './prepare.ts';
 
 /** Stages of one snapshot, for progress; `together` stands for several small ones at once. */
@@ -51,6 +51,7 @@ export async function measurePrepared(
   const { signal } = watch.read ?? {};
   const read: ReadOptions = {
     ...options.read,
+    ...(options.forces === 'file' && { optional: withForces(options.read?.optional) }),
     ...(signal !== undefined && { signal }),
     onProgress: (done, total) => {
       watch.read?.onProgress?.(done, total);
@@ -58,10 +59,16 @@ export async function measurePrepared(
     },
   };
   return reusingMemory(async () => {
-    await requireMemory(file, options.read ?? {}, (options.softening ?? 0) > 0);
+    const moreBytes = options.forces === 'file' ? BYTES_OF_FILE_FORCES : 0;
+    await requireMemory(file, options.read ?? {}, (options.softening ?? 0) > 0, moreBytes);
     const particles = await readSnapshot(file, read, crew);
     const readSeconds = (performance.now() - start) / 1000;
     const { onStage } = watch;
     return measureParticles(particles, options, crew, { readSeconds, onStage, runFile });
   });
+}
+
+/** Columns to read besides those that are read anyway. */
+function withForces(optional: readonly FieldName[] = []): readonly FieldName[] {
+  return [...new Set<FieldName>([...optional, 'potential', 'acceleration'])];
 }

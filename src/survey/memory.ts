@@ -16,20 +16,31 @@ const BASE_BYTES = 150 * 2 ** 20;
  */
 const BYTES_A_BODY = 131;
 const BYTES_IF_SOFTENED = 16;
+/** Potentials and accelerations of the file, the same corrected, our own accelerations, shares of W. */
+export const BYTES_OF_FILE_FORCES = 96;
 
-/** Bytes that measuring will take at its peak, roughly. */
-export function memoryNeeded(description: SnapshotDescription, softened: boolean): number {
+/**
+ * Bytes that measuring will take at its peak, roughly.
+ * @param moreBytes - bytes a body that options add
+ */
+export function memoryNeeded(
+  description: SnapshotDescription,
+  softened: boolean,
+  moreBytes = 0,
+): number {
   const needed = description.columns
     .filter(({ field }) => field !== null)
     .reduce((sum, { width, type }) => sum + width * (type === 'float32' ? 4 : 8), 0);
   const columns = Math.min(needed, 64);
   return (
-    BASE_BYTES + description.count * (columns + BYTES_A_BODY + (softened ? BYTES_IF_SOFTENED : 0))
+    BASE_BYTES +
+    description.count * (columns + BYTES_A_BODY + (softened ? BYTES_IF_SOFTENED : 0) + moreBytes)
   );
 }
 
 /**
  * Refuses a snapshot that will not fit into memory, before reading it.
+ * @param moreBytes - bytes a body that options add
  * @param available - bytes that may be used; what the machine or container has free if not given
  * @throws InputError `input.tooLarge`
  */
@@ -37,11 +48,12 @@ export async function requireMemory(
   path: string,
   options: ReadOptions,
   softened: boolean,
+  moreBytes: number,
   available?: number,
 ): Promise<void> {
   if (path === '-' || ((await fileBytes(path)) ?? 0) < ASK_ABOVE_BYTES) return;
   const description = await describeSnapshot(path, options, 'no values');
-  const needed = memoryNeeded(description, softened);
+  const needed = memoryNeeded(description, softened, moreBytes);
   const free = available ?? memoryAvailable();
   if (needed <= free) return;
   throw new InputError(

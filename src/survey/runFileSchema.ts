@@ -59,6 +59,10 @@ const shape = {
     .enum(['leave-out', 'refuse'])
     .optional()
     .describe('what to do with bodies at one point, unsoftened'),
+  forces: z
+    .enum(['own', 'file'])
+    .optional()
+    .describe('U and W from own sums, or the columns of the file'),
   threads: z.int().min(1).optional().describe('worker threads'),
 } satisfies Record<keyof RunSettings, z.ZodType>;
 

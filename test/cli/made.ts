@@ -38,6 +38,7 @@ export function madeRecord(change: Change = {}): MeasureRecord {
       centre: { value: 'density', from: 'default' },
       fractions: { value: [0.1, 0.5], from: 'default' },
       exact: { value: false, from: 'default' },
+      forces: { value: 'own', from: 'default' },
       ...settings,
     },
     frame: {

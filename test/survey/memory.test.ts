@@ -22,7 +22,7 @@ beforeAll(async () => {
 afterAll(() => rm(folder, { recursive: true }));
 
 it('refuses what will not fit, and says how much it takes and what is free', async () => {
-  await expect(requireMemory(large, {}, false, 1e9)).rejects.toMatchObject({
+  await expect(requireMemory(large, {}, false, 0, 1e9)).rejects.toMatchObject({
     code: 'input.tooLarge',
     message: expect.stringMatching(
       /large\.bin holds 6000000 bodies, .* 1\.\d+ GB .* 1\.00 GB are free/,
@@ -32,15 +32,18 @@ it('refuses what will not fit, and says how much it takes and what is free', asy
 });
 
 it('lets through what fits, and leaves small and missing files to the reader', async () => {
-  await expect(requireMemory(large, {}, false, 2e9)).resolves.toBeUndefined();
-  await expect(requireMemory(join(folder, 'missing.bin'), {}, false, 1)).resolves.toBeUndefined();
-  await expect(requireMemory('-', {}, false, 1)).resolves.toBeUndefined();
+  await expect(requireMemory(large, {}, false, 0, 2e9)).resolves.toBeUndefined();
+  await expect(
+    requireMemory(join(folder, 'missing.bin'), {}, false, 0, 1),
+  ).resolves.toBeUndefined();
+  await expect(requireMemory('-', {}, false, 0, 1)).resolves.toBeUndefined();
 });
 
 it('asks for the columns in their precision, and more with softening', async () => {
   const description = await describeSnapshot(large);
   const plain = memoryNeeded(description, false);
   expect(memoryNeeded(description, true) - plain).toBe(16 * COUNT);
+  expect(memoryNeeded(description, false, 96) - plain).toBe(96 * COUNT);
   // 56 bytes of columns a body, and never less than the tree's own copy on top of them.
   expect(plain).toBeGreaterThan(COUNT * (56 + 36));
   const single = description.columns.map((column) => ({ ...column, type: 'float32' }));
