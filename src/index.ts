@@ -14,7 +14,8 @@ import type { RecordColumn } from './dynamics/recordColumns.ts';
 import type { MeasureOptions } from './dynamics/settings.ts';
 import { verdictOf as judge, type Verdict } from './settling/verdict.ts';
 import type { LeapfrogOptions } from './models/leapfrog.ts';
-import type { MakeOptions } from './models/make.ts';
+import type { ModelFigures } from './models/figures.ts';
+import type { MakeOptions, SphereOptions } from './models/make.ts';
 import type { BodyColumns } from './octree/build.ts';
 import type { ForceOptions, Forces } from './octree/forces.ts';
 import { defaultThreads, startCrew, type Crew } from './parallel/crew.ts';
@@ -67,7 +68,16 @@ export type { Verdict, VerdictName } from './settling/verdict.ts';
 export type { Audit } from './settling/audit.ts';
 export type { Finding } from './settling/rule.ts';
 export type { LeapfrogOptions } from './models/leapfrog.ts';
-export type { MakeOptions, ModelName } from './models/make.ts';
+export type { ModelFigures } from './models/figures.ts';
+export type {
+  BinaryOptions,
+  ComponentOptions,
+  EncounterOptions,
+  EscaperOptions,
+  MakeOptions,
+  ModelName,
+  SphereOptions,
+} from './models/make.ts';
 export type {
   FloatColumn,
   Frame,
@@ -270,6 +280,15 @@ export async function parseColumns(text: string): Promise<Partial<Record<FieldNa
 /** Draws bodies from an equilibrium model, as they come. @throws UsageError */
 export async function makeModel(options: MakeOptions): Promise<Particles> {
   return (await import('./models/make.ts')).makeModel(options);
+}
+
+/**
+ * What a model has by its formulas: mass, U, T, 2T/|U|, half-mass and virial radius.
+ * @param gravity - G in the units of the options
+ * @throws UsageError
+ */
+export async function modelFigures(options: SphereOptions, gravity = 1): Promise<ModelFigures> {
+  return (await import('./models/figures.ts')).modelFigures(options, gravity);
 }
 
 /**

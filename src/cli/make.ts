@@ -2,17 +2,21 @@
 import {
   EXIT,
   makeSnapshot,
+  modelFigures,
   UsageError,
   writeSnapshot,
   type ExitCode,
   type ModelName,
+  type Particles,
   type SofteningKernel,
 } from '../index.ts';
 import { turn, withCrew } from './crew.ts';
-import { short, wholeNumber } from './figure.ts';
+import { short, significant, wholeNumber } from './figure.ts';
+import type { ModelCommandOptions } from './makeOptions.ts';
+import { given, meetingOf, sphereOf, type Sphere } from './makeSpheres.ts';
 import { write, type Streams } from './streams.ts';
 
-export interface MakeCommandOptions {
+export interface MakeCommandOptions extends ModelCommandOptions {
   readonly count?: number;
   readonly seed?: number;
   readonly virialRatio?: number;
@@ -32,6 +36,15 @@ export interface MakeCommandOptions {
   readonly quiet?: boolean;
 }
 
+const SETTINGS = [
+  'offset',
+  'velocity',
+  'units',
+  'gravity',
+  'virialRatio',
+  'softening',
+  'softeningKernel',
+] as const;
 const ARROW_ENDINGS = ['.arrow', '.arrows', '.feather', '.ipc'];
 const RAW_ENDINGS = ['.bin', '.raw', '.dat'];
 
@@ -41,19 +54,24 @@ export async function make(
   options: MakeCommandOptions,
   streams: Streams,
 ): Promise<ExitCode> {
-  const { format: asked, threads, quiet = false, seed = 1, ...rest } = options;
+  const { format: asked, threads, quiet = false, seed = 1 } = options;
   const count = required('--count', 'the number of bodies', options.count);
   const out = required('--out', 'the file to write', options.out);
   const format = asked ?? formatByEnding(out);
+  // The model's name is checked by the library, which knows the models.
+  const sphere = sphereOf({ ...options, count, model: model as ModelName });
+  const meeting = meetingOf(options, sphere);
+  let particles: Particles | undefined;
   await withCrew(threads, streams.interrupt, async (crew) => {
-    // The model's name is checked by the library, which knows the models.
-    const wanted = { ...rest, count, model: model as ModelName, seed };
-    const particles = await makeSnapshot(wanted, crew);
+    const settings = given(options, SETTINGS);
+    particles = await makeSnapshot({ ...sphere, ...meeting, ...settings, seed }, crew);
     await turn(streams.interrupt);
     await writeSnapshot(out, particles, format);
   });
-  if (!quiet) {
-    await write(streams.stderr, summary(model, format, { ...options, count, out, seed }));
+  if (!quiet && particles !== undefined) {
+    await write(streams.stderr, heading(out, particles, seed, format));
+    await write(streams.stderr, await figures(sphere, particles.gravity ?? 1, options));
+    await write(streams.stderr, hint(format, particles, options));
   }
   return EXIT.done;
 }
@@ -78,13 +96,43 @@ function formatByEnding(out: string): 'raw' | 'arrow' {
   );
 }
 
-/** What was written, and how to measure it where the file itself cannot say. */
-function summary(
-  model: string,
+function heading(
+  out: string,
+  { count, componentNames, columns, origin }: Particles,
+  seed: number,
   format: 'raw' | 'arrow',
-  options: MakeCommandOptions & { readonly count: number; readonly out: string },
 ): string {
-  const { out, count, seed, units, gravity, softening, softeningKernel } = options;
+  const bodies = count === 1 ? '1 body' : `${wholeNumber(count)} bodies`;
+  const parts = componentNames.map((name, k) => {
+    const own = columns.component?.reduce((sum, component) => sum + (component === k ? 1 : 0), 0);
+    return `${wholeNumber(own ?? 0)} ${name}`;
+  });
+  const what = parts.length === 0 ? `of a ${origin.file} model` : `(${parts.join(', ')})`;
+  const bytes = format === 'raw' ? 'raw float64 mass x y z vx vy vz' : 'Arrow IPC';
+  return `${out}: ${bodies} ${what}, seed ${seed}, ${bytes}\n`;
+}
+
+/** What the model has by its formulas, before noise and everything that is done to it later. */
+async function figures(
+  sphere: Sphere,
+  gravity: number,
+  { companion }: MakeCommandOptions,
+): Promise<string> {
+  const { potential, virialRatio, halfMassRadius } = await modelFigures(sphere, gravity);
+  const owner = companion === undefined ? 'the model itself' : 'the first model itself';
+  const energy =
+    potential === null || virialRatio === null
+      ? 'U infinite'
+      : `U ${significant(potential)}, 2T/|U| ${short(virialRatio, 5)}`;
+  return `  ${owner}: half-mass radius ${significant(halfMassRadius)}, ${energy}\n`;
+}
+
+/** How to measure it where the file itself cannot say. */
+function hint(
+  format: 'raw' | 'arrow',
+  { componentNames }: Particles,
+  { units, gravity, softening, softeningKernel }: MakeCommandOptions,
+): string {
   const isRaw = format === 'raw';
   const needed = [
     isRaw && units !== undefined ? `--units ${units}` : '',
@@ -96,10 +144,13 @@ function summary(
       ? `--softening-kernel ${softeningKernel}`
       : '',
   ].filter((option) => option !== '');
-  const bodies = count === 1 ? '1 body' : `${wholeNumber(count)} bodies`;
-  const hint =
+  const settings =
     needed.length === 0
       ? ''
       : `  The file does not hold all settings; measure it with ${needed.join(' ')}\n`;
-  return `${out}: ${bodies} of a ${model} model, seed ${seed}, ${isRaw ? 'raw float64 mass x y z vx vy vz' : 'Arrow IPC'}\n${hint}`;
+  const components =
+    isRaw && componentNames.length > 0
+      ? '  The file does not tell components apart; an Arrow file does.\n'
+      : '';
+  return settings + components;
 }

@@ -6,6 +6,7 @@ import type { DescribeOptions } from './describe.ts';
 import type { MakeCommandOptions } from './make.ts';
 import type { MeasureCommandOptions } from './measure.ts';
 import type { TrackOptions } from './track.ts';
+import { modelling } from './makeOptions.ts';
 import { listOf, numberOf, vectorOf, wholeOf } from './parse.ts';
 import type { Streams } from './streams.ts';
 import type { ExitCode } from '../errors.ts';
@@ -62,8 +63,10 @@ export function buildProgram(streams: Streams, done: (code: ExitCode) => void): 
       done(await (await import('./track.ts')).track(inputs, options, streams));
     });
 
-  making(program.command('make <model>'))
-    .description('make a snapshot of an equilibrium model: plummer, hernquist or uniform')
+  modelling(making(program.command('make <model>')))
+    .description(
+      'make a snapshot of an equilibrium model: plummer, hernquist, jaffe, dehnen, king or uniform',
+    )
     .action(async (model: string, options: MakeCommandOptions) => {
       done(await (await import('./make.ts')).make(model, options, streams));
     });

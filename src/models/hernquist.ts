@@ -3,6 +3,7 @@
  *
  * Source: Hernquist 1990, ApJ 356, 359 (mass, potential, dispersion, distribution function).
  */
+import { dehnenProfile } from './dehnen.ts';
 import { requireMassFraction, type SampledModel } from './sampling.ts';
 
 /**
@@ -38,6 +39,8 @@ export function energyBracket(theta: number): number {
 
 export const hernquist: SampledModel = {
   name: 'hernquist',
+  edge: Infinity,
+  profile: dehnenProfile(1),
   potentialEnergy: -1 / 6,
 
   enclosedMass(r) {

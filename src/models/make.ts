@@ -1,158 +1,154 @@
-/** Makes a snapshot of an equilibrium model. */
+/** Makes a snapshot of one or two spheres of bodies, each in equilibrium. */
 import { UsageError } from '../errors.ts';
 import { Random } from '../numerics/random.ts';
 import { allocateColumn, type Particles } from '../snapshot/particles.ts';
-import { hernquist } from './hernquist.ts';
-import { drawMasses, normaliseMasses, requireMassRange, SALPETER_SLOPE } from './masses.ts';
-import { plummer } from './plummer.ts';
-import { drawBodies, type SampledModel } from './sampling.ts';
+import type { BodyView } from './sampling.ts';
+import { startOfEncounter, type RelativeMotion } from './encounter.ts';
+import { optionError, requirePositive, requireVector, type MakeOptions } from './options.ts';
+import { planSphere, type SpherePlan } from './plan.ts';
 import { shift } from './scaling.ts';
-import { uniform } from './uniform.ts';
+import { drawSphere, viewOf, type DrawnSphere } from './sphere.ts';
 
-/** The models by name, each with closed forms in units of G = M = a = 1. */
-export const MODELS = { plummer, hernquist, uniform } as const satisfies Record<
-  string,
-  SampledModel
->;
+export type {
+  BinaryOptions,
+  ComponentOptions,
+  EncounterOptions,
+  EscaperOptions,
+  MakeOptions,
+  ModelName,
+  SphereOptions,
+} from './options.ts';
+export { MODELS } from './plan.ts';
 
-export type ModelName = keyof typeof MODELS;
-
-export interface MakeOptions {
-  readonly model: ModelName;
-  readonly count: number;
-  /** Whole number from 0 to 2^53 − 1; the same seed gives the same bodies, bit for bit. */
-  readonly seed: number;
-  /** The model's scale radius a, for `uniform` its radius [length]; 1 if not given. */
-  readonly scaleRadius?: number;
-  /** Mass of the whole model, before `cut` [mass]; 1 if not given. */
-  readonly mass?: number;
-  /** `salpeter` draws masses from m^−2.35, independent of position; `equal` if not given. */
-  readonly masses?: 'equal' | 'salpeter';
-  /** Least and greatest mass of `salpeter`, of which only the ratio matters; 0.1 to 10 if not given. */
-  readonly massRange?: readonly [number, number];
-  /**
-   * Nothing is drawn beyond this radius [length]. The bodies inside keep the mass and the velocities
-   * they have in the whole model: they add up to mass · M(cut).
-   */
-  readonly cut?: number;
-  /** Added to all positions [length] and all velocities [velocity] at the end. */
-  readonly offset?: readonly [number, number, number];
-  readonly velocity?: readonly [number, number, number];
-  /** Constant of gravitation in the units wanted; velocities go as √(G M / a). 1 if not given. */
-  readonly gravity?: number;
-  /** Columns of single precision. */
-  readonly float32?: boolean;
+/** A model before its last steps: spheres at rest about the origin, pairs still as one body. */
+export interface Draft {
+  readonly spheres: readonly DrawnSphere[];
+  /** Splits pairs, sends escapers off, puts two spheres on their orbit, moves everything. */
+  finish(): Particles;
 }
 
-/** Bodies that share one random stream: the cut of the work, which fixes the result whoever does it. */
-const BODIES_PER_STREAM = 65536;
-
 /**
- * Draws `count` independent bodies from a model in equilibrium, at time 0.
+ * Draws independent bodies from models in equilibrium, at time 0.
  *
  * Positions and velocities are as drawn: centre of mass and mean velocity differ from 0, and 2T/|W|
  * from 1, by the noise of a sample. See {@link recentre} and {@link virialScaling}.
- * @throws UsageError `usage.model`, `usage.modelOption`, `usage.massRange`, `usage.seed`
+ * @throws UsageError `usage.model`, `usage.modelOption`, `usage.massRange`, `usage.seed`,
+ * `usage.distributionFunction`, `usage.encounter`
  */
 export function makeModel(options: MakeOptions): Particles {
-  const model = modelNamed(options.model);
-  const { count, scaleRadius = 1, mass: wholeMass = 1, gravity = 1, cut } = options;
-  if (!(Number.isInteger(count) && count >= 1 && count < 2 ** 32)) {
-    throw optionError('count', count, 'a whole number from 1 to 4294967295');
-  }
-  for (const [name, value] of Object.entries({ scaleRadius, mass: wholeMass, gravity, cut })) {
-    if (value !== undefined && !(value > 0 && Number.isFinite(value))) {
-      throw optionError(name, value, 'a finite number above 0');
-    }
-  }
-  const { offset = [0, 0, 0], velocity = [0, 0, 0], masses = 'equal' } = options;
-  for (const [name, vector] of Object.entries({ offset, velocity })) {
-    if (vector.length !== 3 || !vector.every(Number.isFinite)) {
-      throw optionError(name, vector.join(' '), 'three finite numbers');
-    }
-  }
-  if (masses !== 'equal' && masses !== 'salpeter') {
-    throw optionError('masses', masses, 'equal or salpeter');
-  }
-  const law = { slope: SALPETER_SLOPE, range: options.massRange ?? ([0.1, 10] as const) };
-  requireMassRange(law.range);
+  return draftModel(options).finish();
+}
 
-  const massFraction = cut === undefined ? 1 : model.enclosedMass(cut / scaleRadius);
-  const type = options.float32 ? 'float32' : 'float64';
+/** The first part of {@link makeModel}, which ends where a virial ratio may be set. @throws as it */
+export function draftModel(options: MakeOptions): Draft {
+  const { gravity = 1, companion, float32 = false } = options;
+  const { offset = [0, 0, 0], velocity = [0, 0, 0] } = options;
+  requirePositive('gravity', gravity);
+  requireVector('offset', offset);
+  requireVector('velocity', velocity);
+  const root = new Random(options.seed);
+  const plans = [planSphere(options)];
+  if (companion !== undefined) plans.push(planSphere(companion, 'companion.'));
+  const motion = motionOf(options, plans, gravity);
+  const count = plans.reduce((sum, plan) => sum + plan.count, 0);
+  if (count >= 2 ** 32) throw optionError('count', count, 'at most 4294967295 in all');
+
+  const type = float32 ? 'float32' : 'float64';
+  const mantissaBits = float32 ? 24 : 53;
   const column = () => allocateColumn(count, type);
-  const mass = column();
-  const target = {
+  const bodies: BodyView = {
+    mass: column(),
     x: column(),
     y: column(),
     z: column(),
     vx: column(),
     vy: column(),
     vz: column(),
-    lengthScale: scaleRadius,
-    velocityScale: Math.sqrt((gravity * wholeMass) / scaleRadius),
   };
-  const drawnMass = masses === 'salpeter' ? new Float64Array(count) : null;
+  const components = componentsOf(plans, count);
+  // What has no distribution function is refused before anything is drawn.
+  for (const plan of plans) for (const component of plan.components) component.source();
+  let begin = 0;
+  const spheres = plans.map((plan, order) => {
+    const view = viewOf(bodies, begin, begin + plan.count);
+    begin += plan.count;
+    return drawSphere(plan, view, { gravity, mantissaBits, order }, root);
+  });
 
-  let bodies = new Random(options.seed);
-  // Masses have a family of their own, so that a seed gives the same positions with any masses.
-  let massDraws = bodies.family(1);
-  for (let begin = 0; begin < count; begin += BODIES_PER_STREAM) {
-    const end = Math.min(count, begin + BODIES_PER_STREAM);
-    drawBodies(model, bodies.stream(0), massFraction, target, begin, end);
-    bodies = bodies.stream(1);
-    if (drawnMass !== null) {
-      drawMasses(law, massDraws.stream(0), drawnMass, begin, end);
-      massDraws = massDraws.stream(1);
-    }
-  }
-  const totalMass = wholeMass * massFraction;
-  if (drawnMass === null) mass.fill(totalMass / count);
-  else normaliseMasses(drawnMass, totalMass, mass);
-
-  const { x, y, z, vx, vy, vz } = target;
-  const particles: Particles = {
-    count,
-    mass,
-    x,
-    y,
-    z,
-    vx,
-    vy,
-    vz,
-    columns: {},
-    componentNames: [],
-    time: 0,
-    units: null,
-    gravity,
-    softening: null,
-    frame: { kind: 'physical' },
-    origin: {
-      file: model.name,
-      format: 'made',
-      mantissaBits: type === 'float64' ? 53 : 24,
-      remarks: [],
+  const reach = Math.max(...offset.map(Math.abs)) + (motion?.separation ?? 0);
+  return {
+    spheres,
+    finish() {
+      for (const sphere of spheres) sphere.complete(reach);
+      if (motion !== null) setOut(spheres, motion);
+      const particles: Particles = {
+        count,
+        ...bodies,
+        ...components,
+        time: 0,
+        units: null,
+        gravity,
+        softening: null,
+        frame: { kind: 'physical' },
+        origin: { file: options.model, format: 'made', mantissaBits, remarks: [] },
+      };
+      shift(particles, offset, velocity);
+      requireRange(particles);
+      return particles;
     },
   };
-  shift(particles, offset, velocity);
-  requireRange(particles);
-  return particles;
 }
 
-function modelNamed(name: string): SampledModel {
-  if (Object.hasOwn(MODELS, name)) return MODELS[name as ModelName];
-  throw new UsageError(
-    'usage.model',
-    `The model is "${name}", but must be one of ${Object.keys(MODELS).join(', ')}.`,
-    'Give the name of a known model.',
-  );
+function motionOf(
+  { companion, encounter }: MakeOptions,
+  plans: readonly SpherePlan[],
+  gravity: number,
+): RelativeMotion | null {
+  if (companion === undefined && encounter === undefined) return null;
+  if (companion === undefined || encounter === undefined) {
+    throw new UsageError(
+      'usage.encounter',
+      companion === undefined
+        ? 'An encounter (--separation, --pericentre, --impact-parameter, --relative-velocity) needs a second sphere, companion (--companion).'
+        : 'A companion (--companion) needs encounter.separation (--separation), its distance at the start.',
+      'Give both or neither.',
+    );
+  }
+  return startOfEncounter(encounter, gravity * plans.reduce((sum, { mass }) => sum + mass, 0));
 }
 
-function optionError(name: string, found: number | string, expected: string): UsageError {
-  return new UsageError(
-    'usage.modelOption',
-    `The option ${name} of the model is ${found}, but must be ${expected}.`,
-    `Correct ${name}.`,
-  );
+/** Moves two spheres from the origin onto their orbit about the common centre of mass. */
+function setOut(spheres: readonly DrawnSphere[], motion: RelativeMotion): void {
+  const { separation, approach, sideways } = motion;
+  const [first, second] = spheres;
+  const whole = first.plan.mass + second.plan.mass;
+  for (const [sphere, share] of [
+    [first, -second.plan.mass / whole],
+    [second, first.plan.mass / whole],
+  ] as const) {
+    shift(sphere.bodies, [share * separation, 0, 0], [-share * approach, share * sideways, 0]);
+  }
+}
+
+/** The column of components, if there is more than one. @throws UsageError if a name comes twice */
+function componentsOf(
+  plans: readonly SpherePlan[],
+  count: number,
+): Pick<Particles, 'columns' | 'componentNames'> {
+  const components = plans.flatMap((plan) => plan.components);
+  if (components.length === 1) return { columns: {}, componentNames: [] };
+  const componentNames = components.map(({ name }) => name);
+  const twice = componentNames.find((name, k) => componentNames.indexOf(name) < k);
+  if (twice !== undefined) {
+    throw optionError('name', `"${twice}"`, 'the name of one component only', 'Name them apart.');
+  }
+  const component = new Uint16Array(new SharedArrayBuffer(2 * count));
+  let begin = 0;
+  components.forEach(({ options }, k) => {
+    component.fill(k, begin, begin + options.count);
+    begin += options.count;
+  });
+  return { columns: { component }, componentNames };
 }
 
 /** Scales near the ends of the columns' type may overflow or leave no mass. */

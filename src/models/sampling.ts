@@ -2,16 +2,24 @@
 import { UsageError } from '../errors.ts';
 import type { Random } from '../numerics/random.ts';
 import type { FloatColumn } from '../snapshot/particles.ts';
-import type { SphericalModel } from './model.ts';
+import type { Profile, SphericalModel } from './model.ts';
 
-/** Columns that a sampler fills, and the units they are in. */
-export interface PhaseSpace {
+/** Columns of positions and velocities. */
+export interface Motion {
   readonly x: FloatColumn;
   readonly y: FloatColumn;
   readonly z: FloatColumn;
   readonly vx: FloatColumn;
   readonly vy: FloatColumn;
   readonly vz: FloatColumn;
+}
+
+export interface BodyView extends Motion {
+  readonly mass: FloatColumn;
+}
+
+/** Columns that a sampler fills, and the units they are in. */
+export interface PhaseSpace extends Motion {
   /** Length and velocity of the model's unit, in the units of the columns. */
   readonly lengthScale: number;
   readonly velocityScale: number;
@@ -19,6 +27,8 @@ export interface PhaseSpace {
 
 /** A model that can also be drawn from. */
 export interface SampledModel extends SphericalModel {
+  /** What an inversion needs; null if the model has no distribution function. */
+  readonly profile: Profile | null;
   /**
    * Speed of a body at radius r, drawn from the model's isotropic velocity distribution there
    * [model units].
@@ -26,12 +36,23 @@ export interface SampledModel extends SphericalModel {
   drawSpeed(r: number, random: Random): number;
 }
 
+/** Where the radii and speeds of bodies come from, in the model's units. */
+export interface BodySource {
+  radiusOfMass(f: number): number;
+  drawSpeed(r: number, random: Random): number;
+  /**
+   * r_a of Osipkov and Merritt: tangential velocities are divided by √(1 + r²/r_a²); isotropic if Infinity or not
+   * given.
+   */
+  readonly anisotropyRadius?: number;
+}
+
 /**
  * Fills bodies `begin` … `end − 1` of `target` with independent draws of radius, speed and two
  * directions. The mass fraction of a body is uniform in (0, `massFraction`).
  */
 export function drawBodies(
-  model: SampledModel,
+  source: BodySource,
   random: Random,
   massFraction: number,
   target: PhaseSpace,
@@ -39,19 +60,32 @@ export function drawBodies(
   end: number,
 ): void {
   const { x, y, z, vx, vy, vz, lengthScale, velocityScale } = target;
+  const { anisotropyRadius = Infinity } = source;
   const direction = new Float64Array(3);
   for (let i = begin; i < end; i++) {
-    const r = model.radiusOfMass(massFraction * random.openUniform());
+    const r = source.radiusOfMass(massFraction * random.openUniform());
     random.unitVector(direction);
+    const nx = direction[0];
+    const ny = direction[1];
+    const nz = direction[2];
     const length = r * lengthScale;
-    x[i] = length * direction[0];
-    y[i] = length * direction[1];
-    z[i] = length * direction[2];
-    const speed = model.drawSpeed(r, random) * velocityScale;
+    x[i] = length * nx;
+    y[i] = length * ny;
+    z[i] = length * nz;
+    const speed = source.drawSpeed(r, random) * velocityScale;
     random.unitVector(direction);
-    vx[i] = speed * direction[0];
-    vy[i] = speed * direction[1];
-    vz[i] = speed * direction[2];
+    if (anisotropyRadius === Infinity) {
+      vx[i] = speed * direction[0];
+      vy[i] = speed * direction[1];
+      vz[i] = speed * direction[2];
+      continue;
+    }
+    const tangential = speed / Math.hypot(1, r / anisotropyRadius);
+    const along = nx * direction[0] + ny * direction[1] + nz * direction[2];
+    const radial = (speed - tangential) * along;
+    vx[i] = tangential * direction[0] + radial * nx;
+    vy[i] = tangential * direction[1] + radial * ny;
+    vz[i] = tangential * direction[2] + radial * nz;
   }
 }
 

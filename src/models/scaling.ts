@@ -1,6 +1,7 @@
 /** Moves and scales a set of bodies in place: into its own frame, to a virial ratio, onto an orbit. */
 import { UnanswerableError, UsageError } from '../errors.ts';
-import type { FloatColumn, Particles } from '../snapshot/particles.ts';
+import type { FloatColumn } from '../snapshot/particles.ts';
+import type { BodyView, Motion } from './sampling.ts';
 
 type Vector = readonly [number, number, number];
 
@@ -9,7 +10,7 @@ type Vector = readonly [number, number, number];
  * the velocities, in place.
  * @returns what was taken out, in the set's own units
  */
-export function recentre(particles: Particles): { centreOfMass: Vector; meanVelocity: Vector } {
+export function recentre(particles: BodyView): { centreOfMass: Vector; meanVelocity: Vector } {
   const { x, y, z, vx, vy, vz } = particles;
   const [cx, cy, cz, ux, uy, uz] = [x, y, z, vx, vy, vz].map((column) =>
     removeMean(particles.mass, column),
@@ -38,7 +39,7 @@ function removeMean(mass: FloatColumn, column: FloatColumn): number {
 }
 
 /** Multiplies all velocities by `factor` (finite, at least 0), in place. */
-export function scaleVelocities(particles: Particles, factor: number): void {
+export function scaleVelocities(particles: Motion, factor: number): void {
   if (!(factor >= 0 && Number.isFinite(factor))) {
     throw new UsageError(
       'usage.velocityFactor',
@@ -52,7 +53,7 @@ export function scaleVelocities(particles: Particles, factor: number): void {
 }
 
 /** Adds one vector to all positions and one to all velocities, in place. */
-export function shift(particles: Particles, offset: Vector, velocity: Vector): void {
+export function shift(particles: Motion, offset: Vector, velocity: Vector): void {
   const { x, y, z, vx, vy, vz } = particles;
   addTo(x, offset[0]);
   addTo(y, offset[1]);

@@ -14,6 +14,8 @@ import { requireMassFraction, type SampledModel } from './sampling.ts';
 
 export const uniform: SampledModel = {
   name: 'uniform',
+  edge: 1,
+  profile: null,
   potentialEnergy: -3 / 5,
 
   enclosedMass(r) {

@@ -2,8 +2,9 @@
 import { CompensatedSum } from '../numerics/compensated.ts';
 import { refuseClash } from '../dynamics/settings.ts';
 import { UsageError } from '../errors.ts';
-import { makeModel, type MakeOptions } from '../models/make.ts';
-import { recentre, scaleVelocities, shift, virialScaling } from '../models/scaling.ts';
+import { draftModel, type MakeOptions } from '../models/make.ts';
+import type { BodyView } from '../models/sampling.ts';
+import { recentre, scaleVelocities, virialScaling } from '../models/scaling.ts';
 import { sumForces } from '../octree/forces.ts';
 import type { SofteningKernel } from '../octree/softening.ts';
 import type { Crew } from '../parallel/crew.ts';
@@ -13,7 +14,10 @@ import { loadUnits, unitSystemOf, type Units } from '../snapshot/ownUnits.ts';
 export interface MakeSnapshotOptions extends MakeOptions {
   /** Name of a unit system, a file of units (`.json`), or sizes; sets G unless `gravity` is given. */
   readonly units?: Units;
-  /** Wanted 2T/|W| with the softening given; without it nothing is scaled. */
+  /**
+   * Wanted 2T/|W| of each sphere by itself, with the softening given, binaries as one body each and before
+   * escapers are sent off; without it nothing is scaled.
+   */
   readonly virialRatio?: number;
   /** Plummer-equivalent length of the softening the bodies will be run with [length]. */
   readonly softening?: number;
@@ -24,16 +28,16 @@ export interface MakeSnapshotOptions extends MakeOptions {
 const ERROR_OF_SCALING = 1e-6;
 
 /**
- * Makes a model and, with `virialRatio`, takes out its centre of mass and mean velocity and scales
- * the velocities so that 2T/|W| has the value wanted (to 1e-6; exactly up to 4096 bodies). Offset
- * and bulk velocity are added after that.
+ * Makes a model and, with `virialRatio`, takes out the centre of mass and mean velocity of each sphere and scales
+ * its velocities so that 2T/|W| has the value wanted (to 1e-6; exactly up to 4096 bodies). Binaries, escapers, the
+ * orbit of two spheres, offset and bulk velocity come after that.
  *
  * @returns particles that state G, the units if named, and the softening if it is Plummer's
  * @throws UsageError of `makeModel`, `usage.units`, `usage.gravityClash`, `usage.softening`, `usage.softeningKernel`,
  * `usage.virialRatio`; InputError of a file of units; UnanswerableError `unanswerable.virialScaling`
  */
 export async function makeSnapshot(options: MakeSnapshotOptions, crew: Crew): Promise<Particles> {
-  const { units: stated, virialRatio, softening: length = 0, offset, velocity, ...model } = options;
+  const { units: stated, virialRatio, softening: length = 0 } = options;
   const units = stated === undefined ? null : unitSystemOf(await loadUnits(stated));
   refuseClash('', units, options.gravity ?? null);
   const gravity = options.gravity ?? units?.gravity ?? 1;
@@ -42,25 +46,25 @@ export async function makeSnapshot(options: MakeSnapshotOptions, crew: Crew): Pr
   const softening = { kernel, length: kernel === 'none' ? 0 : length };
   if (virialRatio !== undefined) virialScaling(1, -1, virialRatio); // Refuses a bad ratio before the work.
 
-  const particles = makeModel({ ...model, gravity });
+  const draft = draftModel({ ...options, gravity });
   if (virialRatio !== undefined) {
-    recentre(particles);
-    const forces = await sumForces(
-      particles,
-      { gravity, softening, errorWanted: ERROR_OF_SCALING },
-      crew,
-    );
-    scaleVelocities(particles, virialScaling(kineticOf(particles), forces.clausius, virialRatio));
+    for (const { systems } of draft.spheres) {
+      recentre(systems);
+      const wanted = { gravity, softening, errorWanted: ERROR_OF_SCALING };
+      const { clausius } = await sumForces(systems, wanted, crew);
+      scaleVelocities(systems, virialScaling(kineticOf(systems), clausius, virialRatio));
+    }
   }
-  shift(particles, offset ?? [0, 0, 0], velocity ?? [0, 0, 0]);
+  const particles = draft.finish();
   // A file holds a length but no kernel, and a reader of it takes Plummer's: say nothing rather than wrong.
   return { ...particles, units, softening: kernel === 'plummer' ? length : null };
 }
 
 /** T of bodies whose mean velocity is 0. */
-function kineticOf({ count, mass, vx, vy, vz }: Particles): number {
+function kineticOf({ mass, vx, vy, vz }: BodyView): number {
   const sum = new CompensatedSum();
-  for (let i = 0; i < count; i++) sum.add(0.5 * mass[i] * (vx[i] ** 2 + vy[i] ** 2 + vz[i] ** 2));
+  for (let i = 0; i < mass.length; i++)
+    sum.add(0.5 * mass[i] * (vx[i] ** 2 + vy[i] ** 2 + vz[i] ** 2));
   return sum.value();
 }
 
