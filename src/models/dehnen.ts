@@ -42,7 +42,8 @@ export function dehnenProfile(slope: number): Profile {
     potential: (r) => growth(wellPower, r === 0 ? -Infinity : logRatio(r)),
     potentialDrop(r, x) {
       // The change of ln r/(1+r) from r to r eˣ, then of its power.
-      const change = -Math.log1p(Math.expm1(-x) / (1 + r));
+      const change =
+        x < 0.5 ? -Math.log1p(Math.expm1(-x) / (1 + r)) : logRatio(r * Math.exp(x)) - logRatio(r);
       return Math.exp(wellPower * logRatio(r)) * growth(wellPower, change);
     },
     depthBelow: (r) => (wellPower > 0 ? Math.exp(wellPower * logRatio(r)) / wellPower : Infinity),

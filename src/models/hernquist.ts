@@ -7,12 +7,13 @@ import { dehnenProfile } from './dehnen.ts';
 import { requireMassFraction, type SampledModel } from './sampling.ts';
 
 /**
- * Sum of τⁿ/n from n = 5, which is −ln(1−τ) − τ − τ²/2 − τ³/3 − τ⁴/4. The closed form loses digits as
- * τ⁵, so the outskirts (small τ) take the series itself.
+ * Sum of τⁿ/n from n = 5 for τ = 1/(1+r), which is −ln(1−τ) − τ − τ²/2 − τ³/3 − τ⁴/4. The closed form loses
+ * digits as τ⁵, so the outskirts (small τ) take the series itself; 1 − τ would lose them at the centre.
  */
-function logarithmTail(tau: number): number {
+function logarithmTail(r: number): number {
+  const tau = 1 / (1 + r);
   if (tau > 0.25) {
-    return -Math.log1p(-tau) - tau * (1 + tau * (1 / 2 + tau * (1 / 3 + tau / 4)));
+    return Math.log1p(1 / r) - tau * (1 + tau * (1 / 2 + tau * (1 / 3 + tau / 4)));
   }
   let power = tau ** 5;
   let sum = 0;
@@ -65,7 +66,7 @@ export const hernquist: SampledModel = {
 
   /** r (1+r)³ times the sum of τⁿ/n from n = 5, τ = 1/(1+r): equation 10 of the paper, rearranged. */
   radialDispersionSquared(r) {
-    return r === 0 ? 0 : r * (1 + r) ** 3 * logarithmTail(1 / (1 + r));
+    return r === 0 ? 0 : r * (1 + r) ** 3 * logarithmTail(r);
   },
 
   /**

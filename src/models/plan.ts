@@ -111,7 +111,7 @@ function planExtras(
 ): Pick<SpherePlan, 'pairs' | 'semiMajorAxis' | 'escapers' | 'escaperSpeed'> {
   const pairShare = binaries?.share ?? 0;
   requireShare(`${owner}binaries.share`, pairShare);
-  const pairs = Math.round((pairShare * count) / 2);
+  const pairs = Math.min(Math.round((pairShare * count) / 2), Math.floor(count / 2));
   const [least, greatest] = binaries?.semiMajorAxis ?? [1, 1];
   if (!(least > 0 && greatest >= least && Number.isFinite(greatest))) {
     throw optionError(

@@ -11,6 +11,8 @@ const run = async (...argv: string[]) => {
   return { code, out: streams.stdout.text, err: streams.stderr.text };
 };
 
+const MAKE = ['make', 'plummer', '--count', '5', '--out', 'x.bin'];
+
 describe('wrong usage ends with 2, nothing on stdout, and the nearest name', () => {
   it.each([
     [['measure', '--sofening', '0.1', 'x.bin'], '--softening', 'usage.unknownOption'],
@@ -25,6 +27,30 @@ describe('wrong usage ends with 2, nothing on stdout, and the nearest name', () 
     [['make', 'plummer', '--count', '5'], '--out', 'usage.missingOption'],
     [['make', 'plummer', '--count', '5', '--out', 'x.txt'], '--format', 'usage.format'],
     [['make', 'plumer', '--count', '5', '--out', 'x.bin'], 'plummer', 'usage.model'],
+    [
+      ['make', 'king', '--count', '5', '--out', 'x.bin'],
+      '--central-potential',
+      'usage.modelOption',
+    ],
+    [['make', 'x', '--second', 'modle=king'], 'Did you mean model', 'usage.value'],
+    [['make', 'x', '--second', 'king'], 'key=value', 'usage.value'],
+    [['make', 'x', '--second', 'count=1.5'], '--second count "1.5"', 'usage.value'],
+    [['make', 'x', '--companion', 'mass=heavy'], '--companion mass "heavy"', 'usage.value'],
+    [['make', 'x', '--companion', 'mass=1,mass=2'], 'twice', 'usage.value'],
+    [['make', 'x', '--relative-velocity', 'fast'], '--relative-velocity "fast"', 'usage.value'],
+    [[...MAKE, '--second', 'model=jaffe'], '--second lacks count', 'usage.missingOption'],
+    [[...MAKE, '--second', 'count=5'], '--second lacks model', 'usage.missingOption'],
+    [[...MAKE, '--binaries', '0.1'], '--semi-major-axis', 'usage.missingOption'],
+    [[...MAKE, '--semi-major-axis', '1,2'], '--binaries', 'usage.missingOption'],
+    [
+      [...MAKE, '--binaries', '0.1', '--semi-major-axis', '1'],
+      '--semi-major-axis "1"',
+      'usage.value',
+    ],
+    [[...MAKE, '--escaper-speed', '1'], '--escapers', 'usage.missingOption'],
+    [[...MAKE, '--companion'], '--separation', 'usage.encounter'],
+    [[...MAKE, '--separation', '3'], '--companion', 'usage.encounter'],
+    [[...MAKE, '--anisotropy-radius', '0.1'], 'Give at least 0.75', 'usage.distributionFunction'],
   ])('%j', async (argv, hint, code) => {
     const result = await run(...argv);
     expect(result).toMatchObject({ code: 2, out: '' });

@@ -202,6 +202,26 @@ describe('make', () => {
     expect(readFileSync(at('u1.bin')).equals(readFileSync(at('u2.bin')))).toBe(true);
   });
 
+  it('makes two spheres of two components with binaries, the same on any number of threads', async () => {
+    const made = ['make', 'hernquist', '--count', '5000', '--name', 'stars', '--rotation', '0.5'];
+    const halo = 'model=dehnen,inner-slope=0.5,count=6000,mass=9,scale-radius=4,name=halo';
+    const binaries = ['--binaries', '0.2', '--semi-major-axis', '1e-5,1e-3', '--escapers', '0.01'];
+    const orbit = ['--companion', 'mass=0.5', '--separation', '40', '--pericentre', '2'];
+    const all = [...made, '--second', halo, ...binaries, ...orbit, '--virial-ratio', '1', '--out'];
+    const { code, err } = await settlemark([...all, at('one.arrow'), '--threads', '1']);
+    expect(code).toBe(0);
+    expect(err).toContain(
+      '19,500 bodies (5,000 stars, 6,000 halo, 2,500 companion, 6,000 companion',
+    );
+    expect(err).toContain('2T/|U| 1');
+    await settlemark([...all, at('two.arrow'), '--threads', '2']);
+    expect(readFileSync(at('one.arrow')).equals(readFileSync(at('two.arrow')))).toBe(true);
+    const { out } = await settlemark(['describe', at('one.arrow')]);
+    expect(out).toContain('component');
+    const raw = await settlemark([...made, '--second', halo, '--out', at('two.bin')]);
+    expect(raw.err).toContain('an Arrow file does');
+  });
+
   it('says which options a raw file cannot hold', async () => {
     const made = [
       'make',

@@ -1,13 +1,12 @@
 import { describe, expect, it } from 'vitest';
 import { UsageError } from '../../src/errors.ts';
+import { dehnen } from '../../src/models/dehnen.ts';
 import { energyBracket, hernquist } from '../../src/models/hernquist.ts';
 import { plummer } from '../../src/models/plummer.ts';
 import { uniform } from '../../src/models/uniform.ts';
 import type { SphericalModel } from '../../src/models/model.ts';
 import { integrate } from './quadrature.ts';
-
-const within = (value: number, expected: number, relative: number) =>
-  expect(Math.abs(value / expected - 1), `${value} against ${expected}`).toBeLessThan(relative);
+import { within } from './within.ts';
 
 describe('quadrature of these tests', () => {
   it('gives textbook integrals', () => {
@@ -105,6 +104,11 @@ describe('values that are known', () => {
 describe.each([
   ['plummer', plummer, Infinity],
   ['hernquist', hernquist, Infinity],
+  ['dehnen γ = 0', dehnen(0), Infinity],
+  ['dehnen γ = 0.5', dehnen(0.5), Infinity],
+  ['dehnen γ = 1.5', dehnen(1.5), Infinity],
+  ['jaffe', dehnen(2, 'jaffe'), Infinity],
+  ['dehnen γ = 2.2', dehnen(2.2), Infinity],
   ['uniform', uniform, 1],
 ] as const)('%s: closed forms against quadrature of the density', (_, model, edge) => {
   // 600 terms of rounding 1e-16 each, times cancellation inside the closed forms: 1e-12.

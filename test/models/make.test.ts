@@ -137,13 +137,36 @@ describe('makeModel', () => {
     expect(error).toBeLessThan(0.01);
   });
 
+  it('gives the same bits for the same seed with all that a sphere can have', () => {
+    const rich = (seed: number) =>
+      makeModel({
+        ...{ model: 'hernquist', count: 500, seed, anisotropyRadius: 1, rotation: 0.5, cut: 10 },
+        second: { model: 'dehnen', innerSlope: 0.8, count: 300, mass: 3, scaleRadius: 2 },
+        binaries: { share: 0.2, semiMajorAxis: [1e-4, 1e-3] },
+        escapers: { share: 0.1 },
+        companion: { model: 'king', centralPotential: 6, count: 200 },
+        encounter: { separation: 30, pericentre: 1 },
+      });
+    const [one, two, other] = [rich(1), rich(1), rich(2)];
+    expect(one.count).toBe(1000);
+    for (const name of COLUMNS) expect(two[name]).toEqual(one[name]);
+    for (const name of ['x', 'y', 'z', 'vx', 'vy', 'vz'] as const) {
+      // Every body of another seed is another one: binaries, escapers and the companion too.
+      expect(Array.from(other[name]).filter((value, i) => value === one[name][i])).toEqual([]);
+    }
+  });
+
   it('makes a single body', () => {
     const set = makeModel({ ...basis, count: 1, masses: 'salpeter' });
     expect(set.mass).toEqual(Float64Array.of(1));
   });
 
   const wrong: [Partial<Record<keyof MakeOptions, unknown>>, string, string[]][] = [
-    [{ model: 'plumer' }, 'usage.model', ['"plumer"', 'plummer, hernquist, uniform']],
+    [
+      { model: 'plumer' },
+      'usage.model',
+      ['"plumer"', 'plummer, hernquist, jaffe, dehnen, king, uniform'],
+    ],
     [{ model: 'toString' }, 'usage.model', ['"toString"']],
     [{ count: 0 }, 'usage.modelOption', ['count', ' 0,', 'from 1 to 4294967295']],
     [{ count: 2.5 }, 'usage.modelOption', ['count', '2.5']],
@@ -156,6 +179,75 @@ describe('makeModel', () => {
     [{ velocity: [1, 2] }, 'usage.modelOption', ['velocity', '1 2']],
     [{ masses: 'kroupa' }, 'usage.modelOption', ['masses', 'kroupa', 'equal or salpeter']],
     [{ massRange: [10, 0.1] }, 'usage.massRange', ['10 to 0.1']],
+    [{ model: 'dehnen' }, 'usage.modelOption', ['--inner-slope', 'not given']],
+    [{ model: 'dehnen', innerSlope: 3 }, 'usage.modelOption', ['--inner-slope', 'less than 3']],
+    [{ model: 'dehnen', innerSlope: -0.1 }, 'usage.modelOption', ['--inner-slope', '-0.1']],
+    [{ model: 'dehnen', innerSlope: 2.995 }, 'usage.modelOption', ['--inner-slope', 'less steep']],
+    [{ innerSlope: 1 }, 'usage.modelOption', ['--inner-slope', 'left out for plummer']],
+    [{ model: 'king' }, 'usage.modelOption', ['--central-potential', 'not given']],
+    [{ model: 'king', centralPotential: 21 }, 'usage.modelOption', ['--central-potential', '21']],
+    [{ model: 'king', centralPotential: 0 }, 'usage.modelOption', ['--central-potential', ' 0,']],
+    [{ centralPotential: 6 }, 'usage.modelOption', ['--central-potential', 'left out']],
+    [{ anisotropyRadius: 0 }, 'usage.modelOption', ['--anisotropy-radius', 'above 0']],
+    [{ anisotropyRadius: 0.7 }, 'usage.distributionFunction', ['--anisotropy-radius', ' 0.7,']],
+    [{ model: 'uniform', anisotropyRadius: 1 }, 'usage.modelOption', ['--anisotropy-radius']],
+    [{ rotation: 1.1 }, 'usage.modelOption', ['--rotation', '-1 to 1']],
+    [{ rotation: NaN }, 'usage.modelOption', ['--rotation', 'NaN']],
+    [{ second: { model: 'jaffe', count: 0 } }, 'usage.modelOption', ['--second count', ' 0,']],
+    [{ second: { model: 'nfw', count: 1 } }, 'usage.model', ['"nfw"']],
+    [
+      { second: { model: 'jaffe', count: 1, scaleRadius: -1 } },
+      'usage.modelOption',
+      ['--second scale-radius'],
+    ],
+    [{ second: { model: 'uniform', count: 1 } }, 'usage.modelOption', ['uniform']],
+    [
+      { second: { model: 'jaffe', count: 1, mass: 9 } },
+      'usage.distributionFunction',
+      ['the first component'],
+    ],
+    [
+      { name: 'stars', second: { model: 'plummer', count: 1, name: 'stars' } },
+      'usage.modelOption',
+      ['--name', '"stars"'],
+    ],
+    [
+      { binaries: { share: 1.5, semiMajorAxis: [1, 2] } },
+      'usage.modelOption',
+      ['--binaries', '1.5'],
+    ],
+    [
+      { binaries: { share: 0.5, semiMajorAxis: [2, 1] } },
+      'usage.modelOption',
+      ['--semi-major-axis', '2 to 1'],
+    ],
+    [{ escapers: { share: -1 } }, 'usage.modelOption', ['--escapers', '-1']],
+    [{ escapers: { share: 0.1, speed: -1 } }, 'usage.modelOption', ['--escaper-speed', '-1']],
+    [
+      { binaries: { share: 0.8, semiMajorAxis: [1, 2] }, escapers: { share: 0.3 } },
+      'usage.modelOption',
+      ['--escapers', '0.2'],
+    ],
+    [
+      { model: 'dehnen', innerSlope: 2.6, escapers: { share: 0.5 } },
+      'usage.modelOption',
+      ['--escaper-speed', 'infinite'],
+    ],
+    [{ companion: { model: 'plummer', count: 5 } }, 'usage.encounter', ['--separation']],
+    [{ encounter: { separation: 5 } }, 'usage.encounter', ['--companion']],
+    [
+      { companion: { model: 'plummer', count: 0 }, encounter: { separation: 5 } },
+      'usage.modelOption',
+      ['--companion count'],
+    ],
+    [
+      {
+        companion: { model: 'plummer', count: 5, second: { model: 'king', count: 5 } },
+        encounter: { separation: 5 },
+      },
+      'usage.modelOption',
+      ['companion.second.centralPotential'],
+    ],
     [{ scaleRadius: 1e300, float32: true }, 'usage.modelOption', ['Body 0', '24 bits']],
     [{ mass: 1e-44, float32: true, count: 300 }, 'usage.modelOption', ['Body 0', 'mass 0']],
   ];
