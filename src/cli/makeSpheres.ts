@@ -34,7 +34,8 @@ const OF_FIRST = [
 
 /**
  * The first sphere.
- * @throws UsageError `usage.missingOption`, `usage.value` if options that belong together do not come together
+ * @throws UsageError `usage.missingOption`, `usage.value` if options that belong together do not come
+ * together
  */
 export function sphereOf(
   options: MakeCommandOptions & { readonly count: number; readonly model: ModelName },
@@ -78,8 +79,8 @@ function secondOf(component: GivenComponent): ComponentOptions {
 }
 
 /**
- * The second sphere and the orbit. What the companion is not given it has from the first sphere; its bodies have the
- * same mean mass as there unless their number is given.
+ * The second sphere and the orbit. What the companion is not given it has from the first sphere; its
+ * bodies have the same mean mass as there unless their number is given.
  */
 export function meetingOf(
   options: MakeCommandOptions,

@@ -1,8 +1,8 @@
 /**
  * Binaries: two bodies on a Kepler orbit about a centre that moves like a single body of the model.
  *
- * ln a is uniform in a range, the eccentricity thermal, dn = 2e de (Jeans 1919, MNRAS 79, 408; Heggie 1975, MNRAS 173,
- * 729), orientation and phase without preference.
+ * ln a is uniform in a range, the eccentricity thermal, dn = 2e de (Jeans 1919, MNRAS 79, 408; Heggie
+ * 1975, MNRAS 173, 729), orientation and phase without preference.
  */
 import { UsageError } from '../errors.ts';
 import type { Random } from '../numerics/random.ts';
@@ -16,8 +16,8 @@ export interface RelativeOrbit {
 }
 
 /**
- * Eccentric anomaly E with E − e sin E = M, for 0 ≤ e < 1 and any M of one turn, by Newton's iteration inside a bracket that
- * shrinks.
+ * Eccentric anomaly E with E − e sin E = M, for 0 ≤ e < 1 and any M of one turn, by Newton's iteration
+ * inside a bracket that shrinks.
  */
 export function eccentricAnomaly(meanAnomaly: number, eccentricity: number): number {
   // Between M − e and M + e, and within half a turn on the side of M.
@@ -80,8 +80,8 @@ function drawFrame(random: Random, along: Float64Array, across: Float64Array): v
 const MOST_ROUNDING = 1e-3;
 
 /**
- * Splits centres into pairs, in place: the centre of pair j stands at `pairs` + j, its members go to 2j and 2j + 1, whose
- * masses stand there already.
+ * Splits centres into pairs, in place: the centre of pair j stands at `pairs` + j, its members go to 2j
+ * and 2j + 1, whose masses stand there already.
  * @param reach - distance from the origin that is added to the bodies later [length]
  * @throws UsageError `usage.modelOption` if the columns cannot resolve a pair
  */

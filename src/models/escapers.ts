@@ -3,8 +3,8 @@ import type { Random } from '../numerics/random.ts';
 import type { BodyView } from './sampling.ts';
 
 /**
- * Gives bodies `begin` … `end − 1` the speed √(speed² − 2φ(r)) at their places, in a direction without preference within the half
- * that leads outwards, in place.
+ * Gives bodies `begin` … `end − 1` the speed √(speed² − 2φ(r)) at their places, in a direction without
+ * preference within the half that leads outwards, in place.
  * @param potential - φ of the sphere [velocity²], r from its centre at the origin
  * @param speed - at infinity [velocity]
  */

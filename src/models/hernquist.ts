@@ -25,9 +25,9 @@ function logarithmTail(r: number): number {
 }
 
 /**
- * B(θ) for 0 ≤ θ ≤ π/2, to a relative 1e-12. The distribution function is f(E) ∝ (1 − q²)^(−5/2) B with q² = −E = sin²θ and
- * B = 3 asin q + q (1−q²)^½ (1−2q²) (8q⁴−8q²−3) = 3θ − sin 4θ + (sin 8θ)/8 = 8 ∫ sin⁴ 2θ dθ,
- * which grows with θ all the way, from (128/5) θ⁵ to 3π/2.
+ * B(θ) for 0 ≤ θ ≤ π/2, to a relative 1e-12. The distribution function is f(E) ∝ (1 − q²)^(−5/2) B with q²
+ * = −E = sin²θ and B = 3 asin q + q (1−q²)^½ (1−2q²) (8q⁴−8q²−3) = 3θ − sin 4θ + (sin 8θ)/8 = 8 ∫ sin⁴ 2θ
+ * dθ, which grows with θ all the way, from (128/5) θ⁵ to 3π/2.
  */
 export function energyBracket(theta: number): number {
   if (theta > 0.05) return 3 * theta - Math.sin(4 * theta) + Math.sin(8 * theta) / 8;

@@ -6,8 +6,8 @@ import { integratePanel, integratePanels } from './quadrature.ts';
 const PANEL_LENGTH = 1;
 
 /**
- * σ_r² at r, with β = r²/(r² + r_a²): ρ_Q σ_r² = ∫ ρ_Q M/r² dr from r outwards, ρ_Q = (1 + r²/r_a²) ρ; the tangential
- * dispersion of one dimension is σ_r²/(1 + r²/r_a²).
+ * σ_r² at r, with β = r²/(r² + r_a²): ρ_Q σ_r² = ∫ ρ_Q M/r² dr from r outwards, ρ_Q = (1 + r²/r_a²) ρ; the
+ * tangential dispersion of one dimension is σ_r²/(1 + r²/r_a²).
  * Source: Jeans equation; its integrating factor for this β in Merritt 1985, AJ 90, 1027.
  */
 export function radialDispersionSquared(
@@ -37,8 +37,8 @@ export function radialDispersionSquared(
 const FIRST_FRACTION = 1e-14;
 
 /**
- * W = −∫ (M/r) ρ 4πr² dr of the profile's mass inside `end`, with M the mass of the whole well: the virial of the forces
- * on it. For a profile in its own well this is U.
+ * W = −∫ (M/r) ρ 4πr² dr of the profile's mass inside `end`, with M the mass of the whole well: the virial
+ * of the forces on it. For a profile in its own well this is U.
  * @returns −Infinity if it diverges at the centre
  */
 export function clausiusInside(profile: Profile, well: Well, end: number): number {

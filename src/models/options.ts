@@ -11,7 +11,8 @@ export interface ComponentOptions {
   readonly model: ModelName;
   readonly count: number;
   /**
-   * The model's scale radius a [length]: for `uniform` its radius, for `king` the King radius r₀; 1 if not given.
+   * The model's scale radius a [length]: for `uniform` its radius, for `king` the King radius r₀; 1 if not
+   * given.
    */
   readonly scaleRadius?: number;
   /** Mass of the whole component, before `cut` [mass]; 1 if not given. */
@@ -21,13 +22,13 @@ export interface ComponentOptions {
   /** W₀ of `king`, above 0 and at most 20. */
   readonly centralPotential?: number;
   /**
-   * r_a of Osipkov and Merritt [length]: β = r²/(r² + r_a²), isotropic inside and radial outside; isotropic if not
-   * given. Not for `uniform`.
+   * r_a of Osipkov and Merritt [length]: β = r²/(r² + r_a²), isotropic inside and radial outside;
+   * isotropic if not given. Not for `uniform`.
    */
   readonly anisotropyRadius?: number;
   /**
-   * Share, from −1 to 1, of the bodies moving against the sense about +z (below 0: about −z) that are turned to
-   * it by changing the sign of v_φ: ⟨v_φ⟩ = rotation · ⟨|v_φ|⟩; 0 if not given.
+   * Share, from −1 to 1, of the bodies moving against the sense about +z (below 0: about −z) that are
+   * turned to it by changing the sign of v_φ: ⟨v_φ⟩ = rotation · ⟨|v_φ|⟩; 0 if not given.
    */
   readonly rotation?: number;
   /** `salpeter` draws masses from m^−2.35, independent of position; `equal` if not given. */
@@ -71,8 +72,8 @@ export interface EncounterOptions {
   /** Least distance of the Kepler orbit [length]. */
   readonly pericentre?: number;
   /**
-   * Distance at which the straight line of the relative velocity passes [length], instead of `pericentre`; 0, head-on,
-   * if neither is given.
+   * Distance at which the straight line of the relative velocity passes [length], instead of `pericentre`;
+   * 0, head-on, if neither is given.
    */
   readonly impactParameter?: number;
   /** Relative speed at the start [velocity]; `parabolic`, √(2GM/separation), if not given. */

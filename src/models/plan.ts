@@ -34,8 +34,8 @@ export interface ComponentPlan {
   readonly wholeMass: number;
   readonly massFraction: number;
   /**
-   * Radii and speeds in units of this component alone: G = M = a = 1. The first call inverts for the distribution
-   * function, where that is needed. @throws UsageError `usage.distributionFunction`
+   * Radii and speeds in units of this component alone: G = M = a = 1. The first call inverts for the
+   * distribution function, where that is needed. @throws UsageError `usage.distributionFunction`
    */
   source(): BodySource;
 }

@@ -1,15 +1,16 @@
 /**
  * Rotation about the z axis without a change of energy.
  *
- * A body of a spherical model may move either way about the axis: the distribution function stays a solution
- * if some of the bodies with L_z < 0 are turned to the other sense. Source: Lynden-Bell 1960, MNRAS 120, 204.
+ * A body of a spherical model may move either way about the axis: the distribution function stays a
+ * solution if some of the bodies with L_z < 0 are turned to the other sense. Source: Lynden-Bell 1960,
+ * MNRAS 120, 204.
  */
 import type { Random } from '../numerics/random.ts';
 import type { Motion } from './sampling.ts';
 
 /**
- * Turns the share |rotation| of those of bodies `begin` … `end − 1` that move against the sense of its sign, in place:
- * v_φ becomes −v_φ.
+ * Turns the share |rotation| of those of bodies `begin` … `end − 1` that move against the sense of its
+ * sign, in place: v_φ becomes −v_φ.
  */
 export function turn(
   { x, y, vx, vy }: Motion,

@@ -41,8 +41,8 @@ export interface BodySource {
   radiusOfMass(f: number): number;
   drawSpeed(r: number, random: Random): number;
   /**
-   * r_a of Osipkov and Merritt: tangential velocities are divided by √(1 + r²/r_a²); isotropic if Infinity or not
-   * given.
+   * r_a of Osipkov and Merritt: tangential velocities are divided by √(1 + r²/r_a²); isotropic if Infinity
+   * or not given.
    */
   readonly anisotropyRadius?: number;
 }

@@ -13,7 +13,10 @@ import { drawBodies, type BodyView } from './sampling.ts';
 /** Bodies that share one random stream: the cut of the work, which fixes the result whoever does it. */
 const BODIES_PER_STREAM = 65536;
 
-/** Families of random streams of a component, from its first: bodies have one of their own, so that a seed gives the same ones with any masses. */
+/**
+ * Families of random streams of a component, from its first: bodies have one of their own, so that a seed
+ * gives the same ones with any masses.
+ */
 const FAMILY = { bodies: 0, masses: 1, rotation: 2, binaries: 3, escapers: 4 };
 const FAMILIES_PER_COMPONENT = 8;
 const COMPONENTS_PER_SPHERE = 2;
@@ -27,7 +30,10 @@ export interface Systems extends BodyView {
 export interface DrawnSphere {
   readonly plan: SpherePlan;
   readonly bodies: BodyView;
-  /** All bodies with each pair as one of its mass at its centre: views into the columns, but for the masses of pairs. */
+  /**
+   * All bodies with each pair as one of its mass at its centre: views into the columns, but for the masses
+   * of pairs.
+   */
   readonly systems: Systems;
   /** Splits the pairs and sends the escapers off. */
   complete(reach: number): void;

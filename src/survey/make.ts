@@ -28,13 +28,14 @@ export interface MakeSnapshotOptions extends MakeOptions {
 const ERROR_OF_SCALING = 1e-6;
 
 /**
- * Makes a model and, with `virialRatio`, takes out the centre of mass and mean velocity of each sphere and scales
- * its velocities so that 2T/|W| has the value wanted (to 1e-6; exactly up to 4096 bodies). Binaries, escapers, the
- * orbit of two spheres, offset and bulk velocity come after that.
+ * Makes a model and, with `virialRatio`, takes out the centre of mass and mean velocity of each sphere and
+ * scales its velocities so that 2T/|W| has the value wanted (to 1e-6; exactly up to 4096 bodies).
+ * Binaries, escapers, the orbit of two spheres, offset and bulk velocity come after that.
  *
  * @returns particles that state G, the units if named, and the softening if it is Plummer's
- * @throws UsageError of `makeModel`, `usage.units`, `usage.gravityClash`, `usage.softening`, `usage.softeningKernel`,
- * `usage.virialRatio`; InputError of a file of units; UnanswerableError `unanswerable.virialScaling`
+ * @throws UsageError of `makeModel`, `usage.units`, `usage.gravityClash`, `usage.softening`,
+ * `usage.softeningKernel`, `usage.virialRatio`; InputError of a file of units; UnanswerableError
+ * `unanswerable.virialScaling`
  */
 export async function makeSnapshot(options: MakeSnapshotOptions, crew: Crew): Promise<Particles> {
   const { units: stated, virialRatio, softening: length = 0 } = options;

@@ -119,7 +119,8 @@ describe('binaries in a model', () => {
 
   it('are the first bodies, as many as asked for', () => {
     const axes = Array.from({ length: pairs }, (_, j) => pairOf(set, j).a);
-    // 1e-16 of rounding over separations of 1e-6 at distances of 30, and more for near pairs of eccentric orbits
+    // 1e-16 of rounding over separations of 1e-6 at distances of 30, and more for near pairs of eccentric
+    // orbits
     expect(Math.min(...axes)).toBeGreaterThan(1e-4 * (1 - 1e-5));
     expect(Math.max(...axes)).toBeLessThan(1e-2 * (1 + 1e-5));
     expect(

@@ -85,7 +85,8 @@ describe('values that are known', () => {
   });
 
   it('Plummer and Hernquist cut at a radius in perfect equilibrium', () => {
-    // 2T/|W| of the part inside R without its surface term: from the Jeans equation (no source). The surface term itself, 4πR³ρσ², is 1/16 for Plummer at R = 1 by hand.
+    // 2T/|W| of the part inside R without its surface term: from the Jeans equation (no source). The
+    // surface term itself, 4πR³ρσ², is 1/16 for Plummer at R = 1 by hand.
     const cutRatio = (model: SphericalModel, R: number) => {
       const shell = (r: number) => 4 * Math.PI * r * r * model.density(r);
       const twiceKinetic = integrate((r) => 3 * model.radialDispersionSquared(r) * shell(r), 0, R);

@@ -8,8 +8,8 @@ import { integrate } from './quadrature.ts';
 import { within } from './within.ts';
 
 describe('values that are known', () => {
-  // Dehnen 1993, MNRAS 265, 250 (forms): U = −1/(2 (5 − 2γ)), r_f = y/(1 − y) with y = f^(1/(3 − γ)); digits worked out
-  // apart from this code.
+  // Dehnen 1993, MNRAS 265, 250 (forms): U = −1/(2 (5 − 2γ)), r_f = y/(1 − y) with y = f^(1/(3 − γ));
+  // digits worked out apart from this code.
   it.each([
     [0, -0.1, 0.866224836, 3.8473221019, 27.9765913639],
     [0.5, -0.125, 0.661425342, 3.1298129601, 23.2315658658],

@@ -4,7 +4,10 @@ import { makeModel } from '../../src/models/make.ts';
 import type { EncounterOptions } from '../../src/models/options.ts';
 import { within } from './within.ts';
 
-/** Least distance of two points from this start, by small steps of the equation of motion (leapfrog in scaled time). */
+/**
+ * Least distance of two points from this start, by small steps of the equation of motion (leapfrog in
+ * scaled time).
+ */
 function leastDistance(options: EncounterOptions, gm: number): number {
   const { separation, approach, sideways } = startOfEncounter(options, gm);
   let [x, y, vx, vy] = [separation, 0, -approach, sideways];

@@ -10,7 +10,8 @@ const count = 1;
 
 describe('figures of single models', () => {
   it.each([
-    // U and r_h in closed form: Plummer 1911, Hernquist 1990, Jaffe 1983, Dehnen 1993, textbook; the King model as integrated apart.
+    // U and r_h in closed form: Plummer 1911, Hernquist 1990, Jaffe 1983, Dehnen 1993, textbook; the King
+    // model as integrated apart.
     [{ model: 'plummer' }, (-3 * Math.PI) / 32, 1.3047660265041],
     [{ model: 'hernquist' }, -1 / 6, 1 + Math.SQRT2],
     [{ model: 'jaffe' }, -1 / 2, 1],
@@ -82,7 +83,8 @@ describe('figures of a part inside a cut', () => {
   });
 
   it('with anisotropy, from T by the dispersions', () => {
-    // T = ½ ∫ (σ_r² + 2σ_t²) dM with σ_t² = σ_r²/(1 + r²/r_a²) and the Jeans equation, by the quadrature of the tests.
+    // T = ½ ∫ (σ_r² + 2σ_t²) dM with σ_t² = σ_r²/(1 + r²/r_a²) and the Jeans equation, by the quadrature
+    // of the tests.
     const ra = 0.8;
     const cut = 2;
     const weight = (r: number) => 1 + (r / ra) ** 2;

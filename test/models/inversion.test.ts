@@ -16,7 +16,8 @@ const distribution = (profile: Profile, r: number, ra = Infinity, well: Well = p
   Math.exp(logDistribution(profile, well, ra, r));
 
 describe('closed distribution functions', () => {
-  // For ρ ∝ ψⁿ Eddington's integral is n (n−1) B(n−1, ½) Q^(n−3/2)/(√8 π²); B is 2, 4/3 and 32/35 for n = 2, 3 and 5.
+  // For ρ ∝ ψⁿ Eddington's integral is n (n−1) B(n−1, ½) Q^(n−3/2)/(√8 π²); B is 2, 4/3 and 32/35 for n =
+  // 2, 3 and 5.
   const factor = 1 / (Math.sqrt(8) * Math.PI ** 2);
   const power = (n: number, beta: number, q: number) =>
     factor * n * (n - 1) * beta * q ** (n - 1.5);
@@ -47,8 +48,9 @@ describe('closed distribution functions', () => {
   });
 
   it.each([Infinity, 1, 0.05])('of the Jaffe model with r_a = %d', (ra) => {
-    // ρ = (e^(ψ/2) − e^(−ψ/2))⁴/(4π) and r² ρ = (1 − e^−ψ)²/(4π), as e^−ψ = r/(1+r): derivatives by hand, then
-    // Eddington's integral with ψ = Q − s². Jaffe 1983 and Merritt 1985 write it with Dawson's integral.
+    // ρ = (e^(ψ/2) − e^(−ψ/2))⁴/(4π) and r² ρ = (1 − e^−ψ)²/(4π), as e^−ψ = r/(1+r): derivatives by hand,
+    // then Eddington's integral with ψ = Q − s². Jaffe 1983 and Merritt 1985 write it with Dawson's
+    // integral.
     const bend = (psi: number) =>
       (4 * Math.exp(2 * psi) - 4 * Math.exp(psi) - 4 * Math.exp(-psi) + 4 * Math.exp(-2 * psi)) /
         (4 * Math.PI) +
@@ -61,7 +63,8 @@ describe('closed distribution functions', () => {
   });
 
   it.each([0.5, 3, 6, 12])('of the King model W0 = %d: e^W − 1', (w0) => {
-    // King 1966, AJ 71, 64. Only its shape is compared; the table of the model is good to 1e-9 and worse at the edge.
+    // King 1966, AJ 71, 64. Only its shape is compared; the table of the model is good to 1e-9 and worse
+    // at the edge.
     const model = king(w0);
     const shape = (r: number) =>
       Math.expm1(-(model.potential(r) + 1 / model.tidalRadius) / model.sigmaSquared);
@@ -75,7 +78,8 @@ describe('closed distribution functions', () => {
 });
 
 describe('moments of the distribution function give density and dispersions back', () => {
-  // ρ = 4π/(1 + r²/r_a²) ∫ f u² du and ρ σ_r² = 4π/(3 (1 + r²/r_a²)) ∫ f u⁴ du (Merritt 1985), with u² = 2 (ψ − Q).
+  // ρ = 4π/(1 + r²/r_a²) ∫ f u² du and ρ σ_r² = 4π/(3 (1 + r²/r_a²)) ∫ f u⁴ du (Merritt 1985), with u² = 2
+  // (ψ − Q).
   const heavy = scaledProfile({ profile: dehnenProfile(0.5), mass: 9, scaleRadius: 4 });
   const cluster = scaledProfile({ profile: king(5).profile, mass: 0.3, scaleRadius: 0.2 });
   const cases: [string, Profile, readonly Profile[], number][] = [
@@ -142,9 +146,9 @@ describe('two halves of one model', () => {
 
 describe('no equilibrium', () => {
   it('below the least anisotropy radius', () => {
-    // Plummer: f(Q) at the centre goes as 1 − 9/(16 r_a²), so 3/4 by hand. Dehnen γ = 1: 0.202 (Baes & Dejonghe 2002, A&A
-    // 393, 485, from memory); γ = 0 and 2: 0.44 and 0.022 (Carollo, de Zeeuw & van der Marel 1995, MNRAS 276, 1131, and
-    // Merritt 1985, from memory). The search is good to 0.1 %.
+    // Plummer: f(Q) at the centre goes as 1 − 9/(16 r_a²), so 3/4 by hand. Dehnen γ = 1: 0.202 (Baes &
+    // Dejonghe 2002, A&A 393, 485, from memory); γ = 0 and 2: 0.44 and 0.022 (Carollo, de Zeeuw & van der
+    // Marel 1995, MNRAS 276, 1131, and Merritt 1985, from memory). The search is good to 0.1 %.
     within(leastAnisotropyRadius(plummerProfile, plummerProfile) ?? 0, 0.75, 2e-3);
     for (const [slope, least, digits] of [
       [0, 0.44, 0.01],

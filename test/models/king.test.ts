@@ -11,7 +11,8 @@ const densityOf = (w: number) =>
 
 describe('published values', () => {
   it.each([
-    // c = log₁₀ r_t/r₀ in the table of King 1966, AJ 71, 64 (from memory), and as tabulated since (from memory).
+    // c = log₁₀ r_t/r₀ in the table of King 1966, AJ 71, 64 (from memory), and as tabulated since (from
+    // memory).
     [1, 0.3, 0.296],
     [2, 0.51, 0.505],
     [3, 0.67, 0.672],
@@ -45,8 +46,8 @@ describe('published values', () => {
   });
 
   it('is the polytrope n = 5/2 for small W0', () => {
-    // Lane–Emden: ξ₁ = 5.35528 (Chandrasekhar 1939, An Introduction to the Study of Stellar Structure, table 4, from memory);
-    // r₀ is 3/√W₀ units of ξ. The difference from the polytrope is of order W₀.
+    // Lane–Emden: ξ₁ = 5.35528 (Chandrasekhar 1939, An Introduction to the Study of Stellar Structure,
+    // table 4, from memory); r₀ is 3/√W₀ units of ξ. The difference from the polytrope is of order W₀.
     within((king(1e-4).tidalRadius * 3) / Math.sqrt(1e-4), 5.35528, 2e-5);
   });
 });

@@ -54,8 +54,9 @@ describe('rotation', () => {
   });
 
   it('has the mean streaming of an isotropic sphere all in one sense', () => {
-    // A Plummer sphere with all bodies turned: ⟨v_φ⟩ = ⟨|v_φ|⟩ = ⟨v⟩/2 at each place (mean of |sin| over directions), and
-    // ⟨v⟩ at the radius r from f ∝ E^3.5: √(2ψ) B(2, 9/2)/B(3/2, 9/2) with B(2, 9/2) = 4/99 and B(3/2, 9/2) = 7π/256, by hand.
+    // A Plummer sphere with all bodies turned: ⟨v_φ⟩ = ⟨|v_φ|⟩ = ⟨v⟩/2 at each place (mean of |sin| over
+    // directions), and ⟨v⟩ at the radius r from f ∝ E^3.5: √(2ψ) B(2, 9/2)/B(3/2, 9/2) with B(2, 9/2) =
+    // 4/99 and B(3/2, 9/2) = 7π/256, by hand.
     const set = makeModel({ model: 'plummer', count, seed: 5, rotation: 1 });
     let sum = 0;
     let squares = 0;

@@ -11,7 +11,10 @@ import type { Particles } from '../../src/snapshot/particles.ts';
 import { integrate } from './quadrature.ts';
 import { kolmogorov, KOLMOGOROV_LIMIT, radius, speedSquared } from './samples.ts';
 
-/** Distribution function of u with density u² f(ψ − u²/2), from a table over 0 ≤ u ≤ √(2ψ) that is fine at small u. */
+/**
+ * Distribution function of u with density u² f(ψ − u²/2), from a table over 0 ≤ u ≤ √(2ψ) that is fine at
+ * small u.
+ */
 function speedCdf(psi: number, slow: number, f: (energy: number) => number) {
   const nodes = 3000;
   const escape = Math.sqrt(2 * psi);
@@ -29,7 +32,10 @@ function speedCdf(psi: number, slow: number, f: (energy: number) => number) {
   };
 }
 
-/** Jaffe's f up to a factor: ρ = (e^(ψ/2) − e^(−ψ/2))⁴/(4π), and r² ρ = (1 − e^−ψ)²/(4π), by hand in Eddington's integral. */
+/**
+ * Jaffe's f up to a factor: ρ = (e^(ψ/2) − e^(−ψ/2))⁴/(4π), and r² ρ = (1 − e^−ψ)²/(4π), by hand in
+ * Eddington's integral.
+ */
 function jaffeF(ra: number) {
   const bend = (psi: number) =>
     4 * Math.exp(2 * psi) -
@@ -65,7 +71,9 @@ describe('speeds at one radius follow the closed distribution function', () => {
   });
 });
 
-/** Radial and tangential dispersions of shells of equal numbers, in units of those expected, with errors. */
+/**
+ * Radial and tangential dispersions of shells of equal numbers, in units of those expected, with errors.
+ */
 function shells(
   set: Particles,
   bodies: readonly number[],
@@ -97,7 +105,9 @@ function shells(
   });
 }
 
-/** σ_r² from the Jeans equation with β = r²/(r² + r_a²), by the quadrature of the tests, tabulated in ln r. */
+/**
+ * σ_r² from the Jeans equation with β = r²/(r² + r_a²), by the quadrature of the tests, tabulated in ln r.
+ */
 function jeans(
   density: (r: number) => number,
   mass: (r: number) => number,
