@@ -46,11 +46,16 @@ export { unitText, yearsPerTimeUnit } from './snapshot/unitText.ts';
 export { findQuantity, QUANTITIES, type Quantity } from './dynamics/registry.ts';
 export { recordUnits } from './dynamics/recordUnits.ts';
 export type { Cell, CellType, RecordColumn } from './dynamics/recordColumns.ts';
+export { EXTRAS, extrasNamed, type ExtraName } from './dynamics/extras.ts';
+export type { HardestPairs } from './dynamics/pairs.ts';
+export type { Profiles } from './dynamics/profiles.ts';
+export type { Shells } from './dynamics/shells.ts';
 export type {
   Balance,
   CentreMethod,
   EngineReport,
   ForcesOrigin,
+  ExtraFigures,
   LagrangianRadii,
   MeasureRecord,
   RecordSettings,

@@ -1,5 +1,6 @@
 /** `settlemark measure`: one record a snapshot. */
 import {
+  extrasNamed,
   findSnapshots,
   measureFiles,
   parseColumns,
@@ -44,6 +45,8 @@ export interface MeasureCommandOptions {
   readonly coulombFactor?: number;
   readonly forces?: ForcesOrigin;
   readonly coincident?: 'leave-out' | 'refuse';
+  readonly with?: readonly string[];
+  readonly shells?: number;
   readonly threads?: number;
   readonly format?: Format;
   readonly out?: string;
@@ -68,6 +71,7 @@ export async function measure(
       signal: streams.interrupt,
     },
   };
+  extrasNamed(options.with ?? []); // A name that is not known is told before anything is read.
   const files: string[] = [];
   const before = await eachPath(args, streams, async (arg) => {
     files.push(...(await findSnapshots([arg])));

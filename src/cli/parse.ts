@@ -26,6 +26,11 @@ export function listOf(option: string): (text: string) => number[] {
   return (text) => text.split(',').map(parse);
 }
 
+/** Words separated by commas. */
+export function wordsOf(text: string): string[] {
+  return text.split(',').map((word) => word.trim());
+}
+
 /** Three numbers separated by commas. */
 export function vectorOf(option: string): (text: string) => readonly [number, number, number] {
   const parse = numberOf(option);

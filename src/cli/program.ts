@@ -7,7 +7,7 @@ import type { MakeCommandOptions } from './make.ts';
 import type { MeasureCommandOptions } from './measure.ts';
 import type { TrackOptions } from './track.ts';
 import { modelling } from './makeOptions.ts';
-import { listOf, numberOf, vectorOf, wholeOf } from './parse.ts';
+import { listOf, numberOf, vectorOf, wholeOf, wordsOf } from './parse.ts';
 import type { Streams } from './streams.ts';
 import type { ExitCode } from '../errors.ts';
 
@@ -114,6 +114,8 @@ function measuring(command: Command): Command {
         'file',
       ]),
     )
+    .option('--with <name,...>', 'also inertia, shells, profiles, pairs, or all', wordsOf)
+    .option('--shells <n>', 'number of shells for these (16)', wholeOf('--shells', 1))
     .option('--coulomb-factor <γ>', 'γ in Λ = γN (0.11)', numberOf('--coulomb-factor'))
     .addOption(
       new Option(

@@ -9,10 +9,12 @@ import {
 } from '../index.ts';
 import { duration, figure, short, vectorText, wholeNumber, yearsText } from './figure.ts';
 import { columns, signRoom } from './columns.ts';
+import { extrasBlocks } from './extrasTable.ts';
 import { PAGE_WIDTH, shorten, wrap } from './layout.ts';
 import { isSoftened, noiseOf, ratioWords } from './ratioWords.ts';
 import { remarksText } from './remarks.ts';
 import { NO_PAINT, type Paint } from './style.ts';
+import { unitOf } from './unitOf.ts';
 
 /** The page of a record; no line is wider than 80 columns, and it ends with a line break. */
 export function recordTable(record: MeasureRecord, paint: Paint = NO_PAINT): string {
@@ -24,6 +26,7 @@ export function recordTable(record: MeasureRecord, paint: Paint = NO_PAINT): str
     radii(record, units, paint),
     scalars(record, units),
     frame(record, units),
+    ...extrasBlocks(record, units, paint),
     engine(record, paint),
     // What softening does to the ratio stands beside the ratio already.
     remarksText(
@@ -151,6 +154,7 @@ function scalars(record: MeasureRecord, units: UnitSystem): string {
     [labelled('relaxation time', 'relaxation.time', units), time(relaxation.time) + lnText],
     [labelled('moment of inertia', 'momentOfInertia', units), figure(record.momentOfInertia)],
     [labelled('its rate', 'momentOfInertiaRate', units), figure(record.momentOfInertiaRate)],
+    ...acceleration(record, units),
     ['effective number', figure(record.effectiveNumber)],
   ];
   return columns(
@@ -158,6 +162,15 @@ function scalars(record: MeasureRecord, units: UnitSystem): string {
     ['left', 'left'],
     '  ',
   );
+}
+
+/** Of the moment of inertia, if it was asked for. */
+function acceleration(record: MeasureRecord, units: UnitSystem): [label: string, text: string][] {
+  const key = 'momentOfInertiaAcceleration';
+  const { [key]: value, momentOfInertiaAccelerationNoise: noise } = record;
+  if (value === undefined) return [];
+  const text = `${figure(value, noise)}${noise === null ? '' : ' (finite N)'}, 0 in equilibrium`;
+  return [[labelled('d²I/dt²', key, units), text]];
 }
 
 function frame(record: MeasureRecord, units: UnitSystem): string {
@@ -207,11 +220,6 @@ function engine(record: MeasureRecord, paint: Paint): string {
 function labelled(label: string, key: string, units: UnitSystem): string {
   const unit = unitOf(key, units);
   return unit === '' ? label : `${label} [${unit}]`;
-}
-
-function unitOf(key: string, units: UnitSystem): string {
-  const quantity = findQuantity(key);
-  return quantity === undefined ? '' : unitText(quantity.dimension, units);
 }
 
 function withUnit(text: string, unit: string): string {

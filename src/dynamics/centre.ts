@@ -1,7 +1,7 @@
 /** Four ways to say where the centre of a system is. */
 import type { Forces } from '../octree/forces.ts';
-import { buildOctree } from '../octree/build.ts';
 import { densityCentre } from '../octree/neighbours.ts';
+import type { Octree } from '../octree/tree.ts';
 import type { Crew } from '../parallel/crew.ts';
 import type { CentreMethod, Vector } from './record.ts';
 import type { SetFrame } from './sums.ts';
@@ -22,10 +22,10 @@ export async function findCentre(
   bodies: Bodies,
   whole: SetFrame,
   forces: Forces,
+  tree: Octree,
   method: CentreMethod,
   crew: Crew,
 ): Promise<Centre> {
-  const tree = forces.tree?.tree ?? (await buildOctree(bodies, crew));
   const density = await densityCentre(tree, crew);
   const coreRadius = density?.coreRadius ?? null;
   const [x, y, z] = whole.frame;

@@ -55,7 +55,7 @@ export async function lagrangianRadii(
 }
 
 /** Radii about a centre inside which the given fractions (clipped to 0 … 1) of the set's mass lie. */
-async function radiiOfMass(
+export async function radiiOfMass(
   set: BodySet,
   centre: Vector,
   mass: number,

@@ -1,6 +1,7 @@
 /** Particles → record: the order of the work, and nothing else. */
 import { takeDoubles } from '../numerics/reuse.ts';
 import { InputError } from '../errors.ts';
+import { buildOctree } from '../octree/build.ts';
 import { PROMISED_SIGMAS, sumForces, type Forces, type ForceStage } from '../octree/forces.ts';
 import type { Crew } from '../parallel/crew.ts';
 import type { Particles } from '../snapshot/particles.ts';
@@ -11,6 +12,7 @@ import { coincidentPairs, duplicateIds } from './duplicates.ts';
 import { fitFileForces, type FileForces } from './fileForces.ts';
 import { forcesFromFile, requireFileForces, requireForceColumns } from './forcesFromFile.ts';
 import { lagrangianRadii } from './lagrangian.ts';
+import { measureExtras } from './measureExtras.ts';
 import { RECORD_VERSION, type MeasureRecord, type Vector } from './record.ts';
 import { findRemarks } from './remarks.ts';
 import { settle, type MeasureOptions } from './settings.ts';
@@ -105,7 +107,8 @@ export async function measureParticles(
   const boundBalance =
     bound.set.member === null ? whole : await balanceOf(bound.set, bound.field, crew);
   const centreAsked = settings.centre.value;
-  const centre = await findCentre(particles, whole.frame, forces, centreAsked, crew);
+  const tree = forces.tree?.tree ?? (await buildOctree(particles, crew));
+  const centre = await findCentre(particles, whole.frame, forces, tree, centreAsked, crew);
   const fractions = settings.fractions.value;
   const radiiOf = (result: typeof whole, set: typeof bound.set) =>
     lagrangianRadii(set, result.frame, centre.centre, fractions, scratch, crew);
@@ -127,6 +130,21 @@ export async function measureParticles(
     meanSquareVelocity,
     softening: length,
   });
+  const extras = await measureExtras(
+    {
+      particles,
+      settings,
+      forces,
+      tree,
+      whole,
+      bound,
+      boundBalance,
+      centre: centre.centre,
+      coulombLogarithm: logarithm,
+      scratch,
+    },
+    crew,
+  );
   const record = {
     record: RECORD_VERSION,
     file,
@@ -157,6 +175,7 @@ export async function measureParticles(
       coulombFactor,
       coulombLogarithm: logarithm,
     },
+    ...extras.figures,
   } as const;
   const unfit = firstNotFinite(record);
   if (unfit !== null) throw overflow(file, unfit);
@@ -197,7 +216,7 @@ export async function measureParticles(
         total: read + (end - start) / 1000,
       },
     },
-    remarks,
+    remarks: [...remarks, ...extras.remarks],
   };
 }
 

@@ -7,6 +7,11 @@
 import type { SofteningKernel } from '../octree/softening.ts';
 import type { Remark } from '../snapshot/particles.ts';
 import type { UnitSystem } from '../snapshot/units.ts';
+import type { ExtraName } from './extras.ts';
+import type { InertiaFigures } from './inertia.ts';
+import type { PairFigures } from './pairs.ts';
+import type { Profiles } from './profiles.ts';
+import type { RadialToTangential, Shells } from './shells.ts';
 
 /** Version of the record's form; grows only when a key changes its meaning. */
 export const RECORD_VERSION = 1;
@@ -44,6 +49,9 @@ export interface RecordSettings {
   readonly fractions: Setting<readonly number[]>;
   readonly exact: Setting<boolean>;
   readonly forces: Setting<ForcesOrigin>;
+  /** Extras that were asked for, and the number of shells they may use. */
+  readonly with: Setting<readonly ExtraName[]>;
+  readonly shells: Setting<number>;
 }
 
 /** Where U and W come from: our own sums, or what the simulation wrote. */
@@ -104,7 +112,14 @@ export interface EngineReport {
   };
 }
 
-export interface MeasureRecord {
+/** What `--with` adds: the keys of each extra are there if it was asked for. */
+export interface ExtraFigures
+  extends Partial<InertiaFigures>, Partial<RadialToTangential>, Partial<PairFigures> {
+  readonly shells?: Shells;
+  readonly profiles?: Profiles;
+}
+
+export interface MeasureRecord extends ExtraFigures {
   readonly record: typeof RECORD_VERSION;
   readonly file: string;
   readonly time: number | null;

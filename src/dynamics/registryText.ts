@@ -27,6 +27,8 @@ const KINDS: Readonly<Record<Quantity['kind'], string>> = {
   integer: 'whole number',
   vector: '3 numbers',
   list: 'list',
+  integers: 'list of whole numbers',
+  ids: 'list of ids',
 };
 
 /** All quantities as a table in Markdown, one row each, in the order of the registry. */

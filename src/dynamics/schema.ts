@@ -5,6 +5,7 @@
  * Nothing that measures imports this module, and it loads zod only when called.
  */
 import type { z as ZodNamespace, ZodType } from 'zod';
+import { EXTRA_NAMES } from './extras.ts';
 import { RECORD_VERSION } from './record.ts';
 import { QUANTITIES, type Quantity } from './registry.ts';
 import { dimensionText } from './registryText.ts';
@@ -71,6 +72,8 @@ export async function recordSchema(): Promise<ZodType> {
     fractions: setting(z.array(z.number()), 'mass fractions of the Lagrangian radii'),
     exact: setting(z.boolean(), 'direct sums whatever they cost'),
     forces: setting(z.enum(['own', 'file']), 'where U and W come from'),
+    with: setting(z.array(z.enum(EXTRA_NAMES)), 'extras that were asked for'),
+    shells: setting(z.int().min(1), 'shells that the extras may use'),
   });
 
   const seconds = z.object({
@@ -105,12 +108,17 @@ export async function recordSchema(): Promise<ZodType> {
     settings: settings.describe('what was used, and where it came from'),
     frame: { centreMethod: centreMethod.describe('method of frame.centre that was used') },
   };
+  const optional = new Set<string>();
   for (const quantity of QUANTITIES) {
-    place(tree, quantity.key.split('.'), quantitySchema(quantity, z));
+    const path = quantity.key.split('.');
+    place(tree, path, quantitySchema(quantity, z));
+    if (quantity.extra !== null) optional.add(path[0]);
   }
+  const set = z.enum(['whole', 'bound']).describe('which bodies the figures are of');
+  for (const extra of ['shells', 'profiles']) place(tree, [extra, 'set'], set);
   tree.engine = engine.describe('how the sums were done and what they cost');
   tree.remarks = z.array(remark).describe('findings beside the figures');
-  return asObject(tree, z).meta({
+  return asObject(tree, z, optional).meta({
     title: 'Settlemark record of one snapshot',
     description:
       'All that is measured of one snapshot, in the units of the snapshot. Dimensions stand in brackets; no brackets: a pure number.',
@@ -126,17 +134,22 @@ export async function recordJsonSchema(): Promise<Record<string, unknown>> {
 type Zod = typeof ZodNamespace;
 
 function quantitySchema(quantity: Quantity, z: Zod): ZodType {
-  const single = quantity.kind === 'integer' ? z.int().min(0) : z.number();
-  const item = quantity.nullable ? single.nullable() : single;
-  const schema =
-    quantity.kind === 'vector'
-      ? z.array(single).length(3)
-      : quantity.kind === 'list'
-        ? z.array(item)
-        : item;
+  const isWhole = quantity.kind === 'integer' || quantity.kind === 'integers';
+  const single = isWhole ? z.int().min(0) : z.number();
+  const orNull = <S extends ZodType>(schema: S) => (quantity.nullable ? schema.nullable() : schema);
+  const schemas: Record<Quantity['kind'], () => ZodType> = {
+    number: () => orNull(single),
+    integer: () => orNull(single),
+    vector: () => orNull(z.array(single).length(3)),
+    list: () => z.array(orNull(single)),
+    integers: () => z.array(single),
+    ids: () => z.array(z.union([z.int(), z.string()])),
+  };
   const unit = dimensionText(quantity.dimension);
   const error = quantity.error === null ? '' : `; 1σ error in ${quantity.error}`;
-  return schema.describe(`${quantity.text}${unit === '' ? '' : ` [${unit}]`}${error}`);
+  return schemas[quantity.kind]().describe(
+    `${quantity.text}${unit === '' ? '' : ` [${unit}]`}${error}`,
+  );
 }
 
 /** Schemas by key, nested as the record is. */
@@ -149,10 +162,10 @@ function place(branch: Branch, [key, ...rest]: readonly string[], schema: ZodTyp
   else place((branch[key] ??= {}) as Branch, rest, schema);
 }
 
-function asObject(branch: Branch, z: Zod): ZodType {
-  const shape = Object.entries(branch).map(([key, value]) => [
-    key,
-    value instanceof z.ZodType ? value : asObject(value, z),
-  ]);
+function asObject(branch: Branch, z: Zod, optional: ReadonlySet<string> = new Set()): ZodType {
+  const shape = Object.entries(branch).map(([key, value]) => {
+    const schema = value instanceof z.ZodType ? value : asObject(value, z);
+    return [key, optional.has(key) ? schema.optional() : schema];
+  });
   return z.object(Object.fromEntries(shape) as Record<string, ZodType>);
 }

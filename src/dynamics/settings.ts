@@ -4,6 +4,7 @@ import { SPLINE_SUPPORT, type SofteningKernel } from '../octree/softening.ts';
 import type { Particles } from '../snapshot/particles.ts';
 import { unitSystemOf, type Units } from '../snapshot/ownUnits.ts';
 import { UNIT_SYSTEMS, type UnitSystem } from '../snapshot/units.ts';
+import { extrasNamed } from './extras.ts';
 import type {
   CentreMethod,
   ForcesOrigin,
@@ -33,6 +34,10 @@ export interface MeasureOptions {
   readonly coincident?: 'leave-out' | 'refuse';
   /** Where U and W come from: our own sums (`own`), or the columns of the file. */
   readonly forces?: ForcesOrigin;
+  /** Names of what to measure besides: see `EXTRAS`; `all` for all. */
+  readonly with?: readonly string[];
+  /** Number of shells of equal number that `shells` and `profiles` use. */
+  readonly shells?: number;
   /** Which of these options a run file decided; all others count as stated by the caller. */
   readonly fromRunFile?: readonly (keyof MeasureOptions)[];
 }
@@ -41,6 +46,8 @@ export const DEFAULT_ERROR = 1e-5;
 /** Source: Giersz & Heggie 1994, MNRAS 268, 257 (equal masses). */
 export const DEFAULT_COULOMB_FACTOR = 0.11;
 export const DEFAULT_FRACTIONS: readonly number[] = [0.01, 0.05, 0.1, 0.25, 0.5, 0.75, 0.9, 0.99];
+export const DEFAULT_SHELLS = 16;
+const MOST_SHELLS = 1000;
 
 /** Disagreement of G and units above which a pair of options is refused. */
 const GRAVITY_CLASH = 1e-4;
@@ -67,6 +74,13 @@ export function settle(options: MeasureOptions, particles: Particles): RecordSet
     fractions,
     exact: decide(options, 'exact', options.exact, false),
     forces: decide(options, 'forces', options.forces, 'own'),
+    with: decide(options, 'with', options.with && extrasNamed(options.with), []),
+    shells: decide(
+      options,
+      'shells',
+      inRange('--shells', options.shells, 1, MOST_SHELLS, true),
+      DEFAULT_SHELLS,
+    ),
   };
 }
 
@@ -195,11 +209,15 @@ function inRange(
   value: number | undefined,
   low: number,
   high: number,
+  whole = false,
 ): number | undefined {
-  if (value === undefined || (value >= low && value <= high)) return value;
+  const isKind = !whole || Number.isInteger(value);
+  if (value === undefined || (isKind && value >= low && value <= high)) return value;
   throw new UsageError(
     'usage.range',
     `${option} ${value} is out of range`,
-    low === Number.MIN_VALUE ? 'give a number above 0' : `give a number from ${low} to ${high}`,
+    low === Number.MIN_VALUE
+      ? 'give a number above 0'
+      : `give a ${whole ? 'whole ' : ''}number from ${low} to ${high}`,
   );
 }

@@ -132,6 +132,34 @@ export function sumNoise(round: NoiseRound, takeJob: TakeJob): void {
   });
 }
 
+export interface VirialNoiseRound extends Round {
+  readonly frame: Float64Array;
+  readonly clausiusShare: Float64Array;
+  /** Mass-weighted mean of v² + w. */
+  readonly mean: number;
+}
+
+/** Σ m² (v² + w − ⟨v² + w⟩)². Source: docs/methods.md, first-order expansion of 2T + W. */
+export function sumVirialNoise(round: VirialNoiseRound, takeJob: TakeJob): void {
+  const { mass, vx, vy, vz } = round.bodies;
+  const { clausiusShare, mean } = round;
+  const cvx = round.frame[3];
+  const cvy = round.frame[4];
+  const cvz = round.frame[5];
+  eachChunk(round, takeJob, (begin, end, at) => {
+    const sum = new CompensatedSum();
+    for (let i = begin; i < end; i++) {
+      if (round.member !== null && round.member[i] === 0) continue;
+      const ux = vx[i] - cvx;
+      const uy = vy[i] - cvy;
+      const uz = vz[i] - cvz;
+      const term = mass[i] * (ux * ux + uy * uy + uz * uz + clausiusShare[i] - mean);
+      sum.add(term * term);
+    }
+    round.partial[at] = sum.value();
+  });
+}
+
 export interface EnergyRound extends Round {
   readonly frame: Float64Array;
   readonly potential: Float64Array;

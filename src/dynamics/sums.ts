@@ -127,6 +127,21 @@ export async function noiseSum(
   return addRows(partial, 1)[0];
 }
 
+/** Σ m² (v² + w − ⟨v² + w⟩)², from which the noise of 2T + W follows. */
+export async function virialNoiseSum(
+  set: BodySet,
+  { frame }: SetFrame,
+  clausiusShare: Float64Array,
+  mean: number,
+  crew: Crew,
+): Promise<number> {
+  const chunks = chunksOf(set);
+  const partial = shared(chunks);
+  const round = { ...set, partial, frame, clausiusShare, mean };
+  await crewFor(set, crew).run(TASK, 'sumVirialNoise', round, chunks);
+  return addRows(partial, 1)[0];
+}
+
 /** Writes each member's specific energy, and counts those that are not bound. */
 export async function countUnbound(
   set: BodySet,
@@ -146,7 +161,8 @@ export async function countUnbound(
   return addRows(partial, 1)[0];
 }
 
-function addRows(partial: Float64Array, width: number): Float64Array {
+/** Sums of the columns of all rows, in the order of the rows. */
+export function addRows(partial: Float64Array, width: number): Float64Array {
   const sums = Array.from({ length: width }, () => new CompensatedSum());
   for (let k = 0; k < partial.length; k++) sums[k % width].add(partial[k]);
   return Float64Array.from(sums, (sum) => sum.value());

@@ -57,3 +57,17 @@ export function halfMassRelaxationTime(
     (Math.sqrt(perBody * gravity) * logarithm)
   );
 }
+
+/**
+ * Local relaxation time 0.34 σ³/(G² m ρ ln Λ) [time], with the one-dimensional dispersion σ and the mass
+ * m of the bodies that are met. Source: Binney & Tremaine 2008, eq. 7.106 (from memory).
+ */
+export function localRelaxationTime(
+  dispersion: number,
+  perBody: number,
+  density: number,
+  gravity: number,
+  logarithm: number,
+): number {
+  return (0.34 * dispersion ** 3) / (gravity * gravity * perBody * density * logarithm);
+}

@@ -208,6 +208,12 @@ export class Surroundings {
     this.guess2 = GUESS_SLACK * foundDistance2[wanted - 1];
   }
 
+  /** The same for any one body, whose group need not be open. */
+  findAlone(place: number): void {
+    const { x, y, z } = this.tree.bodies;
+    this.search(x[place], y[place], z[place], Infinity);
+  }
+
   /** Expected distance of the last neighbour over the radius of a sphere of `size` bodies. */
   private share(size: number): number {
     return Math.cbrt(this.wanted / size);
