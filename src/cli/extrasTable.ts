@@ -1,8 +1,8 @@
 /** What `--with` adds to a record, as blocks of its page. */
-import type { ExtraFigures, MeasureRecord, UnitSystem } from '../index.ts';
+import type { HardestPairs, MeasureRecord, UnitSystem } from '../index.ts';
 import { columns, signRoom } from './columns.ts';
 import { figure, NONE, short, significant, wholeNumber } from './figure.ts';
-import { wrap } from './layout.ts';
+import { shorten, wrap } from './layout.ts';
 import { isSoftened } from './ratioWords.ts';
 import type { Paint } from './style.ts';
 import { unitOf } from './unitOf.ts';
@@ -129,13 +129,18 @@ function pairs(record: MeasureRecord, units: UnitSystem, paint: Paint): string {
     ...(listed < hardPairs ? [`  the ${listed} hardest of ${wholeNumber(hardPairs)}`] : []),
     `  With each pair as one body ${softened ? '2T/|W|' : '2T/|U|'} is ${figure(ratio, merged.noise)}`,
   ].join('\n');
-  const head = ['bodies', 'a', 'e', 'energy', 'energy/kT'];
+  const head = [hasIds(hardest) ? 'ids' : 'index', 'a', 'e', 'energy', 'energy/kT'];
   return table(title, head, pairRows(hardest), foot, paint);
 }
 
-function pairRows(hardest: NonNullable<ExtraFigures['hardestPairs']>): string[][] {
-  const hasIds = hardest.firstIds.length > 0;
-  const name = (index: number, id: number | string) => (hasIds ? `id ${id}` : String(index));
+/** Longer ids, of which there are few, are shown without their middle. */
+const ID_WIDTH = 11;
+
+const hasIds = ({ firstIds }: HardestPairs): boolean => firstIds.length > 0;
+
+function pairRows(hardest: HardestPairs): string[][] {
+  const name = (index: number, id: number | string) =>
+    shorten(String(hasIds(hardest) ? id : index), ID_WIDTH);
   return hardest.first.map((first, k) => [
     `${name(first, hardest.firstIds[k])}, ${name(hardest.second[k], hardest.secondIds[k])}`,
     brief(hardest.semiMajorAxes[k]),

@@ -1,6 +1,5 @@
 /** One record as a page for people. */
 import {
-  findQuantity,
   recordUnits,
   unitText,
   yearsPerTimeUnit,

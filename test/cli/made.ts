@@ -39,6 +39,8 @@ export function madeRecord(change: Change = {}): MeasureRecord {
       fractions: { value: [0.1, 0.5], from: 'default' },
       exact: { value: false, from: 'default' },
       forces: { value: 'own', from: 'default' },
+      with: { value: [], from: 'default' },
+      shells: { value: 16, from: 'default' },
       ...settings,
     },
     frame: {

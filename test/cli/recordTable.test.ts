@@ -124,3 +124,166 @@ describe('the page of a record', () => {
     expect(page(false, {})).not.toContain('\u001b');
   });
 });
+
+describe('extras on the page', () => {
+  const list = (value: number | null) => [value, value];
+  const motion = {
+    set: 'bound',
+    axis: [0, 0, 1],
+    particles: [500, 500],
+    mass: [0.5, 0.5],
+    inner: [0, 1.3],
+    outer: [1.3, 70],
+    radii: [0.8, 2.2],
+    radialVelocity: list(-0.0123),
+    radialVelocityErrors: list(0.0087),
+    radialDispersion: list(0.3456),
+    radialDispersionErrors: list(0.011),
+    tangentialDispersion: list(0.34),
+    tangentialDispersionErrors: list(0.008),
+    anisotropy: [0.12, null],
+    anisotropyErrors: [0.055, null],
+    rotation: list(0.021),
+    rotationErrors: list(0.013),
+  } as const;
+  const profiles = {
+    set: 'bound',
+    inner: [0.5, 1.6],
+    radii: [0.8, 2.2],
+    outer: [1, 4],
+    density: [0.098765, 0.00123456],
+    densityErrors: [0.0061, 0.0001],
+    enclosedMass: [0.25, 0.75],
+    enclosedMassErrors: list(0.01),
+    circularVelocity: [0.56, 0.61],
+    circularVelocityErrors: list(0.01),
+    escapeVelocity: [1.25, 0.91],
+    escapeVelocityErrors: list(0.01),
+    relaxationTime: [31.5, null],
+    relaxationTimeErrors: [4, null],
+    peakVelocity: 0.6211,
+    peakVelocityError: 0.0062,
+    peakRadius: 1.41,
+    peakRadiusError: 0.05,
+  } as const;
+  const pairs = (hardPairs: number | null) => ({
+    hardPairs,
+    hardPairsEnergy: hardPairs === null ? null : 0.0345,
+    hardestPairs: {
+      first: hardPairs ? [12] : [],
+      second: hardPairs ? [345] : [],
+      firstIds: [],
+      secondIds: [],
+      separations: hardPairs ? [0.001] : [],
+      semiMajorAxes: hardPairs ? [0.00123] : [],
+      eccentricities: hardPairs ? [0.456] : [],
+      energies: hardPairs ? [0.0234] : [],
+      hardness: hardPairs ? [34.5] : [],
+      hardnessErrors: hardPairs ? [5.1] : [],
+    },
+    pairsMerged: { ...madeRecord().whole, virialRatio: 0.998 },
+  });
+  const ratio = { radialToTangential: 1.03, radialToTangentialError: 0.05 };
+  const inertia = {
+    momentOfInertiaAcceleration: 0.0021,
+    momentOfInertiaAccelerationError: 1e-6,
+    momentOfInertiaAccelerationNoise: 0.015,
+  };
+
+  it('are not there unless asked for', () => {
+    expect(recordTable(madeRecord())).not.toMatch(/d²I|Motion|Profiles|Hard pairs/);
+  });
+
+  it('show the acceleration of the moment of inertia with its noise', () => {
+    expect(recordTable(madeRecord(inertia))).toMatch(
+      /d²I\/dt² +0\.002 ± 0\.015 \(finite N\), 0 in equilibrium/,
+    );
+  });
+
+  it('show motions shell by shell', () => {
+    const page = recordTable(madeRecord({ shells: motion, ...ratio }));
+    expect(page).toContain('Motion in shells of equal number, all bodies');
+    expect(page).toMatch(/1\.300 +-0\.0123 ± 0\.0087 +0\.3456 +0\.120 ± 0\.055 +0\.021 ± 0\.013/);
+    expect(page).toMatch(/70\.00 .* n\/a /);
+    expect(page).toContain('2T_r/T_t of all: 1.030 ± 0.050');
+    const bound = { ...madeRecord().bound, particles: 990 };
+    expect(recordTable(madeRecord({ bound, shells: motion, ...ratio }))).toContain(
+      'equal number, bound bodies',
+    );
+  });
+
+  it('show profiles and where the circular velocity peaks', () => {
+    const page = recordTable(madeRecord({ profiles }));
+    expect(page).toMatch(/0\.8000 +0\.0988 ± 0\.0061 +0\.2500 +0\.5600 +1\.250 +31\.50/);
+    expect(page).toContain('v_circ is greatest, 0.6211 ± 0.0062, at 1.410 ± 0.050');
+    const none = { peakVelocity: null, peakVelocityError: null, peakRadius: null };
+    expect(recordTable(madeRecord({ profiles: { ...profiles, ...none } }))).not.toContain(
+      'is greatest',
+    );
+  });
+
+  it('show hard pairs and the ratio without them', () => {
+    const page = recordTable(madeRecord(pairs(3)));
+    expect(page).toContain('Hard pairs  3, binding energy 0.03450 in all');
+    expect(page).toMatch(/12, 345 +0\.001230 +0\.456 +0\.02340 +34\.5 ± 5\.1/);
+    expect(page).toContain('the 1 hardest of 3');
+    expect(page).toContain('With each pair as one body 2T/|U| is 0.998 ± 0.025');
+    const { hardestPairs } = pairs(3);
+    const named = { ...hardestPairs, firstIds: [7], secondIds: [4_294_967_296] };
+    expect(recordTable(madeRecord({ ...pairs(3), hardestPairs: named }))).toContain(
+      '7, 4294967296',
+    );
+    expect(recordTable(madeRecord(pairs(0)))).toContain('Hard pairs  none');
+    expect(recordTable(madeRecord(pairs(null)))).toContain('Hard pairs  n/a');
+  });
+
+  it('never wrap at 80 columns and name their units', () => {
+    const wide = (factor: number) =>
+      madeRecord({
+        settings: { units: { value: 'kpc-kms-msun', from: 'option' }, ...SOFTENED },
+        shells: {
+          ...motion,
+          outer: [1.234e-7, 9.876e12],
+          radialVelocity: list(-123456 * factor),
+          radialVelocityErrors: list(9876 * factor),
+          radialDispersion: list(345678 * factor),
+          anisotropy: list(-1234.5),
+          anisotropyErrors: list(678.9),
+          rotation: list(-98765 * factor),
+          rotationErrors: list(8765 * factor),
+        },
+        ...ratio,
+        ...inertia,
+        profiles: {
+          ...profiles,
+          radii: [1.234e-7, 9.876e12],
+          density: list(1.2345e15),
+          densityErrors: list(1.2e14),
+          enclosedMass: list(1.2345e15),
+          circularVelocity: list(123456),
+          escapeVelocity: list(123456),
+          relaxationTime: list(1.2345e15),
+          peakVelocity: 1.2345e7,
+          peakVelocityError: 12345,
+        },
+        ...pairs(3),
+        hardestPairs: {
+          ...pairs(3).hardestPairs,
+          firstIds: ['9223372036854775808'],
+          secondIds: ['-9223372036854775808'],
+          semiMajorAxes: [1.2345e-9],
+          energies: [1.2345e15],
+          hardness: [1.2345e9],
+          hardnessErrors: [2e8],
+        },
+      });
+    for (const factor of [1, 1e3]) {
+      const lines = recordTable(wide(factor)).split('\n');
+      expect(lines.filter((line) => [...line].length > 80)).toEqual([]);
+    }
+    const page = recordTable(wide(1));
+    expect(page).toContain('radii in kpc, velocities in km/s');
+    expect(page).toContain('densities in Msun kpc⁻³');
+    expect(page).toContain('2T/|W| is');
+  });
+});

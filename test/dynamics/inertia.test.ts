@@ -81,12 +81,10 @@ describe('in and out of equilibrium', () => {
     const warm = await measure(particles);
     const { kinetic, potential } = warm.whole;
     for (const ratio of [0, 0.5]) {
-      const bodies = bodiesOf(particles).map(
-        ([m, x, y, z, u, v, w]): Body => {
-          const f = Math.sqrt((ratio * -potential) / (2 * kinetic));
-          return [m, x, y, z, f * u, f * v, f * w];
-        },
-      );
+      const bodies = bodiesOf(particles).map(([m, x, y, z, u, v, w]): Body => {
+        const f = Math.sqrt((ratio * -potential) / (2 * kinetic));
+        return [m, x, y, z, f * u, f * v, f * w];
+      });
       const record = await measure(particlesOf(bodies), { with: ['inertia'] });
       const value = record.momentOfInertiaAcceleration ?? NaN;
       expect(Math.abs(value / (2 * (1 - ratio) * potential) - 1)).toBeLessThan(1e-12);

@@ -1,10 +1,11 @@
 /** Records of input at the edge: every figure finite or null with a reason, nothing silent. */
 import { describe, expect, it } from 'vitest';
 import type { MeasureRecord } from '../../src/dynamics/record.ts';
+import { EXTRA_NAMES } from '../../src/dynamics/extras.ts';
 import { findQuantity, QUANTITIES } from '../../src/dynamics/registry.ts';
 import { makeModel } from '../../src/models/make.ts';
 import type { Particles } from '../../src/snapshot/particles.ts';
-import { bodiesOf, cloud, measure, measureModel, particlesOf, type Body } from './samples.ts';
+import { bodiesOf, cloud, measure, particlesOf, type Body } from './samples.ts';
 
 /** Paths of all numbers in a value, and of what is no JSON number. */
 function leaves(value: unknown, path = ''): [string, unknown][] {
@@ -46,8 +47,11 @@ function expectSound(record: MeasureRecord): void {
 }
 
 const codes = (record: MeasureRecord) => record.remarks.map(({ code }) => code);
-const sound = async (...p: Parameters<typeof measure>): Promise<MeasureRecord> => {
-  const record = await measure(...p);
+const sound = async (
+  particles: Particles,
+  options: Parameters<typeof measure>[1] = {},
+): Promise<MeasureRecord> => {
+  const record = await measure(particles, { with: ['all'], ...options });
   expectSound(record);
   return record;
 };
@@ -61,10 +65,20 @@ const changedBodies = (p: Particles, change: (body: number[], i: number) => void
   );
 
 describe('the registry and a record', () => {
-  const OUTSIDE = /^(record|file|runFile|time|settings|engine|remarks|frame\.centreMethod)(\.|$)/;
+  const OUTSIDE =
+    /^(record|file|runFile|time|settings|engine|remarks|frame\.centreMethod|(shells|profiles)\.set)(\.|$)/;
+
+  /** All extras, of a sphere in which two bodies are a hard pair. */
+  async function fullRecord(): Promise<MeasureRecord> {
+    const bodies = bodiesOf(makeModel({ model: 'plummer', count: 500, seed: 1 }));
+    const [m, x, ...rest] = bodies[0];
+    bodies[1] = [m, x + 1e-3, ...rest] as unknown as Body;
+    const id = Uint32Array.from(bodies, (_, i) => i);
+    return measure(particlesOf(bodies, { columns: { id } }), { with: ['all'] });
+  }
 
   it('have the same figures', async () => {
-    const record = await measureModel('plummer', 500, 1);
+    const record = await fullRecord();
     const inRecord = new Set(
       leaves(record)
         .map(([path]) => path.replace(/\.\d+$/, ''))
@@ -74,10 +88,10 @@ describe('the registry and a record', () => {
   });
 
   it('agree on kinds, errors and names', async () => {
-    const record = await measureModel('plummer', 500, 1);
+    const record = await fullRecord();
     const keys = new Set(QUANTITIES.map(({ key }) => key));
     expect(keys.size).toBe(QUANTITIES.length);
-    for (const { key, kind, error, text, source } of QUANTITIES) {
+    for (const { key, kind, error, text, source, extra } of QUANTITIES) {
       const value = key
         .split('.')
         .reduce<unknown>((o, k) => (o as Record<string, unknown>)[k], record);
@@ -85,6 +99,9 @@ describe('the registry and a record', () => {
       if (kind === 'integer') expect(Number.isInteger(value), key).toBe(true);
       if (kind === 'vector') expect((value as number[]).length, key).toBe(3);
       if (kind === 'list') expect(Array.isArray(value), key).toBe(true);
+      if (kind === 'integers') expect((value as unknown[]).every(Number.isInteger), key).toBe(true);
+      if (kind === 'ids') expect(value, key).toHaveLength(1);
+      if (extra !== null) expect(EXTRA_NAMES).toContain(extra);
       if (error !== null) expect(keys, key).toContain(error);
       expect(text.length * source.length).toBeGreaterThan(0);
     }

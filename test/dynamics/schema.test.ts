@@ -64,6 +64,11 @@ describe('a record', async () => {
     ['of five bodies about the deepest', 5, { centre: 'potential' }],
     ['at rest', 100, {}, 'cold'],
     ['with nothing bound', 100, {}, 'hot'],
+    ['of a sphere with all extras', 300, { with: ['all'] }],
+    ['of one body with all extras', 1, { with: ['all'] }],
+    ['of five bodies with all extras', 5, { with: ['all'] }],
+    ['at rest with all extras', 100, { with: ['all'] }, 'cold'],
+    ['with nothing bound and all extras', 100, { with: ['all'] }, 'hot'],
   ])('%s validates, as it is and as text', async (_name, count, options, change) => {
     const { record, text } = await recordOf(count, options, change);
     expect(passes(record)).toEqual([true, true]);
@@ -72,7 +77,7 @@ describe('a record', async () => {
 
   it('has the keys of the schema, and no others', async () => {
     const units = { length: 'pc', mass: 'Msun', gravity: 1 };
-    const { text } = await recordOf(300, { softening: 0.1, units });
+    const { text } = await recordOf(300, { softening: 0.1, units, with: ['all'] });
     const schema = (await recordJsonSchema()) as unknown as SchemaNode;
     expect(keysOf(text)).toEqual(schemaKeys(schema));
     // Every quantity of the registry is in the record.
@@ -90,6 +95,16 @@ describe('a record', async () => {
       delete parent[last];
       expect([key, ...passes(cut)]).toEqual([key, false, false]);
     }
+  });
+
+  it('has extras whole or not at all', async () => {
+    const { text } = await recordOf(50, { with: ['all'] });
+    const { pairsMerged, ...without } = text;
+    expect(passes(without)).toEqual([true, true]);
+    const { noise, ...cut } = pairsMerged ?? {};
+    expect(noise).toBeGreaterThan(0);
+    expect(passes({ ...text, pairsMerged: cut })).toEqual([false, false]);
+    expect(passes({ ...text, hardPairs: 1.5 })).toEqual([false, false]);
   });
 
   it('fails with a number that is not finite, or null where a figure must be', async () => {
