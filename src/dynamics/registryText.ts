@@ -38,11 +38,12 @@ export function quantityTable(): string {
     KINDS[quantity.kind],
     dimensionText(quantity.dimension) || '1',
     quantity.nullable ? 'yes' : '',
+    quantity.extra === null ? '' : `\`${quantity.extra}\``,
     quantity.error === null ? '' : `\`${quantity.error}\``,
     quantity.text,
     quantity.source,
   ]);
-  const head = ['key', 'kind', 'dimension', 'null?', 'error in', 'meaning', 'source'];
+  const head = ['key', 'kind', 'dimension', 'null?', '--with', 'error in', 'meaning', 'source'];
   return [head, head.map(() => '---'), ...rows]
     .map((cells) => `| ${cells.map((cell) => cell.replaceAll('|', '\\|')).join(' | ')} |`)
     .join('\n');

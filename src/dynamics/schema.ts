@@ -147,8 +147,9 @@ function quantitySchema(quantity: Quantity, z: Zod): ZodType {
   };
   const unit = dimensionText(quantity.dimension);
   const error = quantity.error === null ? '' : `; 1σ error in ${quantity.error}`;
+  const extra = quantity.extra === null ? '' : `; only with --with ${quantity.extra}`;
   return schemas[quantity.kind]().describe(
-    `${quantity.text}${unit === '' ? '' : ` [${unit}]`}${error}`,
+    `${quantity.text}${unit === '' ? '' : ` [${unit}]`}${error}${extra}`,
   );
 }
 

@@ -23,6 +23,8 @@ describe('wrong usage ends with 2, nothing on stdout, and the nearest name', () 
     [['describe', 'x.bin', '--out', 'x.csv'], '--format', 'usage.format'],
     [['measure', 'x.bin', '--gravity', 'one'], '--gravity "one"', 'usage.value'],
     [['measure', 'x.bin', '--columns', 'mas=w'], 'mass', 'usage.unknownField'],
+    [['measure', 'no-such.bin', '--with', 'pairs,shels'], 'shells', 'usage.with'],
+    [['measure', 'x.bin', '--shells', '2.5'], '--shells "2.5"', 'usage.value'],
     [['make', 'plummer', '--out', 'x.bin'], '--count', 'usage.missingOption'],
     [['make', 'plummer', '--count', '5'], '--out', 'usage.missingOption'],
     [['make', 'plummer', '--count', '5', '--out', 'x.txt'], '--format', 'usage.format'],
