@@ -47,7 +47,7 @@ export const DEFAULT_ERROR = 1e-5;
 export const DEFAULT_COULOMB_FACTOR = 0.11;
 export const DEFAULT_FRACTIONS: readonly number[] = [0.01, 0.05, 0.1, 0.25, 0.5, 0.75, 0.9, 0.99];
 export const DEFAULT_SHELLS = 16;
-const MOST_SHELLS = 1000;
+export const MOST_SHELLS = 200;
 
 /** Disagreement of G and units above which a pair of options is refused. */
 const GRAVITY_CLASH = 1e-4;

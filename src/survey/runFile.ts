@@ -1,5 +1,6 @@
 /** `settlemark.json` in the folder of a run: that run's defaults for the options of a measurement. */
 import { dirname, isAbsolute, join } from 'node:path';
+import { EXTRA_NAMES, extrasNamed } from '../dynamics/extras.ts';
 import { refuseClash, type MeasureOptions } from '../dynamics/settings.ts';
 import { InputError, UsageError } from '../errors.ts';
 import { nearestName } from '../numerics/nearest.ts';
@@ -91,7 +92,8 @@ async function complete(
   places: JsonPlaces,
   stated: RunSettings,
 ): Promise<RunSettings> {
-  const { layout, units: named } = stated;
+  const { layout, units: named, with: extras = [] } = stated;
+  extras.forEach((name, k) => checkExtra(path, places, name, k));
   let units = named;
   if (typeof units === 'string' && !isUnitsFile(units)) checkName(path, places, units);
   if (units !== undefined && isUnitsFile(units)) units = await unitsBeside(path, units);
@@ -136,6 +138,21 @@ function checkName(path: string, places: JsonPlaces, name: string): void {
     `units: found "${name}"; expected ${known.join(', ')}, a file that ends in .json, or an object with length, mass and velocity`,
     nearest === null ? 'Name one of these.' : `Did you mean "${nearest}"?`,
   );
+}
+
+function checkExtra(path: string, places: JsonPlaces, name: string, k: number): void {
+  try {
+    extrasNamed([name]);
+  } catch (error) {
+    if (!(error instanceof UsageError)) throw error;
+    const expected = `${EXTRA_NAMES.join(', ')} or all`;
+    throw invalid(
+      path,
+      places.valueAt(['with', k]),
+      `with: found "${name}"; expected ${expected}`,
+      error.remedy ?? `Name some of ${expected}.`,
+    );
+  }
 }
 
 /** Units as an object are checked by their own rules, which say more than a schema. */

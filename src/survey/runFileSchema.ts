@@ -3,6 +3,8 @@
  * tells users what the keys mean. Only what reads a run file imports this module.
  */
 import { z } from 'zod';
+import { EXTRA_NAMES } from '../dynamics/extras.ts';
+import { MOST_SHELLS } from '../dynamics/settings.ts';
 import { FIELD_NAMES } from '../snapshot/reading.ts';
 import { UNIT_SYSTEMS } from '../snapshot/units.ts';
 import type { RunSettings } from './runFile.ts';
@@ -63,6 +65,16 @@ const shape = {
     .enum(['own', 'file'])
     .optional()
     .describe('U and W from own sums, or the columns of the file'),
+  with: z
+    .array(z.string())
+    .optional()
+    .describe(`names of what is measured besides: ${EXTRA_NAMES.join(', ')}, or all`),
+  shells: z
+    .int()
+    .min(1)
+    .max(MOST_SHELLS)
+    .optional()
+    .describe('number of shells of equal number of bodies'),
   threads: z.int().min(1).optional().describe('worker threads'),
 } satisfies Record<keyof RunSettings, z.ZodType>;
 

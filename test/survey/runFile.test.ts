@@ -36,6 +36,8 @@ const FULL = {
   centre: 'mass',
   coulombFactor: 0.02,
   coincident: 'refuse',
+  with: ['shells', 'hardPairs'],
+  shells: 12,
   threads: 2,
 };
 
@@ -106,6 +108,15 @@ describe('a run file that is wrong names file, line, column and remedy', () => {
       /"--softening-kernel"/,
       /"softeningKernel"/,
     ],
+    [
+      'an extra that is not known',
+      '{\n  "with": ["pairs",\n    "shels"]\n}',
+      'Invalid',
+      'line 3, column 5',
+      /with: found "shels"; expected inertia, shells/,
+      /mean shells\?/,
+    ],
+    ['too many shells', { shells: 1000 }, 'Invalid', 'line 2', /found 1000/, /./],
     ['a key far from all', { zzz: 1 }, 'UnknownKey', 'line 2', /"zzz"/, /Remove/],
     [
       'a key inside columns',
