@@ -94,7 +94,7 @@ export interface JudgeRound extends PairRound {
 export function judgePairs(round: JudgeRound, takeJob: TakeJob): void {
   const { tree, bodies, partner, pairs, judged } = round;
   const { vx, vy, vz } = bodies;
-  const { mass, input, count } = tree.bodies;
+  const { x, y, z, mass, input, count } = tree.bodies;
   const wanted = Math.min(AROUND + 2, count);
   const around = new Surroundings(tree, wanted);
   const { place } = around;
@@ -105,7 +105,10 @@ export function judgePairs(round: JudgeRound, takeJob: TakeJob): void {
     const end = Math.min(pairs.length, (job + 1) * PAIRS_A_JOB);
     for (let k = job * PAIRS_A_JOB; k < end; k++) {
       const i = pairs[k];
-      around.findAlone(i);
+      // About the centre of mass, so that it does not matter which of the two comes first.
+      const share = mass[partner[i]] / (mass[i] + mass[partner[i]]);
+      const middle = (column: Float64Array) => column[i] + share * (column[partner[i]] - column[i]);
+      around.findAt(middle(x), middle(y), middle(z));
       let objects = 0;
       let taken = 0;
       for (let near = 0; near < wanted && taken < AROUND; near++) {

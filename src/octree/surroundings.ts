@@ -208,10 +208,9 @@ export class Surroundings {
     this.guess2 = GUESS_SLACK * foundDistance2[wanted - 1];
   }
 
-  /** The same for any one body, whose group need not be open. */
-  findAlone(place: number): void {
-    const { x, y, z } = this.tree.bodies;
-    this.search(x[place], y[place], z[place], Infinity);
+  /** The same for any point; no group need be open. */
+  findAt(x: number, y: number, z: number): void {
+    this.search(x, y, z, Infinity);
   }
 
   /** Expected distance of the last neighbour over the radius of a sphere of `size` bodies. */
