@@ -13,14 +13,25 @@ import { QUANTITIES } from '../../src/dynamics/registry.ts';
 import { madeRecord } from '../cli/made.ts';
 import { measureModel } from './samples.ts';
 
-const NAMES = ['a "quoted", name.bin', 'two\nlines\r\n.bin', ' spaces ', 'ünï—☉.bin', '=1+1'];
+const NAMES = [
+  'extra.bin',
+  'a "quoted", name.bin',
+  'two\nlines\r\n.bin',
+  ' spaces ',
+  'ünï—☉.bin',
+  '=1+1',
+];
+
+/** Lists of shells, profiles and pairs; but the axis of the shells is a vector. */
+const NUMBERED = /^(shells|profiles|hardestPairs)\.(?!axis$)/;
 
 /** Records that differ in all that a table must bear: fractions, nulls, units, text. */
 async function various(): Promise<MeasureRecord[]> {
-  const [sphere, soft, one] = await Promise.all([
+  const [sphere, soft, one, extra] = await Promise.all([
     measureModel('plummer', 200, 3, { fractions: [0.3] }),
     measureModel('plummer', 50, 3, { softening: 0.1, units: 'pc-kms-msun' }),
     measureModel('plummer', 1, 3),
+    measureModel('plummer', 400, 3, { with: ['all'] }),
   ]);
   const own = madeRecord({
     settings: {
@@ -31,7 +42,7 @@ async function various(): Promise<MeasureRecord[]> {
       },
     },
   });
-  const records = [sphere, soft, one, own, madeRecord({ time: null, coreRadius: null })];
+  const records = [sphere, soft, one, extra, own, madeRecord({ time: null, coreRadius: null })];
   return records.map((record, k) => ({ ...record, file: NAMES[k] }));
 }
 
@@ -41,11 +52,13 @@ function expected(record: MeasureRecord): Map<string, unknown> {
   const visit = (path: string, value: unknown): void => {
     if (path === 'remarks') {
       cells.set(path, (value as { code: string }[]).map(({ code }) => code).join(' '));
-    } else if (Array.isArray(value) && path === 'settings.fractions') {
+    } else if (Array.isArray(value) && ['settings.fractions', 'settings.with'].includes(path)) {
       cells.set(path, value.join(' '));
+    } else if (Array.isArray(value) && NUMBERED.test(path)) {
+      value.forEach((item, k) => cells.set(`${path}[${k}]`, item));
     } else if (Array.isArray(value)) {
       value.forEach((item, k) => cells.set(`${path}.${'xyz'[k]}`, item));
-    } else if (typeof value === 'object' && value !== null && 'radii' in value) {
+    } else if (/^(lagrangian|boundLagrangian)$/.test(path)) {
       const { fractions, radii, errors } = value as MeasureRecord['lagrangian'];
       fractions.forEach((fraction, k) => {
         cells.set(`${path}[${fraction}]`, radii[k]);
