@@ -91,6 +91,8 @@ export type {
   ParticleOrigin,
   Particles,
   Remark,
+  Selection,
+  VelocityForm,
 } from './snapshot/particles.ts';
 export type {
   DescribedColumn,
@@ -251,6 +253,15 @@ export async function readSnapshot(
   crew?: Crew,
 ): Promise<Particles> {
   return (await import('./snapshot/read.ts')).readSnapshot(path, options, crew);
+}
+
+/**
+ * Comoving particles in physical coordinates, unwrapped if their box is periodic; physical ones as
+ * they are. {@link measure} and its kind do this by themselves.
+ * @throws UnanswerableError `unanswerable.periodicBox` if they are no single object in their box
+ */
+export async function toPhysical(particles: Particles): Promise<Particles> {
+  return (await import('./snapshot/frame.ts')).toPhysical(particles);
 }
 
 /** Says what is in a snapshot and reads no more of it than that takes; errors as {@link readSnapshot}. */

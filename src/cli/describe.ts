@@ -69,11 +69,20 @@ export function descriptionTable(found: SnapshotDescription, paint: Paint = NO_P
   const size = found.bytes === null ? '' : `; ${bytesText(found.bytes)}`;
   const components = componentsText(found.components);
   const parts = [
-    `${paint.strong(shorten(found.file, PAGE_WIDTH))}\n${wrap(`${kind}${found.structure}${size}`, '  ')}\n${wrap(facts.join(', '), '  ')}${components}`,
+    `${paint.strong(shorten(found.file, PAGE_WIDTH))}\n${wrap(`${kind}${found.structure}${size}`, '  ')}\n${wrap(facts.join(', '), '  ')}${frameText(found)}${components}`,
     columnsTable(found, paint),
     remarksText(found.remarks, paint),
   ];
   return `${parts.filter((part) => part !== '').join('\n\n')}\n`;
+}
+
+/** What is said of comoving coordinates, on a line of its own; empty for physical ones. */
+function frameText({ frame }: SnapshotDescription): string {
+  if (frame.kind === 'physical') return '';
+  const { scaleFactor, hubbleRate, boxSize, velocity } = frame;
+  const box = boxSize === null ? '' : `, periodic box of edge ${short(boxSize, 6)}`;
+  const text = `comoving: a = ${short(scaleFactor, 6)} (z = ${short(1 / scaleFactor - 1, 6)}), H = ${short(hubbleRate, 6)}${box}; velocities are ${velocity}`;
+  return `\n${wrap(text, '  ')}`;
 }
 
 /** `components: 4,000 gas, 96,000 dark (mass 1e-6 each)`, on a line of its own; empty without any. */

@@ -3,7 +3,6 @@ import {
   extrasNamed,
   findSnapshots,
   measureFiles,
-  parseColumns,
   prepareSnapshots,
   recordsToArrow,
   recordsToCsv,
@@ -25,13 +24,12 @@ import {
   type Format,
 } from './output.ts';
 import { startProgress } from './progress.ts';
+import { readOptionsOf, type ReadingOptions } from './readOptions.ts';
 import { remarksText } from './remarks.ts';
 import { paintFor, NO_PAINT } from './style.ts';
 import { write, type Streams } from './streams.ts';
 
-export interface MeasureCommandOptions {
-  readonly layout?: string;
-  readonly columns?: string;
+export interface MeasureCommandOptions extends ReadingOptions {
   /** True is commander's word for an option that was not given. */
   readonly runFile?: string | boolean;
   readonly units?: string;
@@ -59,17 +57,26 @@ export async function measure(
   options: MeasureCommandOptions,
   streams: Streams,
 ): Promise<ExitCode> {
-  const { layout, columns, runFile, threads, format: asked, out, quiet = false, ...rest } = options;
+  const {
+    layout,
+    columns,
+    only,
+    group,
+    within,
+    about,
+    runFile,
+    threads,
+    format: asked,
+    out,
+    quiet = false,
+    ...rest
+  } = options;
   const format = formatOf(asked, out, FORMATS);
   refuseTerminal(format, out, streams);
   const survey: SurveyOptions = {
     ...rest,
     ...(runFile !== undefined && runFile !== true && { runFile }),
-    read: {
-      ...(layout !== undefined && { layout }),
-      ...(columns !== undefined && { columns: await parseColumns(columns) }),
-      signal: streams.interrupt,
-    },
+    read: await readOptionsOf({ layout, columns, only, group, within, about }, streams.interrupt),
   };
   extrasNamed(options.with ?? []); // A name that is not known is told before anything is read.
   const files: string[] = [];

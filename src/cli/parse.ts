@@ -20,6 +20,17 @@ export function wholeOf(option: string, least: number): (text: string) => number
   };
 }
 
+/** A whole number of any size, exactly. */
+export function integerOf(option: string): (text: string) => number | bigint {
+  return (text) => {
+    if (!/^[-+]?\d+$/.test(text.trim())) {
+      throw notA(option, text, 'a whole number', 'Write it as 12.');
+    }
+    const value = Number(text);
+    return Number.isSafeInteger(value) ? value : BigInt(text.trim().replace(/^\+/, ''));
+  };
+}
+
 /** Numbers separated by commas. */
 export function listOf(option: string): (text: string) => number[] {
   const parse = numberOf(option);

@@ -7,7 +7,7 @@ import type { MakeCommandOptions } from './make.ts';
 import type { MeasureCommandOptions } from './measure.ts';
 import type { TrackOptions } from './track.ts';
 import { modelling } from './makeOptions.ts';
-import { listOf, numberOf, vectorOf, wholeOf, wordsOf } from './parse.ts';
+import { integerOf, listOf, numberOf, vectorOf, wholeOf, wordsOf } from './parse.ts';
 import type { Streams } from './streams.ts';
 import type { ExitCode } from '../errors.ts';
 
@@ -93,6 +93,10 @@ function reading(command: Command): Command {
 
 function measuring(command: Command): Command {
   return command
+    .option('--only <component>', 'only the bodies of this component')
+    .option('--group <n>', 'only the bodies of this group', integerOf('--group'))
+    .option('--within <R>', 'only the bodies within this radius', numberOf('--within'))
+    .option('--about <x,y,z>', 'centre of that radius (the densest)', vectorOf('--about'))
     .option('--units <name|file>', 'unit system: natural, kpc-kms-msun, ..., or FILE.json; sets G')
     .option('--gravity <G>', 'constant of gravitation', numberOf('--gravity'))
     .option('--softening <length>', 'Plummer-equivalent length', numberOf('--softening'))

@@ -4,6 +4,7 @@ import {
   unitText,
   yearsPerTimeUnit,
   type MeasureRecord,
+  type Selection,
   type UnitSystem,
 } from '../index.ts';
 import { duration, figure, short, vectorText, wholeNumber, yearsText } from './figure.ts';
@@ -54,7 +55,21 @@ function heading(record: MeasureRecord, paint: Paint): string {
   const facts = `${bodies(record.whole.particles)}, ${time}, ${said}, ${softened}`;
   const run =
     record.runFile === null ? '' : `\n${wrap(`with the run file ${record.runFile}`, '  ')}`;
-  return `${paint.strong(shorten(record.file, PAGE_WIDTH))}\n${wrap(facts, '  ')}${run}`;
+  const { selection } = record;
+  const chosen = selection === undefined ? '' : `\n${wrap(selectionText(selection), '  ')}`;
+  return `${paint.strong(shorten(record.file, PAGE_WIDTH))}\n${wrap(facts, '  ')}${chosen}${run}`;
+}
+
+/** `selected of 5,000: component dark, within 2 of (1, 0, 0)` */
+function selectionText({ only, group, within, about, of }: Selection): string {
+  const parts = [
+    only === null ? null : `component ${only}`,
+    group === null ? null : `group ${group}`,
+    within === null || about === null
+      ? null
+      : `within ${short(within, 6)} of (${about.map((value) => short(value, 6)).join(', ')})`,
+  ];
+  return `selected of ${wholeNumber(of)}: ${parts.filter((part) => part !== null).join(', ')}`;
 }
 
 const TIME = { mass: 0, length: 0, time: 1 } as const;

@@ -3,7 +3,6 @@ import {
   findSnapshots,
   InputError,
   measureFiles,
-  parseColumns,
   prepareSnapshots,
   readRecords,
   UnanswerableError,
@@ -20,6 +19,7 @@ import { reportFailure } from './failure.ts';
 import type { MeasureCommandOptions } from './measure.ts';
 import { formatOf, refuseOverwriting, withOutput } from './output.ts';
 import { startProgress } from './progress.ts';
+import { readOptionsOf } from './readOptions.ts';
 import { NO_PAINT, paintFor } from './style.ts';
 import type { Streams } from './streams.ts';
 
@@ -88,15 +88,22 @@ async function measureAll(
   records: MeasureRecord[],
   streams: Streams,
 ): Promise<string[]> {
-  const { layout, columns, runFile, threads, quiet = false, ...rest } = options;
+  const {
+    layout,
+    columns,
+    only,
+    group,
+    within,
+    about,
+    runFile,
+    threads,
+    quiet = false,
+    ...rest
+  } = options;
   const survey: SurveyOptions = {
     ...rest,
     ...(runFile !== undefined && runFile !== true && { runFile }),
-    read: {
-      ...(layout !== undefined && { layout }),
-      ...(columns !== undefined && { columns: await parseColumns(columns) }),
-      signal: streams.interrupt,
-    },
+    read: await readOptionsOf({ layout, columns, only, group, within, about }, streams.interrupt),
   };
   const snapshots = await prepareSnapshots(files, survey);
   const asksFor = snapshots.find((snapshot) => snapshot.threads !== null)?.threads ?? undefined;

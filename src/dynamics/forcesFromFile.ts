@@ -45,9 +45,26 @@ export function requireFileForces(particles: Particles, fit: FileForces): void {
   }
 }
 
-/** @throws InputError `input.missingForces` if the file has neither potentials nor accelerations */
-export function requireForceColumns({ origin, columns }: Particles, option: string): void {
+/**
+ * @throws InputError `input.missingForces` if the file has neither potentials nor accelerations;
+ * `input.fileForces` if its coordinates are comoving
+ */
+export function requireForceColumns({ origin, columns, frame }: Particles, option: string): void {
+  if (frame.kind === 'comoving') {
+    throw new InputError(
+      'input.fileForces',
+      `${origin.file}: coordinates are comoving, and the file does not say in which its potentials and accelerations are, so that ${option} cannot use them`,
+      `Leave out ${option}, or write physical coordinates.`,
+    );
+  }
   if (columns.potential || columns.acceleration) return;
+  if (origin.selection) {
+    throw new InputError(
+      'input.missingForces',
+      `${origin.file}: only some bodies are selected, and the forces in the file are those of all, so that ${option} has none to use`,
+      `Leave out ${option}, or the selection.`,
+    );
+  }
   throw new InputError(
     'input.missingForces',
     `${origin.file}: no column for potential or acceleration, which ${option} needs`,

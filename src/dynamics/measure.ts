@@ -4,6 +4,7 @@ import { InputError } from '../errors.ts';
 import { buildOctree } from '../octree/build.ts';
 import { PROMISED_SIGMAS, sumForces, type Forces, type ForceStage } from '../octree/forces.ts';
 import type { Crew } from '../parallel/crew.ts';
+import { toPhysical } from '../snapshot/frame.ts';
 import type { Particles } from '../snapshot/particles.ts';
 import { balanceOf, fieldOf } from './balance.ts';
 import { boundSet } from './bound.ts';
@@ -33,32 +34,27 @@ export interface MeasureContext {
 
 /**
  * Measures one snapshot.
- * @param particles - screened bodies; not changed
+ * @param given - screened bodies; not changed
  * @throws UsageError for options that contradict each other or the snapshot; InputError
  *   `input.coincident` if bodies lie at one point, nothing is softened and refusal was asked for;
- *   InputError `input.comoving` for coordinates that are not physical; `input.missingForces` and
- *   `input.fileForces` if U and W are to come from the file and cannot
+ *   InputError `input.missingForces` and `input.fileForces` if U and W are to come from the file and
+ *   cannot; UnanswerableError `unanswerable.periodicBox` for bodies that are no single object in
+ *   their box
  */
 export async function measureParticles(
-  particles: Particles,
+  given: Particles,
   options: MeasureOptions,
   crew: Crew,
   context: MeasureContext = {},
 ): Promise<MeasureRecord> {
   const start = performance.now();
-  const { file } = particles.origin;
-  if (particles.frame.kind !== 'physical') {
-    throw new InputError(
-      'input.comoving',
-      `${file}: coordinates are comoving, and this version measures physical ones`,
-      'convert positions and velocities to physical ones before measuring',
-    );
-  }
+  const particles = toPhysical(given);
+  const { file, selection } = particles.origin;
   const settings = settle(options, particles);
   const gravity = settings.gravity.value;
   const { kernel, length } = settings.softening.value;
   const fromFile = settings.forces.value === 'file';
-  if (fromFile) requireForceColumns(particles, '--forces file');
+  if (fromFile) requireForceColumns(given, '--forces file');
   const own = await sumForces(
     particles,
     {
@@ -150,6 +146,7 @@ export async function measureParticles(
     file,
     time: particles.time,
     runFile: context.runFile ?? null,
+    ...(selection && { selection }),
     settings,
     frame: {
       centreOfMass: vector(frame.frame, 0),

@@ -5,7 +5,7 @@
  * dimension, error, text and source. A figure that cannot be had is null, and a remark says why.
  */
 import type { SofteningKernel } from '../octree/softening.ts';
-import type { Remark } from '../snapshot/particles.ts';
+import type { Remark, Selection } from '../snapshot/particles.ts';
 import type { UnitSystem } from '../snapshot/units.ts';
 import type { ExtraName } from './extras.ts';
 import type { InertiaFigures } from './inertia.ts';
@@ -125,6 +125,8 @@ export interface MeasureRecord extends ExtraFigures {
   readonly time: number | null;
   /** Run file whose defaults were used, or null. */
   readonly runFile: string | null;
+  /** Which bodies were measured; absent if all were. */
+  readonly selection?: Selection;
   readonly settings: RecordSettings;
   readonly frame: {
     readonly centreOfMass: Vector;

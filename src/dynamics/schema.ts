@@ -100,11 +100,22 @@ export async function recordSchema(): Promise<ZodType> {
     remedy: z.string().describe('what to do about it'),
   });
 
+  const selection = z.object({
+    only: z.string().nullable().describe('their component'),
+    group: z.string().nullable().describe('their number in the column group'),
+    within: z.number().positive().nullable().describe('radius about the place `about`'),
+    about: z.array(z.number()).length(3).nullable().describe('in the coordinates of the file'),
+    of: z.int().min(1).describe('bodies in the snapshot'),
+  });
+
   const tree: Branch = {
     record: z.literal(RECORD_VERSION).describe('version of the form of the record'),
     file: z.string().describe('the snapshot as it was named; - for standard input'),
     time: z.number().nullable().describe('time of the snapshot [time]; null if it is not stated'),
     runFile: z.string().nullable().describe('run file whose defaults were used; null without one'),
+    selection: selection
+      .optional()
+      .describe('which bodies of the snapshot were measured; absent if all were'),
     settings: settings.describe('what was used, and where it came from'),
     frame: { centreMethod: centreMethod.describe('method of frame.centre that was used') },
   };

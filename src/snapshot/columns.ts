@@ -88,3 +88,13 @@ export function missingColumn(
       : `If "${nearest}" is meant: --columns ${field}=${nearest}`) + (alternative || '.'),
   );
 }
+
+/** `--only` names a component that is none of those there are. */
+export function unknownComponent(file: string, only: string, names: readonly string[]): InputError {
+  const nearest = nearestName(only, names);
+  return new InputError(
+    'input.unknownComponent',
+    `${file}: there is no component "${only}"; the file has ${names.slice(0, 20).join(', ')}`,
+    nearest === null ? 'Name one of these.' : `Did you mean "${nearest}"?`,
+  );
+}

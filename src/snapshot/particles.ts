@@ -44,16 +44,46 @@ export interface OptionalColumns {
   readonly subgroup?: IdColumn;
 }
 
+/**
+ * What a column of velocities can hold, by formula: x is the comoving position, a the scale factor.
+ * The first is the peculiar velocity, the last the whole physical velocity.
+ */
+export const VELOCITY_FORMS = [
+  'a dx/dt',
+  'dx/dt',
+  'a^2 dx/dt',
+  'sqrt(a) dx/dt',
+  'd(ax)/dt',
+] as const;
+
+export type VelocityForm = (typeof VELOCITY_FORMS)[number];
+
 /** Coordinates are physical, or comoving with all that is needed to make them physical. */
 export type Frame =
   | { readonly kind: 'physical' }
   | {
       readonly kind: 'comoving';
+      /** a = 1/(1 + z), above 0. */
       readonly scaleFactor: number;
+      /** H = (da/dt)/a at this a [velocity / physical length]. */
       readonly hubbleRate: number;
+      readonly velocity: VelocityForm;
       /** Edge of the periodic box [comoving length], or null if not periodic. */
       readonly boxSize: number | null;
     };
+
+/** Bodies chosen from a snapshot. */
+export interface Selection {
+  /** Name of their component. */
+  readonly only: string | null;
+  /** Their number in the column `group`, as text. */
+  readonly group: string | null;
+  /** They lie within this radius about `about`, both in the coordinates of the file. */
+  readonly within: number | null;
+  readonly about: readonly [number, number, number] | null;
+  /** Bodies in the snapshot. */
+  readonly of: number;
+}
 
 /** What a reader knows about where the bytes came from, for messages and for the record. */
 export interface ParticleOrigin {
@@ -62,6 +92,8 @@ export interface ParticleOrigin {
   readonly format: 'raw' | 'arrow-file' | 'arrow-stream' | 'made';
   /** Significant binary digits of the coarsest of mass, position, velocity in the file: 53, 24 or 11. */
   readonly mantissaBits: number;
+  /** Which bodies of the file these are; absent or null if they are all. */
+  readonly selection?: Selection | null;
   /** Findings of the reader that a user should see with the result (for instance a layout found by itself). */
   readonly remarks: readonly Remark[];
 }

@@ -7,29 +7,42 @@ import { readExactly, withInput, type OpenFile } from './files.ts';
 import type { Particles } from './particles.ts';
 import type * as RawReader from './raw/read.ts';
 import type { ReadOptions, SnapshotDescription } from './reading.ts';
-import { screenParticles } from './screen.ts';
+import { screenParticles, screenSample } from './screen.ts';
+import { checkSelection, isSelecting, selectBodies, withSelectingColumns } from './select.ts';
 
 /**
- * Reads a snapshot, raw or Arrow, and screens its values.
+ * Reads a snapshot, raw or Arrow, selects bodies if options say so, and screens their values.
+ * Coordinates stay those of the file: see `toPhysical` for comoving ones.
  * @param path - a file, or `-` for an Arrow stream on standard input
  * @param crew - workers that load a large file together; without it the calling thread does
- * @throws InputError of the reader or of `screenParticles`; UsageError `usage.standardInput`;
- * InterruptedError
+ * @throws InputError of the reader or of `screenParticles`; UsageError `usage.standardInput`; errors
+ * of `selectBodies`; InterruptedError
  */
 export async function readSnapshot(
   path: string,
   options: ReadOptions = {},
   crew?: Crew,
 ): Promise<Particles> {
-  const particles = isStandardInput(path, options)
-    ? await (await arrow()).readArrow(path, options)
-    : await withInput(path, async (file) =>
+  if (!isSelecting(options)) {
+    const particles = await readWhole(path, options, crew);
+    screenParticles(particles);
+    return particles;
+  }
+  checkSelection(options);
+  const whole = await readWhole(path, withSelectingColumns(options), crew);
+  const { particles, indices } = selectBodies(whole, options);
+  screenSample(particles, (index) => indices[index]);
+  return particles;
+}
+
+async function readWhole(path: string, options: ReadOptions, crew?: Crew): Promise<Particles> {
+  return isStandardInput(path, options)
+    ? (await arrow()).readArrow(path, options)
+    : withInput(path, async (file) =>
         (await isArrow(file, options))
           ? (await arrow()).readArrowFile(file, options, crew)
           : (await raw()).readRawFile(file, options, crew),
       );
-  screenParticles(particles);
-  return particles;
 }
 
 /**

@@ -1,5 +1,5 @@
 /** What every reader takes and gives; the readers themselves are in `raw/` and `arrow/`. */
-import type { Particles, Remark } from './particles.ts';
+import type { Frame, Particles, Remark } from './particles.ts';
 
 /** Names of the columns that the engine knows, in files of every format. */
 export const FIELD_NAMES = [
@@ -35,6 +35,14 @@ export interface ReadOptions {
   readonly columns?: Readonly<Partial<Record<FieldName, string>>>;
   /** Optional columns to load besides mass, position, velocity and `id`; others are left on disk. */
   readonly optional?: readonly FieldName[];
+  /** Only the bodies of the component of this name. */
+  readonly only?: string;
+  /** Only the bodies with this number in the column `group`. */
+  readonly group?: number | bigint;
+  /** Only the bodies within this radius about `about`, in the coordinates of the file. */
+  readonly within?: number;
+  /** If not given, `within` is about where the bodies lie densest. */
+  readonly about?: readonly [number, number, number];
   /** Called with bytes done and bytes in all, not more than some tens of times a second. */
   readonly onProgress?: (bytesDone: number, bytesTotal: number) => void;
   readonly signal?: AbortSignal;
@@ -51,6 +59,8 @@ export interface SnapshotDescription {
   readonly units: string | null;
   readonly gravity: number | null;
   readonly softening: number | null;
+  /** Whether coordinates are physical, or comoving with what makes them physical. */
+  readonly frame: Frame;
   /** Byte order of the numbers in the file. */
   readonly byteOrder: 'little' | 'big';
   /** For a raw file its layout in one line; for Arrow the compression and number of batches. */

@@ -4,6 +4,7 @@ import { InputError } from '../errors.ts';
 import { fileBytes } from '../snapshot/files.ts';
 import { describeSnapshot } from '../snapshot/read.ts';
 import type { ReadOptions, SnapshotDescription } from '../snapshot/reading.ts';
+import { isSelecting } from '../snapshot/select.ts';
 
 /** Files below this size are read without asking. */
 const ASK_ABOVE_BYTES = 256 * 2 ** 20;
@@ -18,6 +19,10 @@ const BYTES_A_BODY = 131;
 const BYTES_IF_SOFTENED = 16;
 /** Potentials and accelerations of the file, the same corrected, our own accelerations, shares of W. */
 export const BYTES_OF_FILE_FORCES = 96;
+/** Positions and velocities in physical coordinates. */
+const BYTES_IF_COMOVING = 48;
+/** Mass, position, velocity, what tells who is meant, and an index. */
+const BYTES_TO_SELECT = 72;
 
 /**
  * Bytes that measuring will take at its peak, roughly.
@@ -31,7 +36,8 @@ export function memoryNeeded(
   const needed = description.columns
     .filter(({ field }) => field !== null)
     .reduce((sum, { width, type }) => sum + width * (type === 'float32' ? 4 : 8), 0);
-  const columns = Math.min(needed, 64);
+  const isComoving = description.frame.kind === 'comoving';
+  const columns = Math.min(needed, 64) + (isComoving ? BYTES_IF_COMOVING : 0);
   return (
     BASE_BYTES +
     description.count * (columns + BYTES_A_BODY + (softened ? BYTES_IF_SOFTENED : 0) + moreBytes)
@@ -53,7 +59,10 @@ export async function requireMemory(
 ): Promise<void> {
   if (path === '-' || ((await fileBytes(path)) ?? 0) < ASK_ABOVE_BYTES) return;
   const description = await describeSnapshot(path, options, 'no values');
-  const needed = memoryNeeded(description, softened, moreBytes);
+  // How many bodies a selection leaves is not known before: those that are read must fit.
+  const needed = isSelecting(options)
+    ? BASE_BYTES + description.count * BYTES_TO_SELECT
+    : memoryNeeded(description, softened, moreBytes);
   const free = available ?? memoryAvailable();
   if (needed <= free) return;
   throw new InputError(

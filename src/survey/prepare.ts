@@ -57,7 +57,8 @@ async function overlay(
   const stated = defined(options) as Stated;
   const read = defined(options.read ?? {}) as ReadOptions;
   for (const key of ['runFile', 'onStage', 'read'] as const) delete stated[key];
-  const { layout, columns, threads = null, ...defaults } = run?.settings ?? {};
+  const { layout, columns, only, group, within, about, threads, ...defaults } = run?.settings ?? {};
+  const selecting = defined({ only, group, within, about }) as ReadOptions;
   const taken = takenDefaults(stated, defaults);
   const units = stated.units ?? taken.units;
   const keys = Object.keys(taken) as (keyof MeasureOptions)[];
@@ -68,10 +69,10 @@ async function overlay(
       ...(units !== undefined && { units: await loadUnits(units) }),
       ...(keys.length > 0 && { fromRunFile: keys }),
       // Standard input is an Arrow stream, whatever else the run consists of.
-      read: readOptions(read, file === '-' ? undefined : layout, columns),
+      read: { ...selecting, ...readOptions(read, file === '-' ? undefined : layout, columns) },
     },
     runFile: run?.path ?? null,
-    threads,
+    threads: threads ?? null,
   };
 }
 

@@ -31,9 +31,13 @@ import { UNIT_SYSTEMS } from '../snapshot/units.ts';
 /** Name of the file that is looked for in the folder of a snapshot. */
 export const RUN_FILE_NAME = 'settlemark.json';
 
+type SelectingOption = 'only' | 'group' | 'within' | 'about';
+
 /** What a run file may decide. Paths in it are relative to the file; here they are ready to be opened. */
 export interface RunSettings
-  extends Omit<MeasureOptions, 'fromRunFile'>, Pick<ReadOptions, 'layout' | 'columns'> {
+  extends
+    Omit<MeasureOptions, 'fromRunFile'>,
+    Pick<ReadOptions, 'layout' | 'columns' | SelectingOption> {
   readonly threads?: number;
 }
 

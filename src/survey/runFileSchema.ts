@@ -37,6 +37,14 @@ const shape = {
     .strictObject(columnNames)
     .optional()
     .describe('from the names of Settlemark to those of columns in the files'),
+  only: z.string().min(1).optional().describe('only the bodies of this component'),
+  group: z.int().optional().describe('only the bodies with this number in the column group'),
+  within: z
+    .number()
+    .positive()
+    .optional()
+    .describe('only the bodies within this radius, in the coordinates of the file'),
+  about: z.tuple([z.number(), z.number(), z.number()]).optional().describe('centre of that radius'),
   units: z
     .union([z.string().min(1), ownUnits], {
       error: 'a name, a file that ends in .json, or an object with length, mass and velocity',

@@ -11,6 +11,7 @@ const PLAIN: SnapshotDescription = {
   units: 'natural',
   gravity: null,
   softening: null,
+  frame: { kind: 'physical' },
   byteOrder: 'little',
   structure: 'little-endian, columns: position float32×3, velocity float32×3',
   columns: [],
@@ -27,5 +28,19 @@ it('tells components in one line, as far as they are known', () => {
   ];
   expect(descriptionTable({ ...PLAIN, components })).toContain(
     '\n  components: 12,000 gas, 48,000 dark (mass 2.5e-5 each), halo\n',
+  );
+});
+
+it('tells what makes comoving coordinates physical', () => {
+  expect(descriptionTable(PLAIN)).not.toContain('comoving');
+  const frame = {
+    kind: 'comoving',
+    scaleFactor: 0.25,
+    hubbleRate: 0.4,
+    velocity: 'sqrt(a) dx/dt',
+    boxSize: 50,
+  } as const;
+  expect(descriptionTable({ ...PLAIN, frame }).replace(/\s+/g, ' ')).toContain(
+    'comoving: a = 0.25 (z = 3), H = 0.4, periodic box of edge 50; velocities are sqrt(a) dx/dt',
   );
 });

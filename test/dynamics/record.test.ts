@@ -66,7 +66,7 @@ const changedBodies = (p: Particles, change: (body: number[], i: number) => void
 
 describe('the registry and a record', () => {
   const OUTSIDE =
-    /^(record|file|runFile|time|settings|engine|remarks|frame\.centreMethod|(shells|profiles)\.set)(\.|$)/;
+    /^(record|file|runFile|time|selection|settings|engine|remarks|frame\.centreMethod|(shells|profiles)\.set)(\.|$)/;
 
   /** All extras, of a sphere in which two bodies are a hard pair. */
   async function fullRecord(): Promise<MeasureRecord> {
@@ -320,15 +320,6 @@ describe('odd snapshots', () => {
       if (outcome instanceof Error) expect(outcome).toMatchObject({ code: 'input.overflow' });
       else expectSound(outcome as MeasureRecord);
     }
-  });
-});
-
-it('refuses comoving coordinates', async () => {
-  const frame = { kind: 'comoving', scaleFactor: 0.5, hubbleRate: 1, boxSize: null } as const;
-  await expect(measure(particlesOf(cloud(10, 1), { frame }))).rejects.toMatchObject({
-    code: 'input.comoving',
-    message: expect.stringContaining('made.bin') as string,
-    remedy: expect.stringMatching(/./) as string,
   });
 });
 

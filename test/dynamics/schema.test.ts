@@ -77,7 +77,10 @@ describe('a record', async () => {
 
   it('has the keys of the schema, and no others', async () => {
     const units = { length: 'pc', mass: 'Msun', gravity: 1 };
-    const { text } = await recordOf(300, { softening: 0.1, units, with: ['all'] });
+    const { text: whole } = await recordOf(300, { softening: 0.1, units, with: ['all'] });
+    const selection = { only: 'gas', group: '7', within: 2, about: [0, 0, 1], of: 900 };
+    const text = { ...(whole as object), selection };
+    expect(passes(text)).toEqual([true, true]);
     const schema = (await recordJsonSchema()) as unknown as SchemaNode;
     expect(keysOf(text)).toEqual(schemaKeys(schema));
     // Every quantity of the registry is in the record.

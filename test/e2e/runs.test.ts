@@ -194,3 +194,51 @@ describe('settlemark.json in the folder of a run', () => {
     expect(missing).toContain('(input.notFound)');
   });
 });
+
+describe('some of the bodies', () => {
+  beforeAll(() => {
+    // A pair of stars on a circular orbit, 5 from a heavy body of dark matter at rest.
+    put('kinds/a.bin', [...PAIR, 50, 5, 0, 0, 0, 0, 0]);
+    put('kinds/layout.json', {
+      settlemark: 'layout/1',
+      components: [
+        { name: 'stars', count: 2 },
+        { name: 'dark', count: 1 },
+      ],
+      fields: ['mass', 'x', 'y', 'z', 'vx', 'vy', 'vz'].map((name) => ({ name, type: 'float64' })),
+    });
+  });
+
+  it('are chosen on the command line, and page and record say so', async () => {
+    const file = at('kinds/a.bin');
+    const [record] = await records(file, '--only', 'stars', '--within', '2', '--about', '0,0,0');
+    expect(record.whole).toMatchObject({
+      particles: 2,
+      kinetic: expect.closeTo(0.5, 12) as number,
+    });
+    expect(record.selection).toEqual({
+      only: 'stars',
+      group: null,
+      within: 2,
+      about: [0, 0, 0],
+      of: 3,
+    });
+    const { out, err } = await settlemark(['measure', file, '--only', 'stars']);
+    expect(out).toContain('selected of 3: component stars');
+    expect(out + err).toContain('(selection)');
+    expect(await failure(3, 'measure', file, '--only', 'star')).toContain('mean "stars"');
+    expect(await failure(4, 'measure', file, '--within', '1', '--about', '99,0,0')).toContain(
+      '(unanswerable.emptySelection)',
+    );
+  });
+
+  it('are chosen by the run file, over which the command line goes', async () => {
+    put('kinds/settlemark.json', { only: 'dark' });
+    const [record] = await records(at('kinds/a.bin'));
+    expect(record.selection?.only).toBe('dark');
+    const [other] = await records(at('kinds/a.bin'), '--only', 'stars');
+    expect(other.selection?.only).toBe('stars');
+    put('kinds/settlemark.json', { onyl: 'dark' });
+    expect(await failure(2, 'measure', at('kinds/a.bin'))).toContain('mean "only"');
+  });
+});

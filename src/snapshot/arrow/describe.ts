@@ -164,7 +164,7 @@ function describe(
 ): SnapshotDescription {
   const { file, plan } = planner;
   const schema = planner.schema!;
-  const { time, units, gravity, softening } = readFacts(schema.metadata, file);
+  const { time, units, gravity, softening, frame } = readFacts(schema.metadata, file);
   const columns = schema.fields.map(({ name, type }, fieldIndex): DescribedColumn => {
     const planned = plan.find((column) => column.fieldIndex === fieldIndex);
     const range = ranges.byField.get(fieldIndex);
@@ -191,6 +191,7 @@ function describe(
     units: units?.name ?? null,
     gravity,
     softening,
+    frame,
     byteOrder: 'little',
     structure: `Arrow IPC ${kind}, ${batchText}, ${compression}`,
     columns,

@@ -1,7 +1,7 @@
 /** Facts about a snapshot in the metadata of an Arrow schema, under keys that begin with `settlemark.`. */
 import { InputError } from '../../errors.ts';
 import { nearestName } from '../../numerics/nearest.ts';
-import type { Frame } from '../particles.ts';
+import { VELOCITY_FORMS, type Frame, type VelocityForm } from '../particles.ts';
 import { checkUnits, ownUnits, UNITS_KEYS, type RefuseUnits } from '../ownUnits.ts';
 import { UNIT_SYSTEMS, type UnitSystem } from '../units.ts';
 
@@ -21,6 +21,7 @@ const KEY = {
   scaleFactor: 'settlemark.scaleFactor',
   hubbleRate: 'settlemark.hubbleRate',
   boxSize: 'settlemark.boxSize',
+  velocity: 'settlemark.velocity',
 } as const;
 
 const OWN_UNIT_TEXTS = ['mass', 'length', 'velocity', 'time'] as const;
@@ -62,8 +63,27 @@ export function readFacts(metadata: ReadonlyMap<string, string>, file: string): 
               file,
             ),
             boxSize: number(KEY.boxSize, positive, 'a number above 0'),
+            velocity: velocityForm(metadata.get(KEY.velocity), file),
           },
   };
+}
+
+function velocityForm(text: string | undefined, file: string): VelocityForm {
+  const form = VELOCITY_FORMS.find((one) => one === text);
+  if (form !== undefined) return form;
+  const forms = VELOCITY_FORMS.map((one) => `"${one}"`).join(', ');
+  const found =
+    text === undefined
+      ? `${KEY.scaleFactor} and no ${KEY.velocity}`
+      : `${KEY.velocity} = "${shortened(text)}"`;
+  const nearest = text === undefined ? null : nearestName(text, VELOCITY_FORMS);
+  throw new InputError(
+    'input.metadata',
+    `${file}: the schema's metadata has ${found}; expected what the velocities are: ${forms}`,
+    nearest === null
+      ? 'Write it beside the scale factor: x is the comoving position, a the scale factor.'
+      : `Did you mean "${nearest}"?`,
+  );
 }
 
 function required(hubbleRate: number | null, file: string): number {
@@ -145,6 +165,7 @@ export function writeFacts(facts: SnapshotFacts): Map<string, string> {
     put(KEY.scaleFactor, frame.scaleFactor);
     put(KEY.hubbleRate, frame.hubbleRate);
     put(KEY.boxSize, frame.boxSize);
+    metadata.set(KEY.velocity, frame.velocity);
   }
   return metadata;
 }

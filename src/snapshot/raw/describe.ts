@@ -13,6 +13,7 @@ import { screenSample } from '../screen.ts';
 import { readBodies, type BodyRange, type Target } from './bodies.ts';
 import { findLayout } from './find-layout.ts';
 import { layOverOrExplain } from './fit.ts';
+import { frameOf } from './frame.ts';
 import type { PlacedComponent } from './components.ts';
 import { describeLayout, isHeldBy, isSkip, type Layout, type LayoutField } from './layout.ts';
 import { planColumns, QUANTITIES, similarNames, type Plan, type Quantity } from './plan.ts';
@@ -50,6 +51,7 @@ export async function describeRaw(
       units: stated.units?.name ?? null,
       gravity: stated.gravity,
       softening: stated.softening,
+      frame: frameOf(path, structure),
       byteOrder: layout.byteOrder,
       structure: describeLayout(layout),
       columns: layout.fields.flatMap((entry) =>

@@ -12,6 +12,7 @@ export function checkMeaning(layout: Layout, file: string): void {
   checkComponents(layout, refuse);
   checkFields(layout, refuse);
   checkStatedOnce(layout, refuse);
+  checkComoving(layout, refuse);
   checkHeader(layout, refuse);
 }
 
@@ -210,6 +211,39 @@ function checkStatedOnce(layout: Layout, refuse: Refuse): void {
       `${codes.key}.name`,
       'found "component", although the layout lists components; expected one of them',
       'Rename the field, or remove the list.',
+    );
+  }
+}
+
+function checkComoving(layout: Layout, refuse: Refuse): void {
+  const { comoving } = layout;
+  if (comoving === undefined) return;
+  for (const [key, value] of Object.entries(comoving)) {
+    if (typeof value !== 'string') checkReference(`comoving.${key}`, value, layout, refuse);
+  }
+  const { scaleFactor, redshift, hubbleRate, hubbleConstant, matterDensity, darkEnergyDensity } =
+    comoving;
+  if ((scaleFactor === undefined) === (redshift === undefined)) {
+    refuse(
+      'comoving',
+      `found ${scaleFactor === undefined ? 'neither scaleFactor nor' : 'both scaleFactor and'} redshift; expected one of them`,
+      'The scale factor is 1/(1 + redshift).',
+    );
+  }
+  const hasDensities = matterDensity !== undefined || darkEnergyDensity !== undefined;
+  const hasOther = hubbleConstant !== undefined || hasDensities;
+  if (hubbleRate !== undefined && hasOther) {
+    refuse(
+      'comoving.hubbleRate',
+      'found beside hubbleConstant or densities; expected one of both',
+      'Remove hubbleConstant, matterDensity and darkEnergyDensity, or hubbleRate.',
+    );
+  }
+  if (hubbleRate === undefined && (hubbleConstant === undefined || matterDensity === undefined)) {
+    refuse(
+      'comoving',
+      'found no rate of expansion; expected hubbleRate, or hubbleConstant and matterDensity',
+      'Say { "header": "NAME" } if the header holds it, or 0 for a box that does not expand.',
     );
   }
 }

@@ -4,6 +4,7 @@
  * `layout-check.ts`.
  */
 import { z } from 'zod';
+import { VELOCITY_FORMS } from '../particles.ts';
 import { UNIT_SYSTEMS } from '../units.ts';
 import { NUMBER_TYPES, TYPE_BYTES } from './types.ts';
 
@@ -99,6 +100,29 @@ const constants = z
   })
   .describe('what the file does not hold');
 
+const comoving = z
+  .strictObject({
+    scaleFactor: stated.optional().describe('a, above 0'),
+    redshift: stated.optional().describe('z, in place of the scale factor: a = 1/(1 + z)'),
+    hubbleRate: stated
+      .optional()
+      .describe('H = (da/dt)/a at this time, in units of velocity over physical length'),
+    hubbleConstant: stated
+      .optional()
+      .describe(
+        'H today, from which H follows with the densities, in place of hubbleRate; same unit',
+      ),
+    matterDensity: stated.optional().describe('density of matter today, over the critical one'),
+    darkEnergyDensity: stated
+      .optional()
+      .describe('that of dark energy, constant in time; without it space is flat'),
+    boxSize: stated.optional().describe('edge of the periodic box, in the unit of positions'),
+    velocity: z
+      .enum(VELOCITY_FORMS)
+      .describe('what the column of velocities holds; x is the comoving position'),
+  })
+  .describe('positions are comoving: physical ones are a times them');
+
 const unitNames = Object.keys(UNIT_SYSTEMS) as (keyof typeof UNIT_SYSTEMS)[];
 
 export const layoutSchema = z
@@ -131,6 +155,7 @@ export const layoutSchema = z
       .describe('kinds of bodies, in the order in which they lie in the file'),
     fields: z.array(z.union([field, skip])).min(1),
     constants: constants.optional(),
+    comoving: comoving.optional(),
     units: z.enum(unitNames).optional().describe('system of units; sets G unless gravity is given'),
   })
   .meta({
@@ -147,6 +172,7 @@ export const LAYOUT_KEYS = {
   components: Object.keys(component.shape),
   reference: Object.keys(reference.shape),
   constants: Object.keys(constants.shape),
+  comoving: Object.keys(comoving.shape),
 } as const;
 
 /** A layout as it stands in a file: what has a default may be left out. */
@@ -155,6 +181,7 @@ export type LayoutInput = z.input<typeof layoutSchema>;
 export type Layout = z.output<typeof layoutSchema>;
 export type LayoutField = z.output<typeof field>;
 export type LayoutComponent = z.output<typeof component>;
+export type LayoutComoving = z.output<typeof comoving>;
 export type StatedNumber = z.output<typeof stated>;
 export type LayoutSkip = z.output<typeof skip>;
 

@@ -1,7 +1,7 @@
 /** Which number of which field goes into which of our columns. */
 import { InputError } from '../../errors.ts';
 import { nearestName } from '../../numerics/nearest.ts';
-import { missingColumn, unknownColumn } from '../columns.ts';
+import { missingColumn, unknownColumn, unknownComponent } from '../columns.ts';
 import type { Remark } from '../particles.ts';
 import { FIELD_NAMES, type FieldName, type ReadOptions } from '../reading.ts';
 import { isHeldBy, isSkip, type Layout, type LayoutComponent, type LayoutField } from './layout.ts';
@@ -63,9 +63,14 @@ const OPTIONAL_SCALARS = [
 /**
  * Plans the reading of mass, position, velocity and `id`, and of the optional columns asked for
  * that the file has. A column is planned only if all components have it.
- * @throws InputError `input.unknownColumn`, `input.missingColumn`, `input.columnWidth`
+ * @throws InputError `input.unknownColumn`, `input.missingColumn`, `input.columnWidth`,
+ * `input.unknownComponent`
  */
 export function planColumns(file: string, layout: Layout, options: ReadOptions): Plan {
+  const names = layout.components?.map(({ name }) => name) ?? [];
+  if (options.only !== undefined && names.length > 0 && !names.includes(options.only)) {
+    throw unknownComponent(file, options.only, names);
+  }
   const finder = new FieldFinder(file, layout, options);
   const plan = new Map<Quantity, Sources>();
   const wanted = new Set<string>(options.optional ?? []);
@@ -96,11 +101,13 @@ class FieldFinder {
   readonly #layout: Layout;
   readonly #columns: NonNullable<ReadOptions['columns']>;
   readonly #fields: readonly LayoutField[];
+  readonly #only: string | undefined;
 
   constructor(file: string, layout: Layout, options: ReadOptions) {
     this.#file = file;
     this.#layout = layout;
     this.#columns = options.columns ?? {};
+    this.#only = options.only;
     this.#fields = layout.fields.flatMap((entry) => (isSkip(entry) ? [] : [entry]));
   }
 
@@ -163,10 +170,12 @@ class FieldFinder {
     const stated = quantity === 'mass' || quantity === 'softening' ? quantity : null;
     if (stated === 'mass' && constants?.mass !== undefined) return null;
     if (components === undefined) return sources.length > 0 ? null : ALL;
+    // Of the others nothing is kept.
+    const wanted = components.filter(({ name }) => name === (this.#only ?? name));
     const isLacking = (component: LayoutComponent): boolean =>
       (stated === null || component[stated] === undefined) &&
       !sources.some(({ field }) => isHeldBy(field, component.name));
-    const lacking = components.filter(isLacking);
+    const lacking = wanted.filter(isLacking);
     if (lacking.length === 0) return null;
     return lacking.length === components.length ? ALL : lacking[0].name;
   }

@@ -14,6 +14,7 @@ import { readBodies, type Target } from './bodies.ts';
 import { ComponentCodes } from './component-codes.ts';
 import { allocateIds } from './decode.ts';
 import { findLayout, type FoundLayout } from './find-layout.ts';
+import { frameOf } from './frame.ts';
 import { layOverOrExplain } from './fit.ts';
 import type { Layout } from './layout.ts';
 import {
@@ -150,7 +151,7 @@ function assemble(
     columns: { ...optionalColumns(columns), ...(component && { component }) },
     componentNames,
     ...statedValues(path, structure),
-    frame: { kind: 'physical' },
+    frame: frameOf(path, structure),
     origin: {
       file: path,
       format: 'raw',

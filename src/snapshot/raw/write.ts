@@ -5,6 +5,7 @@ import type { Particles } from '../particles.ts';
 import { writtenComponents, componentHeader } from './component-writer.ts';
 import type { StatedComponent } from './components.ts';
 import { sourceOf, type Values } from './encode.ts';
+import { frameHeader } from './frame.ts';
 import {
   bodyBytes,
   DEFAULT_LAYOUT,
@@ -170,6 +171,7 @@ function headerOf(
     gravity: particles.gravity,
     softening: particles.softening,
     ...componentHeader(path, layout, components),
+    ...frameHeader(path, layout.comoving, particles.frame),
   };
   for (const item of layout.header) {
     const value = Object.hasOwn(values, item.name) ? values[item.name] : null;

@@ -119,7 +119,13 @@ describe('writeArrow', () => {
       gravity: 2,
       softening: 0,
       units: { name: 'own', mass: 'u', length: 'l', velocity: 'v', time: 'l/v', gravity: 2 },
-      frame: { kind: 'comoving', scaleFactor: 0.5, hubbleRate: 70, boxSize: null },
+      frame: {
+        kind: 'comoving',
+        scaleFactor: 0.5,
+        hubbleRate: 70,
+        boxSize: null,
+        velocity: 'dx/dt',
+      },
     } as const;
     await writeArrow(path, { ...particles, ...facts });
     expect(await readArrow(path)).toMatchObject(facts);
