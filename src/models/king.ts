@@ -122,12 +122,19 @@ class KingTable {
     const rise = value - a;
     const bend = 3 * (b - a) - 2 * da - db;
     const twist = da + db - 2 * (b - a);
+    // The slope may end at 0, where Newton's iteration alone would go astray.
+    let [least, most] = [0, 1];
     let share = rise / (b - a);
-    for (let round = 0; round < 4; round++) {
+    for (let round = 0; round < 60; round++) {
       const miss = share * (da + share * (bend + share * twist)) - rise;
-      share -= miss / (da + share * (2 * bend + share * 3 * twist));
+      if (miss > 0) most = share;
+      else least = share;
+      let next = share - miss / (da + share * (2 * bend + share * 3 * twist));
+      if (!(next >= least && next <= most)) next = (least + most) / 2;
+      const isSettled = Math.abs(next - share) < 1e-15;
+      share = next;
+      if (isSettled) break;
     }
-    share = Math.min(1, Math.max(0, share));
     return {
       below: (low + share) * this.step,
       w: (STEPS - low - share) * this.step,
@@ -156,7 +163,7 @@ export interface KingModel extends SampledModel {
   readonly sigmaSquared: number;
 }
 
-/** @param w0 - W₀, the central potential in units of σ², above 0 and at most 20 */
+/** @param w0 - W₀, the central potential in units of σ², from 1e-6 to 20 */
 export function king(w0: number): KingModel {
   const table = new KingTable(w0);
   const edge = Math.sqrt(table.y[STEPS]);
@@ -234,6 +241,7 @@ export function king(w0: number): KingModel {
  * the exponential only bends down, for large W from √k e^−k.
  */
 function drawEnergy(w: number, random: Random): number {
+  if (w === 0) return 0;
   if (w <= 2) {
     const steepest = Math.expm1(w) / w;
     for (;;) {

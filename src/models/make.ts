@@ -4,7 +4,13 @@ import { Random } from '../numerics/random.ts';
 import { allocateColumn, type Particles } from '../snapshot/particles.ts';
 import type { BodyView } from './sampling.ts';
 import { startOfEncounter, type RelativeMotion } from './encounter.ts';
-import { optionError, requirePositive, requireVector, type MakeOptions } from './options.ts';
+import {
+  optionError,
+  optionName,
+  requirePositive,
+  requireVector,
+  type MakeOptions,
+} from './options.ts';
 import { planSphere, type SpherePlan } from './plan.ts';
 import { shift } from './scaling.ts';
 import { drawSphere, viewOf, type DrawnSphere } from './sphere.ts';
@@ -55,16 +61,7 @@ export function draftModel(options: MakeOptions): Draft {
 
   const type = float32 ? 'float32' : 'float64';
   const mantissaBits = float32 ? 24 : 53;
-  const column = () => allocateColumn(count, type);
-  const bodies: BodyView = {
-    mass: column(),
-    x: column(),
-    y: column(),
-    z: column(),
-    vx: column(),
-    vy: column(),
-    vz: column(),
-  };
+  const bodies = allocateBodies(count, type);
   const components = componentsOf(plans, count);
   // What has no distribution function is refused before anything is drawn.
   for (const plan of plans) for (const component of plan.components) component.source();
@@ -97,6 +94,29 @@ export function draftModel(options: MakeOptions): Draft {
       return particles;
     },
   };
+}
+
+function allocateBodies(count: number, type: 'float64' | 'float32'): BodyView {
+  const column = () => allocateColumn(count, type);
+  try {
+    return {
+      mass: column(),
+      x: column(),
+      y: column(),
+      z: column(),
+      vx: column(),
+      vy: column(),
+      vz: column(),
+    };
+  } catch (error) {
+    if (!(error instanceof RangeError)) throw error;
+    throw new UsageError(
+      'usage.modelOption',
+      `The option ${optionName('count')} asks for ${count} bodies, for which the memory of this process does not suffice.`,
+      'Give fewer bodies.',
+      { cause: error },
+    );
+  }
 }
 
 function motionOf(

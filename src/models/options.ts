@@ -19,7 +19,7 @@ export interface ComponentOptions {
   readonly mass?: number;
   /** γ of `dehnen`, density ∝ r^−γ at the centre, at least 0 and less than 3. */
   readonly innerSlope?: number;
-  /** W₀ of `king`, above 0 and at most 20. */
+  /** W₀ of `king`, from 1e-6 to 20. */
   readonly centralPotential?: number;
   /**
    * r_a of Osipkov and Merritt [length]: β = r²/(r² + r_a²), isotropic inside and radial outside;
@@ -164,8 +164,13 @@ export function requireComponent(options: ComponentOptions, prefix: string): voi
     throw optionError(`${prefix}innerSlope`, innerSlope, 'at least 0 and less than 3');
   }
   requireOwn(`${prefix}centralPotential`, centralPotential, model, 'king', 'W0, such as 6');
-  if (centralPotential !== undefined && !(centralPotential > 0 && centralPotential <= 20)) {
-    throw optionError(`${prefix}centralPotential`, centralPotential, 'above 0 and at most 20');
+  if (centralPotential !== undefined && !(centralPotential >= 1e-6 && centralPotential <= 20)) {
+    throw optionError(
+      `${prefix}centralPotential`,
+      centralPotential,
+      'from 1e-6 to 20',
+      'Give W0, such as 6.',
+    );
   }
   requirePositive(`${prefix}anisotropyRadius`, options.anisotropyRadius);
   if (options.anisotropyRadius !== undefined && model === 'uniform') {

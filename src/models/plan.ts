@@ -82,6 +82,7 @@ export function planSphere(options: SphereOptions, owner = ''): SpherePlan {
   });
   const cut = options.cut ?? Infinity;
   requirePositive(`${owner}cut`, options.cut);
+  requireLengths(options, owner);
   const models = given.map(modelOf);
   const components = given.map((component, k): ComponentPlan => {
     const { scaleRadius = 1, mass = 1, name } = component;
@@ -93,7 +94,7 @@ export function planSphere(options: SphereOptions, owner = ''): SpherePlan {
       scaleRadius,
       wholeMass: mass,
       massFraction: cut === Infinity ? 1 : models[k].enclosedMass(cut / scaleRadius),
-      source: () => (source ??= sourceOf(given, models, k, prefixes[k])),
+      source: () => (source ??= sourceOf(given, models, k, { prefix: prefixes[k], owner, cut })),
     };
   });
   return {
@@ -103,6 +104,27 @@ export function planSphere(options: SphereOptions, owner = ''): SpherePlan {
     mass: components.reduce((sum, part) => sum + part.wholeMass * part.massFraction, 0),
     ...planExtras(options, owner),
   };
+}
+
+/** How far apart two lengths of one sphere may be: the inversion resolves all that lies between. */
+const MOST_RATIO = 1e10;
+
+/** @throws UsageError `usage.modelOption` if lengths of a sphere are too far apart */
+function requireLengths(options: SphereOptions, owner: string): void {
+  const { scaleRadius: first = 1, second } = options;
+  const components = second === undefined ? [options] : [options, second];
+  components.forEach(({ scaleRadius = 1, anisotropyRadius = Infinity }, k) => {
+    const prefix = k === 0 ? owner : `${owner}second.`;
+    const ratio = scaleRadius / first;
+    if (!(ratio >= 1 / MOST_RATIO && ratio <= MOST_RATIO)) {
+      const expected = `from ${first / MOST_RATIO} to ${first * MOST_RATIO}, the scale radius of the first component over and times ${MOST_RATIO}`;
+      throw optionError(`${prefix}scaleRadius`, scaleRadius, expected);
+    }
+    if (!(anisotropyRadius >= scaleRadius / MOST_RATIO)) {
+      const expected = `at least ${scaleRadius / MOST_RATIO}, the scale radius over ${MOST_RATIO}`;
+      throw optionError(`${prefix}anisotropyRadius`, anisotropyRadius, expected);
+    }
+  });
 }
 
 function planExtras(
@@ -124,6 +146,8 @@ function planExtras(
   requireShare(`${owner}escapers.share`, escaperShare);
   requireNotNegative(`${owner}escapers.speed`, escapers?.speed);
   const leaving = Math.round(escaperShare * count);
+  requireSome(`${owner}binaries.share`, pairShare, pairs, 'one pair', count);
+  requireSome(`${owner}escapers.share`, escaperShare, leaving, 'one body', count);
   if (2 * pairs + leaving > count) {
     throw optionError(
       `${owner}escapers.share`,
@@ -138,6 +162,13 @@ function planExtras(
     escapers: leaving,
     escaperSpeed: escapers?.speed,
   };
+}
+
+/** Refuses a share so small that nothing comes of it. */
+function requireSome(path: string, share: number, some: number, one: string, count: number): void {
+  if (share === 0 || some > 0) return;
+  const remedy = 'Give a larger share or more bodies, or leave it out.';
+  throw optionError(path, share, `a share that is at least ${one}; the count is ${count}`, remedy);
 }
 
 /** Profiles of all components in the units of component k. */
@@ -169,7 +200,7 @@ function sourceOf(
   given: readonly ComponentOptions[],
   models: readonly SampledModel[],
   k: number,
-  prefix: string,
+  { prefix, owner, cut }: { readonly prefix: string; readonly owner: string; readonly cut: number },
 ): BodySource {
   const model = models[k];
   const { scaleRadius = 1, anisotropyRadius: length = Infinity } = given[k];
@@ -177,11 +208,19 @@ function sourceOf(
   const radiusOfMass = (f: number): number => {
     const r = model.radiusOfMass(f);
     if (r >= LEAST_RADIUS) return r;
+    if (given[k].innerSlope !== undefined && cut === Infinity) {
+      throw optionError(
+        `${prefix}innerSlope`,
+        given[k].innerSlope,
+        `less steep: the model has bodies inside ${LEAST_RADIUS} scale radii`,
+        'Give a smaller γ or fewer bodies.',
+      );
+    }
     throw optionError(
-      `${prefix}innerSlope`,
-      given[k].innerSlope,
-      `less steep: the model has bodies inside ${LEAST_RADIUS} scale radii`,
-      'Give a smaller γ or fewer bodies.',
+      `${owner}cut`,
+      cut,
+      `larger: there are bodies inside ${LEAST_RADIUS} scale radii`,
+      'Give a larger cut.',
     );
   };
   const isPlain = models.length === 1 && anisotropyRadius === Infinity;

@@ -2,7 +2,7 @@
 import { CompensatedSum } from '../numerics/compensated.ts';
 import { refuseClash } from '../dynamics/settings.ts';
 import { UsageError } from '../errors.ts';
-import { draftModel, type MakeOptions } from '../models/make.ts';
+import { draftModel, type MakeOptions, type SphereOptions } from '../models/make.ts';
 import type { BodyView } from '../models/sampling.ts';
 import { recentre, scaleVelocities, virialScaling } from '../models/scaling.ts';
 import { sumForces } from '../octree/forces.ts';
@@ -10,6 +10,7 @@ import type { SofteningKernel } from '../octree/softening.ts';
 import type { Crew } from '../parallel/crew.ts';
 import type { Particles } from '../snapshot/particles.ts';
 import { loadUnits, unitSystemOf, type Units } from '../snapshot/ownUnits.ts';
+import { BYTES_A_BODY, requireMemoryToMake } from './memory.ts';
 
 export interface MakeSnapshotOptions extends MakeOptions {
   /** Name of a unit system, a file of units (`.json`), or sizes; sets G unless `gravity` is given. */
@@ -47,6 +48,7 @@ export async function makeSnapshot(options: MakeSnapshotOptions, crew: Crew): Pr
   const softening = { kernel, length: kernel === 'none' ? 0 : length };
   if (virialRatio !== undefined) virialScaling(1, -1, virialRatio); // Refuses a bad ratio before the work.
 
+  requireMemoryToMake(countOf(options), bytesABody(options));
   const draft = draftModel({ ...options, gravity });
   if (virialRatio !== undefined) {
     for (const { systems } of draft.spheres) {
@@ -59,6 +61,18 @@ export async function makeSnapshot(options: MakeSnapshotOptions, crew: Crew): Pr
   const particles = draft.finish();
   // A file holds a length but no kernel, and a reader of it takes Plummer's: say nothing rather than wrong.
   return { ...particles, units, softening: kernel === 'plummer' ? length : null };
+}
+
+/** Bodies of all components of both spheres. */
+function countOf({ companion, ...sphere }: MakeOptions): number {
+  const spheres: readonly SphereOptions[] =
+    companion === undefined ? [sphere] : [sphere, companion];
+  return spheres.reduce((sum, { count, second }) => sum + count + (second?.count ?? 0), 0);
+}
+
+/** Seven columns, the component and scratch; what the forces take where a ratio is wanted. */
+function bytesABody({ float32 = false, virialRatio }: MakeSnapshotOptions): number {
+  return (float32 ? 28 : 56) + 10 + (virialRatio === undefined ? 0 : BYTES_A_BODY);
 }
 
 /** T of bodies whose mean velocity is 0. */

@@ -1,6 +1,6 @@
 /** Memory that a measurement will take, asked for before anything is read. */
 import { freemem } from 'node:os';
-import { InputError } from '../errors.ts';
+import { InputError, UsageError } from '../errors.ts';
 import { fileBytes } from '../snapshot/files.ts';
 import { describeSnapshot } from '../snapshot/read.ts';
 import type { ReadOptions, SnapshotDescription } from '../snapshot/reading.ts';
@@ -15,7 +15,7 @@ const BASE_BYTES = 150 * 2 ** 20;
  * Bytes a body beyond its own columns: tree copy 36, buckets 2, nodes with multipoles some 60,
  * potential and scratch 16, bound set and its field 17; softening adds the Clausius share twice.
  */
-const BYTES_A_BODY = 131;
+export const BYTES_A_BODY = 131;
 const BYTES_IF_SOFTENED = 16;
 /** Potentials and accelerations of the file, the same corrected, our own accelerations, shares of W. */
 export const BYTES_OF_FILE_FORCES = 96;
@@ -69,6 +69,25 @@ export async function requireMemory(
     'input.tooLarge',
     `${path} holds ${description.count} bodies, which take about ${gigabytes(needed)} to measure; ${gigabytes(free)} are free`,
     'use a machine with more memory, end other programs, or write the snapshot in single precision',
+  );
+}
+
+/**
+ * Refuses to make more bodies than fit into memory, before anything is drawn.
+ * @param bytesABody - of the columns and what is made beside them
+ * @param available - bytes that may be used; what the machine or container has free if not given
+ * @throws UsageError `usage.modelOption`
+ */
+export function requireMemoryToMake(count: number, bytesABody: number, available?: number): void {
+  const needed = BASE_BYTES + count * bytesABody;
+  // A count that is no number is refused where counts are checked.
+  if (!(needed >= ASK_ABOVE_BYTES)) return;
+  const free = available ?? memoryAvailable();
+  if (needed <= free) return;
+  throw new UsageError(
+    'usage.modelOption',
+    `The option count (--count) asks for ${count} bodies, which take about ${gigabytes(needed)} to make; ${gigabytes(free)} are free.`,
+    'Give fewer bodies, use a machine with more memory, or end other programs.',
   );
 }
 

@@ -187,10 +187,17 @@ describe('makeModel', () => {
     [{ model: 'king' }, 'usage.modelOption', ['--central-potential', 'not given']],
     [{ model: 'king', centralPotential: 21 }, 'usage.modelOption', ['--central-potential', '21']],
     [{ model: 'king', centralPotential: 0 }, 'usage.modelOption', ['--central-potential', ' 0,']],
+    [{ model: 'king', centralPotential: 1e-7 }, 'usage.modelOption', ['--central-potential']],
     [{ centralPotential: 6 }, 'usage.modelOption', ['--central-potential', 'left out']],
+    [{ cut: 1e-130 }, 'usage.modelOption', ['--cut', 'larger']],
     [{ anisotropyRadius: 0 }, 'usage.modelOption', ['--anisotropy-radius', 'above 0']],
     [{ anisotropyRadius: 0.7 }, 'usage.distributionFunction', ['--anisotropy-radius', ' 0.7,']],
     [{ model: 'uniform', anisotropyRadius: 1 }, 'usage.modelOption', ['--anisotropy-radius']],
+    [
+      { model: 'jaffe', anisotropyRadius: 1e-11 },
+      'usage.modelOption',
+      ['--anisotropy-radius', 'at least 1e-10'],
+    ],
     [{ rotation: 1.1 }, 'usage.modelOption', ['--rotation', '-1 to 1']],
     [{ rotation: NaN }, 'usage.modelOption', ['--rotation', 'NaN']],
     [{ second: { model: 'jaffe', count: 0 } }, 'usage.modelOption', ['--second count', ' 0,']],
@@ -199,6 +206,11 @@ describe('makeModel', () => {
       { second: { model: 'jaffe', count: 1, scaleRadius: -1 } },
       'usage.modelOption',
       ['--second scale-radius'],
+    ],
+    [
+      { scaleRadius: 2, second: { model: 'jaffe', count: 1, scaleRadius: 1e11 } },
+      'usage.modelOption',
+      ['--second scale-radius', 'to 20000000000,'],
     ],
     [{ second: { model: 'uniform', count: 1 } }, 'usage.modelOption', ['uniform']],
     [
@@ -221,6 +233,12 @@ describe('makeModel', () => {
       'usage.modelOption',
       ['--semi-major-axis', '2 to 1'],
     ],
+    [
+      { count: 1, binaries: { share: 1, semiMajorAxis: [1, 2] } },
+      'usage.modelOption',
+      ['--binaries', 'at least one pair'],
+    ],
+    [{ escapers: { share: 0.001 } }, 'usage.modelOption', ['--escapers', 'at least one body']],
     [{ escapers: { share: -1 } }, 'usage.modelOption', ['--escapers', '-1']],
     [{ escapers: { share: 0.1, speed: -1 } }, 'usage.modelOption', ['--escaper-speed', '-1']],
     [

@@ -55,6 +55,8 @@ describe('speeds at one radius follow the closed distribution function', () => {
     ['jaffe', Infinity, 1e-6, dehnenProfile(2)],
     ['jaffe', Infinity, 0.1, dehnenProfile(2)],
     ['jaffe', Infinity, 20, dehnenProfile(2)],
+    // Its well has a bottom, but so far down that proposals from there would hardly ever do.
+    ['jaffe', Infinity, 0.1, dehnenProfile(2 - 1e-12)],
     ['jaffe', 0.1, 0.01, dehnenProfile(2)],
     ['jaffe', 0.1, 5, dehnenProfile(2)],
     ['plummer', Infinity, 1, plummerProfile],
@@ -209,6 +211,17 @@ describe('two components in a common equilibrium', () => {
       MODELS.hernquist,
       5,
       3,
+    ],
+    [
+      'a sphere about a small deep one',
+      {
+        model: 'jaffe',
+        second: { model: 'jaffe', count: share, mass: 0.01, scaleRadius: 1e-8 },
+      },
+      MODELS.jaffe,
+      MODELS.jaffe,
+      0.01,
+      1e-8,
     ],
     [
       'a small King sphere in a large one',

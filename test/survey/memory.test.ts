@@ -3,7 +3,7 @@ import { mkdtemp, open, rm } from 'node:fs/promises';
 import { tmpdir } from 'node:os';
 import { join } from 'node:path';
 import { afterAll, beforeAll, expect, it } from 'vitest';
-import { memoryNeeded, requireMemory } from '../../src/survey/memory.ts';
+import { memoryNeeded, requireMemory, requireMemoryToMake } from '../../src/survey/memory.ts';
 import { describeSnapshot } from '../../src/snapshot/read.ts';
 
 const COUNT = 6_000_000;
@@ -48,4 +48,19 @@ it('asks for the columns in their precision, and more with softening', async () 
   expect(plain).toBeGreaterThan(COUNT * (56 + 36));
   const single = description.columns.map((column) => ({ ...column, type: 'float32' }));
   expect(plain - memoryNeeded({ ...description, columns: single }, false)).toBe(28 * COUNT);
+});
+
+it('refuses to make what will not fit', () => {
+  expect(() => {
+    requireMemoryToMake(1e8, 66, 6e9);
+  }).toThrow(
+    expect.objectContaining({
+      code: 'usage.modelOption',
+      message: expect.stringMatching(
+        /--count.* 100000000 bodies, .* 6\.76 GB .* 6\.00 GB are free/,
+      ) as string,
+    }),
+  );
+  requireMemoryToMake(1e8, 66, 7e9);
+  requireMemoryToMake(1e6, 66, 1);
 });
