@@ -3,7 +3,8 @@
  *
  * A cell is cut at its middle; if all bodies fall into one octant, the cell shrinks to the cube that
  * just holds them and is cut again. So depth has no limit: a dense core in a huge box, or one body
- * at 1e12, costs no more levels than there is structure.
+ * at 1e12, costs no more levels than there is structure. A cell whose bodies have very different
+ * softening lengths of their own is cut in two by these instead, and both parts keep the cube.
  */
 import {
   GEOMETRY,
@@ -18,8 +19,10 @@ import {
   NODE_Y,
   NODE_Z,
   TOPOLOGY,
+  type Octree,
   type OrderedBodies,
 } from './tree.ts';
+import { gatherSpread, joinSpread, spreadOf, whereToCut } from './spread.ts';
 
 /**
  * When a cell is a leaf: it holds few bodies, and is not wide as seen from where the mass is.
@@ -62,6 +65,7 @@ export class BranchScratch {
   y = new Float64Array(0);
   z = new Float64Array(0);
   mass = new Float64Array(0);
+  squares = new Float64Array(0);
   input = new Uint32Array(0);
   octant = new Uint8Array(0);
   nodes = 0;
@@ -77,7 +81,9 @@ export class BranchScratch {
   cellZ = new Float64Array(0);
   cellHalf = new Float64Array(0);
 
-  holdBodies(count: number): void {
+  holdBodies(count: number, each: boolean): void {
+    if (each && count > this.squares.length)
+      this.squares = new Float64Array(Math.ceil(count * 1.25));
     if (count <= this.bodies) return;
     this.bodies = Math.ceil(count * 1.25);
     this.x = new Float64Array(this.bodies);
@@ -126,7 +132,8 @@ export function growBranch(
   rule: LeafRule,
   scratch: BranchScratch,
 ): number {
-  scratch.holdBodies(end - begin);
+  const each = bodies.squares.length > 0;
+  scratch.holdBodies(end - begin, each);
   scratch.holdNodes(1);
   scratch.begin[0] = begin;
   scratch.end[0] = end;
@@ -136,8 +143,8 @@ export function growBranch(
   for (let node = 0; node < count; node++) {
     scratch.holdNodes(count + 8);
     const size = scratch.end[node] - scratch.begin[node];
-    let made = 0;
-    if (size > rule.capacity || (size > 1 && isWide(scratch, node, rule))) {
+    let made = each && size > 1 ? cutBySpread(bodies, scratch, begin, node, count, rule) : 0;
+    if (made === 0 && (size > rule.capacity || (size > 1 && isWide(scratch, node, rule)))) {
       made = cutCell(bodies, scratch, begin, node, count);
       if (made === 0 && shrinkCell(bodies, scratch, begin, node)) {
         made = cutCell(bodies, scratch, begin, node, count);
@@ -220,6 +227,34 @@ function extentOf(
   extent[5] = highZ;
 }
 
+/** Cuts the cell in two by e² if that is what its bodies differ by most; returns the children made. */
+function cutBySpread(
+  bodies: OrderedBodies,
+  scratch: BranchScratch,
+  origin: number,
+  node: number,
+  next: number,
+  rule: LeafRule,
+): number {
+  const fromScratch = scratch.inScratch[node] === 1;
+  const shift = fromScratch ? origin : 0;
+  const begin = scratch.begin[node] - shift;
+  const end = scratch.end[node] - shift;
+  const squares = fromScratch ? scratch.squares : bodies.squares;
+  const mass = fromScratch ? scratch.mass : bodies.mass;
+  const half = scratch.cellHalf[node];
+  const spread = spreadOf(squares, mass, begin, end);
+  const cut = whereToCut(spread, half, end - begin <= rule.capacity);
+  if (Number.isNaN(cut)) return 0;
+  octantCount.fill(0);
+  for (let i = begin, k = 0; i < end; i++, k++) {
+    const o = +(squares[i] > cut);
+    scratch.octant[k] = o;
+    octantCount[o]++;
+  }
+  return moveBodies(bodies, scratch, origin, node, next, 0, half);
+}
+
 /**
  * Cuts the node's cell at its middle and moves the bodies to the other set of arrays, octant by octant.
  * @returns the number of children made from slot `next` on, or 0 (nothing moved) if one octant holds all
@@ -238,13 +273,6 @@ function cutCell(
   const x = fromScratch ? scratch.x : bodies.x;
   const y = fromScratch ? scratch.y : bodies.y;
   const z = fromScratch ? scratch.z : bodies.z;
-  const mass = fromScratch ? scratch.mass : bodies.mass;
-  const input = fromScratch ? scratch.input : bodies.input;
-  const toX = fromScratch ? bodies.x : scratch.x;
-  const toY = fromScratch ? bodies.y : scratch.y;
-  const toZ = fromScratch ? bodies.z : scratch.z;
-  const toMass = fromScratch ? bodies.mass : scratch.mass;
-  const toInput = fromScratch ? bodies.input : scratch.input;
   const octant = scratch.octant;
   const cx = scratch.cellX[node];
   const cy = scratch.cellY[node];
@@ -256,6 +284,40 @@ function cutCell(
     octant[k] = o;
     octantCount[o]++;
   }
+  const half = scratch.cellHalf[node] / 2;
+  return moveBodies(bodies, scratch, origin, node, next, half, half);
+}
+
+/**
+ * Moves the bodies of a node to the other set of arrays, by `scratch.octant` of each, and makes children.
+ * @param away - how far the middles of the children's cubes are from the node's along each axis
+ * @param half - half width of these cubes
+ * @returns as {@link cutCell}
+ */
+function moveBodies(
+  bodies: OrderedBodies,
+  scratch: BranchScratch,
+  origin: number,
+  node: number,
+  next: number,
+  away: number,
+  half: number,
+): number {
+  const fromScratch = scratch.inScratch[node] === 1;
+  const shift = fromScratch ? origin : 0;
+  const begin = scratch.begin[node] - shift;
+  const end = scratch.end[node] - shift;
+  const x = fromScratch ? scratch.x : bodies.x;
+  const y = fromScratch ? scratch.y : bodies.y;
+  const z = fromScratch ? scratch.z : bodies.z;
+  const mass = fromScratch ? scratch.mass : bodies.mass;
+  const input = fromScratch ? scratch.input : bodies.input;
+  const toX = fromScratch ? bodies.x : scratch.x;
+  const toY = fromScratch ? bodies.y : scratch.y;
+  const toZ = fromScratch ? bodies.z : scratch.z;
+  const toMass = fromScratch ? bodies.mass : scratch.mass;
+  const toInput = fromScratch ? bodies.input : scratch.input;
+  const octant = scratch.octant;
   const toBegin = scratch.begin[node] - (fromScratch ? 0 : origin);
   for (let o = 0, place = toBegin; o < 8; o++) {
     if (octantCount[o] === end - begin) return 0;
@@ -270,7 +332,17 @@ function cutCell(
     toMass[place] = mass[i];
     toInput[place] = input[i];
   }
-  const half = scratch.cellHalf[node] / 2;
+  if (bodies.squares.length > 0) {
+    const squares = fromScratch ? scratch.squares : bodies.squares;
+    const toSquares = fromScratch ? bodies.squares : scratch.squares;
+    // The places are at the ends of the octants now: going backwards fills them in the same order.
+    for (let i = end - 1, k = end - begin - 1; i >= begin; i--, k--) {
+      toSquares[--octantPlace[octant[k]]] = squares[i];
+    }
+  }
+  const cx = scratch.cellX[node];
+  const cy = scratch.cellY[node];
+  const cz = scratch.cellZ[node];
   let made = 0;
   let childBegin = scratch.begin[node];
   for (let o = 0; o < 8; o++) {
@@ -281,9 +353,9 @@ function cutCell(
     childBegin += size;
     scratch.end[child] = childBegin;
     scratch.inScratch[child] = fromScratch ? 0 : 1;
-    scratch.cellX[child] = cx + (o & 1 ? half : -half);
-    scratch.cellY[child] = cy + (o & 2 ? half : -half);
-    scratch.cellZ[child] = cz + (o & 4 ? half : -half);
+    scratch.cellX[child] = cx + (o & 1 ? away : -away);
+    scratch.cellY[child] = cy + (o & 2 ? away : -away);
+    scratch.cellZ[child] = cz + (o & 4 ? away : -away);
     scratch.cellHalf[child] = half;
   }
   return made;
@@ -304,11 +376,15 @@ function bringHome(
     bodies.mass[i] = scratch.mass[k];
     bodies.input[i] = scratch.input[k];
   }
+  if (bodies.squares.length > 0) {
+    const begin = scratch.begin[node];
+    bodies.squares.set(scratch.squares.subarray(begin - origin, end - origin), begin);
+  }
 }
 
 /**
  * Writes a grown branch into the tree: its root at slot `rootSlot`, the others from `firstSlot` on,
- * with mass, centre of mass and radius of every node.
+ * with mass, centre of mass and radius of every node, and its spread where that is wanted.
  */
 export function plantBranch(
   bodies: OrderedBodies,
@@ -316,8 +392,7 @@ export function plantBranch(
   nodeCount: number,
   rootSlot: number,
   firstSlot: number,
-  geometry: Float64Array,
-  topology: Uint32Array,
+  { geometry, topology, spread }: Pick<Octree, 'geometry' | 'topology' | 'spread'>,
 ): void {
   for (let node = nodeCount - 1; node >= 0; node--) {
     const slot = node === 0 ? rootSlot : firstSlot + node - 1;
@@ -329,6 +404,9 @@ export function plantBranch(
     topology[t + NODE_CHILDREN] = children;
     if (children === 0) weighLeaf(bodies, slot, geometry, topology);
     else weighParent(bodies, slot, geometry, topology);
+    if (spread.length === 0) continue;
+    if (children === 0) gatherSpread(bodies, slot, topology, spread);
+    else joinSpread(slot, geometry, topology, spread);
   }
 }
 

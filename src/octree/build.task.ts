@@ -73,7 +73,11 @@ export function classifyBodies(round: ClassifyRound, takeJob: TakeJob): void {
 }
 
 export interface ScatterRound {
-  readonly from: Positions & { readonly mass: Column; readonly input: Uint32Array | null };
+  readonly from: Positions & {
+    readonly mass: Column;
+    readonly squares?: Float64Array;
+    readonly input: Uint32Array | null;
+  };
   readonly begin: number;
   readonly end: number;
   readonly bucketOf: Uint16Array;
@@ -85,6 +89,7 @@ export interface ScatterRound {
 
 export function scatterBodies(round: ScatterRound, takeJob: TakeJob): void {
   const { from, to, bucketOf, buckets, begin: origin } = round;
+  const squares = from.squares !== undefined && from.squares.length > 0 ? from.squares : null;
   for (let job = takeJob(); job >= 0; job = takeJob()) {
     const begin = job * CHUNK;
     const end = Math.min(round.end - origin, begin + CHUNK);
@@ -97,6 +102,7 @@ export function scatterBodies(round: ScatterRound, takeJob: TakeJob): void {
       to.z[place] = from.z[i];
       to.mass[place] = from.mass[i];
       to.input[place] = from.input === null ? i : from.input[i];
+      if (squares !== null) to.squares[place] = squares[i];
     }
   }
 }
@@ -118,6 +124,7 @@ export function copyBodies(round: CopyRound, takeJob: TakeJob): void {
     to.z.set(from.z.subarray(begin, end), at + begin);
     to.mass.set(from.mass.subarray(begin, end), at + begin);
     to.input.set(from.input.subarray(begin, end), at + begin);
+    if (to.squares.length > 0) to.squares.set(from.squares.subarray(begin, end), at + begin);
   }
 }
 
@@ -129,6 +136,7 @@ export interface GrowRound {
   readonly rootSlots: Uint32Array;
   readonly geometry: Float64Array;
   readonly topology: Uint32Array;
+  readonly spread: Float64Array;
   /** Written: first slot and end of each branch's nodes below its root. */
   readonly slots: Uint32Array;
   /** One number: the next free slot. Which branch lies where has no bearing on any result. */
@@ -147,6 +155,6 @@ export function growBranches(round: GrowRound, takeJob: TakeJob): void {
     if (first + nodes - 1 > round.slotCapacity) continue;
     slots[2 * job] = first;
     slots[2 * job + 1] = first + nodes - 1;
-    plantBranch(bodies, scratch, nodes, rootSlots[job], first, round.geometry, round.topology);
+    plantBranch(bodies, scratch, nodes, rootSlots[job], first, round);
   }
 }

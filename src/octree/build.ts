@@ -3,6 +3,7 @@ import { takeBuffer, takeDoubles, takeUint32 } from '../numerics/reuse.ts';
 import type * as BuildTask from './build.task.ts';
 import { CHUNK, type Positions } from './build.task.ts';
 import { meanInverseDistance, weighParent, WIDEST_LEAF, type LeafRule } from './branch.ts';
+import { joinSpread } from './spread.ts';
 import { keyBox, mortonKey, planBuckets, type BucketPlan, type Octant } from './partition.ts';
 import {
   GEOMETRY,
@@ -10,6 +11,7 @@ import {
   NODE_CHILD,
   NODE_CHILDREN,
   NODE_END,
+  SPREAD,
   TOPOLOGY,
   type Octree,
   type OrderedBodies,
@@ -32,10 +34,12 @@ const SAMPLE = 32768;
 
 export interface BodyColumns extends Positions {
   readonly mass: Column;
+  /** Squared softening length of each body, where they have lengths of their own. */
+  readonly squares?: Float64Array;
 }
 
 /** Room for `count` bodies in tree order, in shared memory. */
-export function allocateBodies(count: number): OrderedBodies {
+export function allocateBodies(count: number, each: boolean): OrderedBodies {
   const column = () => takeDoubles(count);
   return {
     count,
@@ -43,6 +47,7 @@ export function allocateBodies(count: number): OrderedBodies {
     y: column(),
     z: column(),
     mass: column(),
+    squares: takeDoubles(each ? count : 0),
     input: takeUint32(count),
   };
 }
@@ -65,7 +70,8 @@ export async function buildOctree(
   leafCapacity = LEAF_CAPACITY,
 ): Promise<Octree> {
   const count = columns.mass.length;
-  const bodies = allocateBodies(count);
+  const each = columns.squares !== undefined;
+  const bodies = allocateBodies(count, each);
   const branchSize = Math.max(SMALLEST_BRANCH, Math.ceil(count / BRANCHES));
   const root = await partition({ ...columns, input: null }, 0, count, bodies, 0, branchSize, crew);
 
@@ -87,11 +93,12 @@ export async function buildOctree(
       top.length + branches.length * 8 + Math.ceil((count * perLeaf * 16) / leafCapacity);
     const geometry = takeDoubles(slotCapacity * GEOMETRY);
     const topology = takeUint32(slotCapacity * TOPOLOGY);
+    const spread = takeDoubles(each ? slotCapacity * SPREAD : 0);
     const slots = sharedUint32(branches.length * 2);
     const nextSlot = sharedUint32(1);
     nextSlot[0] = top.length;
     const rootSlots = Uint32Array.from(branches);
-    const round = { bodies, rule, ranges, rootSlots, geometry, topology, slots, nextSlot };
+    const round = { bodies, rule, ranges, rootSlots, geometry, topology, spread, slots, nextSlot };
     await crew.run(TASK, 'growBranches', { ...round, slotCapacity }, branches.length);
     if (nextSlot[0] > slotCapacity) continue;
     for (let slot = top.length - 1; slot >= 0; slot--) {
@@ -103,11 +110,13 @@ export async function buildOctree(
       topology[t + NODE_CHILD] = firstChild[slot];
       topology[t + NODE_CHILDREN] = node.children.length;
       weighParent(bodies, slot, geometry, topology);
+      if (each) joinSpread(slot, geometry, topology, spread);
     }
     return {
       bodies,
       geometry,
       topology,
+      spread,
       nodeCount: nextSlot[0],
       topCount: top.length,
       branchRoots: rootSlots,
@@ -171,7 +180,7 @@ async function partition(
   const root = join(plan.root) as TopNode;
   for (const node of overfull) {
     const size = node.end - node.begin;
-    const inner = allocateBodies(size);
+    const inner = allocateBodies(size, to.squares.length > 0);
     const again = await partition(to, node.begin, node.end, inner, 0, branchSize, crew);
     if (again.children.length === 0) continue; // all at one point: one branch
     await crew.run(
@@ -196,7 +205,8 @@ function shifted(node: TopNode, by: number): TopNode {
 const pick = ({ x, y, z }: Positions): Positions => ({ x, y, z });
 
 function columnsOf(from: BodyColumns & { readonly input: Uint32Array | null }) {
-  return { x: from.x, y: from.y, z: from.z, mass: from.mass, input: from.input };
+  const { x, y, z, mass, squares, input } = from;
+  return { x, y, z, mass, ...(squares && { squares }), input };
 }
 
 function joinExtents(extents: Float64Array): Float64Array {

@@ -4,8 +4,9 @@
  * Used for potentials at arbitrary points, as the tighter sum that the engine's error is measured
  * against, and as a cross-check of the cell–cell walk.
  */
-import type { Expansion } from './expansion.ts';
+import type { Expansions } from './expansions.ts';
 import type { PairKernels } from './pairs.ts';
+import { splineSupportOf } from './softening.ts';
 import type { SourceTree } from './walk.ts';
 import {
   GEOMETRY,
@@ -14,25 +15,32 @@ import {
   NODE_CHILD,
   NODE_CHILDREN,
   NODE_END,
+  NODE_GREATEST,
+  NODE_MEAN,
   NODE_RADIUS,
+  NODE_FARTHEST,
+  SPREAD,
   TOPOLOGY,
 } from './tree.ts';
 
 export interface PointWalkTools {
-  readonly expansion: Expansion;
+  readonly expansions: Expansions;
   readonly pairs: PairKernels;
   readonly pairSoftening: number;
   /** A cell is used whole if its radius is less than this times its distance. */
   readonly openingAngle: number;
+  /** ε² of Plummer softening, else 0; not used where bodies have lengths of their own. */
   readonly soft2: number;
   /** Cells nearer than their radius plus this are opened: the spline's support, else 0. */
   readonly support: number;
+  readonly softenedByEach: boolean;
 }
 
 let stack: Int32Array = new Int32Array(4096);
 
 /**
  * Adds to `out` Σ m/√(r²+ε²) and the Clausius part at a point (out[0], out[1]).
+ * @param own2 - e² of the body at the point, where bodies have lengths of their own
  * @param skip - place in tree order of the body at the point, left out of the sum; -1 for none
  * @returns interactions with cells and bodies
  */
@@ -41,14 +49,18 @@ export function sumAtPoint(
   px: number,
   py: number,
   pz: number,
+  own2: number,
   skip: number,
   tools: PointWalkTools,
   out: Float64Array,
 ): number {
   const { tree, multipoles } = source;
-  const { geometry: G, topology: T, bodies } = tree;
-  const { x, y, z, mass } = bodies;
-  const { expansion, pairs, pairSoftening, soft2, support } = tools;
+  const { geometry: G, topology: T, spread: S, bodies } = tree;
+  const { x, y, z, mass, squares } = bodies;
+  const { expansions, pairs, softenedByEach } = tools;
+  const { plain, ofSpread, multipoles: stride } = expansions;
+  const pairSoftening = softenedByEach ? own2 : tools.pairSoftening;
+  let { soft2, support } = tools;
   const angle2 = tools.openingAngle ** 2;
   let interactions = 0;
   let depth = 1;
@@ -65,17 +77,26 @@ export function sumAtPoint(
     const begin = T[t + NODE_BEGIN];
     const end = T[t + NODE_END];
     const holdsPoint = begin <= skip && skip < end;
-    if (!holdsPoint && r * r < angle2 * d2 && (support === 0 || d2 > (r + support) ** 2)) {
-      expansion.pointValue(G, g, multipoles, slot * expansion.multipoles, px, py, pz, soft2, out);
+    let isNarrow = r * r < angle2 * d2;
+    if (softenedByEach) {
+      const e = slot * SPREAD;
+      if (ofSpread !== null) {
+        soft2 = own2 + S[e + NODE_MEAN];
+        isNarrow &&= S[e + NODE_FARTHEST] < angle2 * (d2 + soft2);
+      } else support = splineSupportOf(Math.max(own2, S[e + NODE_GREATEST]));
+    }
+    if (!holdsPoint && isNarrow && (support === 0 || d2 > (r + support) ** 2)) {
+      plain.pointValue(G, g, multipoles, slot * stride, px, py, pz, soft2, out);
+      ofSpread?.pointValue(G, g, multipoles, slot * stride, px, py, pz, soft2, out);
       interactions++;
       continue;
     }
     const children = T[t + NODE_CHILDREN];
     if (children === 0) {
       if (holdsPoint) {
-        pairs.atPoint(px, py, pz, x, y, z, mass, begin, skip, out, pairSoftening);
-        pairs.atPoint(px, py, pz, x, y, z, mass, skip + 1, end, out, pairSoftening);
-      } else pairs.atPoint(px, py, pz, x, y, z, mass, begin, end, out, pairSoftening);
+        pairs.atPoint(px, py, pz, x, y, z, mass, begin, skip, out, pairSoftening, squares);
+        pairs.atPoint(px, py, pz, x, y, z, mass, skip + 1, end, out, pairSoftening, squares);
+      } else pairs.atPoint(px, py, pz, x, y, z, mass, begin, end, out, pairSoftening, squares);
       interactions += end - begin;
       continue;
     }

@@ -2,13 +2,15 @@
 import type { TakeJob } from '../parallel/crew.ts';
 import type { FieldColumns } from './forces.task.ts';
 import { pairKernelsOf, pairSofteningOf } from './pairs.ts';
-import type { Softening } from './softening.ts';
+import { isOfEach, type Softening } from './softening.ts';
 
 export interface DirectRound {
   readonly x: Float64Array;
   readonly y: Float64Array;
   readonly z: Float64Array;
   readonly mass: Float64Array;
+  /** e² of each body, where they have softening lengths of their own. */
+  readonly squares: Float64Array;
   readonly softening: Softening;
   readonly field: FieldColumns;
 }
@@ -30,8 +32,9 @@ export const pairJobs = (blocks: number): number => (blocks * (blocks + 1)) / 2;
  * @returns pairs at one point that were left out inside blocks; between blocks they spoil unsoftened sums
  */
 export function sumAllPairs(round: PairRound, takeJob: TakeJob): number {
-  const { x, y, z, mass, softening, field, blocks, done } = round;
-  const { inside, between } = pairKernelsOf(softening.kernel, field.ax.length > 0);
+  const { x, y, z, mass, squares, softening, field, blocks, done } = round;
+  const force = field.ax.length > 0;
+  const { inside, between } = pairKernelsOf(softening.kernel, force, isOfEach(softening));
   const soft = pairSofteningOf(softening.kernel, softening.length);
   const beginOf = (block: number) => Math.floor((block * mass.length) / blocks);
   let coincident = 0;
@@ -40,7 +43,7 @@ export function sumAllPairs(round: PairRound, takeJob: TakeJob): number {
       const begin = beginOf(job);
       const end = beginOf(job + 1);
       for (const column of Object.values(field) as Float64Array[]) column.fill(0, begin, end);
-      coincident += inside(x, y, z, mass, begin, end, 0, field, soft);
+      coincident += inside(x, y, z, mass, begin, end, 0, field, soft, squares);
     } else {
       const phase = Math.floor((job - blocks) / (blocks / 2));
       waitFor(done, blocks + (phase * blocks) / 2);
@@ -57,6 +60,7 @@ export function sumAllPairs(round: PairRound, takeJob: TakeJob): number {
         0,
         field,
         soft,
+        squares,
       );
     }
     Atomics.add(done, 0, 1);
@@ -84,10 +88,11 @@ export const DIRECT_TARGETS = 64;
 
 /** Direct sums on all bodies from all others, one way, in input order. Returns coincident pairs (each counted once a side). */
 export function sumDirectly(round: DirectRound, takeJob: TakeJob): number {
-  const { x, y, z, mass, softening, field } = round;
+  const { x, y, z, mass, squares, softening, field } = round;
   const force = field.ax.length > 0;
   const soft = softening.kernel !== 'none';
-  const { atPoint } = pairKernelsOf(softening.kernel, force);
+  const each = isOfEach(softening);
+  const { atPoint } = pairKernelsOf(softening.kernel, force, each);
   const length = pairSofteningOf(softening.kernel, softening.length);
   const count = mass.length;
   const out = new Float64Array(5);
@@ -95,8 +100,10 @@ export function sumDirectly(round: DirectRound, takeJob: TakeJob): number {
   for (let job = takeJob(); job >= 0; job = takeJob()) {
     for (let i = job * DIRECT_TARGETS; i < Math.min(count, (job + 1) * DIRECT_TARGETS); i++) {
       out.fill(0);
-      coincident += atPoint(x[i], y[i], z[i], x, y, z, mass, 0, i, out, length);
-      coincident += atPoint(x[i], y[i], z[i], x, y, z, mass, i + 1, count, out, length);
+      const [px, py, pz] = [x[i], y[i], z[i]];
+      const own = each ? squares[i] : length;
+      coincident += atPoint(px, py, pz, x, y, z, mass, 0, i, out, own, squares);
+      coincident += atPoint(px, py, pz, x, y, z, mass, i + 1, count, out, own, squares);
       field.phi[i] = out[0];
       if (soft) field.psi[i] = out[1];
       if (force) {

@@ -1,11 +1,11 @@
 /** Work of the crew while forces are summed: each function does numbered jobs on shared arrays. */
 import type { TakeJob } from '../parallel/crew.ts';
 import { sumAtPoint } from './classical.ts';
-import { expansionOf } from './expansion.ts';
+import { expansionsFor } from './expansions.ts';
 import { estimateDepths, gatherBranch } from './multipoles.ts';
 import { pairKernelsOf, pairSofteningOf } from './pairs.ts';
 import { sumTowards } from './pathWalk.ts';
-import { plummerSquare, splineSupport, type Softening } from './softening.ts';
+import { isOfEach, plummerSquare, splineSupport, type Softening } from './softening.ts';
 import { NODE_BEGIN, NODE_END, TOPOLOGY, type Octree } from './tree.ts';
 import {
   descendBranch,
@@ -24,15 +24,16 @@ export interface GatherRound {
 }
 
 export function gatherBranches(round: GatherRound, takeJob: TakeJob): void {
-  const expansion = expansionOf(round.order, round.softening.kernel === 'plummer');
+  const expansions = expansionsFor(round.order, round.softening);
   for (let job = takeJob(); job >= 0; job = takeJob()) {
-    gatherBranch(round.tree, job, expansion, round.multipoles);
+    gatherBranch(round.tree, job, expansions, round.multipoles);
   }
 }
 
 export interface DepthRound {
   readonly tree: Octree;
-  readonly soft2: number;
+  /** See {@link estimateDepths}. */
+  readonly soft2: number | null;
 }
 
 export function estimateBranches(round: DepthRound, takeJob: TakeJob): void {
@@ -69,11 +70,13 @@ export function walkBranches(round: WalkRound, takeJob: TakeJob): WalkCounts {
   const { target, source, softening, field } = round;
   const soft = softening.kernel !== 'none';
   const force = field.ax.length > 0;
-  const expansion = expansionOf(round.order, softening.kernel === 'plummer');
+  const expansions = expansionsFor(round.order, softening);
+  const softenedByEach = isOfEach(softening);
   const tools = {
-    expansion,
-    pairs: pairKernelsOf(softening.kernel, force),
+    expansions,
+    pairs: pairKernelsOf(softening.kernel, force, softenedByEach),
     pairSoftening: pairSofteningOf(softening.kernel, softening.length),
+    softenedByEach,
     acceptance: round.acceptance,
   };
   const counts: WalkCounts = { cellInteractions: 0, pairInteractions: 0, coincidentPairs: 0 };
@@ -82,9 +85,9 @@ export function walkBranches(round: WalkRound, takeJob: TakeJob): WalkCounts {
     const begin = target.topology[root + NODE_BEGIN];
     const size = target.topology[root + NODE_END] - begin;
     const nodes = target.branchSlots[2 * job + 1] - target.branchSlots[2 * job] + 1;
-    scratch.prepare(size, nodes * expansion.locals, soft, force);
+    scratch.prepare(size, nodes * expansions.locals, soft, force);
     walkBranch(target, job, source, round.same, tools, scratch, counts);
-    descendBranch(target, job, expansion, softening.kernel === 'plummer', force, scratch);
+    descendBranch(target, job, expansions, softening.kernel === 'plummer', force, scratch);
     const input = target.bodies.input;
     for (let k = 0; k < size; k++) {
       const i = input[begin + k];
@@ -102,7 +105,13 @@ export function walkBranches(round: WalkRound, takeJob: TakeJob): WalkCounts {
 
 export interface PointRound {
   readonly source: SourceTree;
-  readonly points: { readonly x: Float64Array; readonly y: Float64Array; readonly z: Float64Array };
+  readonly points: {
+    readonly x: Float64Array;
+    readonly y: Float64Array;
+    readonly z: Float64Array;
+    /** e² of each point, where bodies have softening lengths of their own. */
+    readonly squares: Float64Array;
+  };
   /** Places in tree order of the bodies at the points, left out of their own sums; null for none. */
   readonly places: Uint32Array | null;
   readonly order: number;
@@ -117,22 +126,25 @@ export interface PointRound {
 /** The classical walk at points; returns interactions. */
 export function walkPoints(round: PointRound, takeJob: TakeJob): number {
   const { source, softening, points, places, perJob, sums } = round;
+  const softenedByEach = isOfEach(softening);
   const tools = {
-    expansion: expansionOf(round.order, softening.kernel === 'plummer'),
-    pairs: pairKernelsOf(softening.kernel, false),
+    expansions: expansionsFor(round.order, softening),
+    pairs: pairKernelsOf(softening.kernel, false, softenedByEach),
+    softenedByEach,
     pairSoftening: pairSofteningOf(softening.kernel, softening.length),
     openingAngle: round.openingAngle,
     soft2: plummerSquare(softening),
     support: splineSupport(softening),
   };
-  const { x, y, z } = points;
+  const { x, y, z, squares } = points;
   let interactions = 0;
   const out = new Float64Array(5);
   for (let job = takeJob(); job >= 0; job = takeJob()) {
     for (let k = job * perJob; k < Math.min(x.length, (job + 1) * perJob); k++) {
       out.fill(0);
       const skip = places === null ? -1 : places[k];
-      interactions += sumAtPoint(source, x[k], y[k], z[k], skip, tools, out);
+      const own2 = softenedByEach ? squares[k] : 0;
+      interactions += sumAtPoint(source, x[k], y[k], z[k], own2, skip, tools, out);
       sums[2 * k] = out[0];
       sums[2 * k + 1] = out[1];
     }
@@ -157,9 +169,11 @@ export const PATHS_PER_JOB = 8;
 /** The sums that a walk of all would give the bodies at some places. */
 export function walkPaths(round: PathRound, takeJob: TakeJob): void {
   const { source, places, sums, softening } = round;
+  const softenedByEach = isOfEach(softening);
   const tools = {
-    expansion: expansionOf(round.order, softening.kernel === 'plummer'),
-    pairs: pairKernelsOf(softening.kernel, false),
+    expansions: expansionsFor(round.order, softening),
+    pairs: pairKernelsOf(softening.kernel, false, softenedByEach),
+    softenedByEach,
     pairSoftening: pairSofteningOf(softening.kernel, softening.length),
     acceptance: round.acceptance,
   };
@@ -195,8 +209,9 @@ export const DIRECT_SLICE = 262144;
 /** Direct sums at sampled bodies, sliced over the sources. */
 export function sampleDirectly(round: DirectSampleRound, takeJob: TakeJob): void {
   const { source, softening, places, force, sums } = round;
-  const { x, y, z, mass, count } = source.tree.bodies;
-  const { onto, atPoint } = pairKernelsOf(softening.kernel, force);
+  const { x, y, z, mass, squares, count } = source.tree.bodies;
+  const each = isOfEach(softening);
+  const { onto, atPoint } = pairKernelsOf(softening.kernel, force, each);
   const soft = pairSofteningOf(softening.kernel, softening.length);
   const slices = Math.ceil(count / DIRECT_SLICE);
   const [phi, psi, ax, ay, az] = Array.from({ length: DIRECT_SUMS }, () => new Float64Array(1));
@@ -209,13 +224,16 @@ export function sampleDirectly(round: DirectSampleRound, takeJob: TakeJob): void
     const split = Math.min(end, Math.max(begin, place));
     const after = place >= begin && place < end ? place + 1 : split;
     for (const sum of [phi, psi, ax, ay, az]) sum[0] = 0;
-    onto(x, y, z, place, place + 1, x, y, z, mass, begin, split, place, one, soft);
-    onto(x, y, z, place, place + 1, x, y, z, mass, after, end, place, one, soft);
+    const to = place + 1;
+    onto(x, y, z, place, to, x, y, z, mass, begin, split, place, one, soft, squares, squares);
+    onto(x, y, z, place, to, x, y, z, mass, after, end, place, one, soft, squares, squares);
     if (!Number.isFinite(phi[0])) {
       // Another body at the same point: the slower kernel leaves it out, as the engine does.
       out.fill(0);
-      atPoint(x[place], y[place], z[place], x, y, z, mass, begin, split, out, soft);
-      atPoint(x[place], y[place], z[place], x, y, z, mass, after, end, out, soft);
+      const own = each ? squares[place] : soft;
+      const [px, py, pz] = [x[place], y[place], z[place]];
+      atPoint(px, py, pz, x, y, z, mass, begin, split, out, own, squares);
+      atPoint(px, py, pz, x, y, z, mass, after, end, out, own, squares);
       sums.set(out, job * DIRECT_SUMS);
       continue;
     }

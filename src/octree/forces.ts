@@ -18,12 +18,13 @@ import {
   type Reference,
   type SampledError,
 } from './errorSample.ts';
-import { expansionOf } from './expansion.ts';
+import { expansionsFor } from './expansions.ts';
 import type { FieldColumns } from './forces.task.ts';
 import { DIRECT_TARGETS, pairJobs, type DirectRound } from './direct.task.ts';
 import { gatherSlot, leastOfChildren } from './multipoles.ts';
 import { firstLevel, nextLevel, treeCost, type Level } from './levels.ts';
-import { plummerSquare, splineSupport, type Softening } from './softening.ts';
+import { isOfEach, plummerSquare, splineSupport, squared, type Softening } from './softening.ts';
+import { spreadLimits } from './spread.ts';
 import { NODE_CHILDREN, TOPOLOGY, type Octree } from './tree.ts';
 import type { Acceptance, SourceTree, WalkCounts } from './walk.ts';
 
@@ -139,6 +140,7 @@ async function sumAllDirectly(
     y: asDoubles(columns.y),
     z: asDoubles(columns.z),
     mass: asDoubles(columns.mass),
+    squares: squaresOf(options.softening),
     softening: options.softening,
     field,
   };
@@ -190,8 +192,10 @@ async function sumByTree(
   const { softening } = options;
   const start = performance.now();
   options.onStage?.('tree');
-  const tree = await buildOctree(columns, crew);
-  const soft2 = plummerSquare(softening);
+  const each = isOfEach(softening);
+  const squares = squaresOf(softening);
+  const tree = await buildOctree(each ? { ...columns, squares } : columns, crew);
+  const soft2 = each && softening.kernel === 'plummer' ? null : plummerSquare(softening);
   await crew.run(TASK, 'estimateBranches', { tree, soft2 }, tree.branchRoots.length);
   for (let slot = tree.topCount - 1; slot >= 0; slot--) leastOfChildren(tree, slot);
   const built = performance.now();
@@ -321,14 +325,14 @@ export async function gatherMultipoles(
   softening: Softening,
   crew: Crew,
 ): Promise<SourceTree> {
-  const expansion = expansionOf(order, softening.kernel === 'plummer');
-  const multipoles = takeDoubles(tree.nodeCount * expansion.multipoles);
+  const expansions = expansionsFor(order, softening);
+  const multipoles = takeDoubles(tree.nodeCount * expansions.multipoles);
   const round = { tree, order, softening, multipoles };
   await crew.run(TASK, 'gatherBranches', round, tree.branchRoots.length);
   const isBranch = new Set(tree.branchRoots);
   for (let slot = tree.topCount - 1; slot >= 0; slot--) {
     const inner = tree.topology[slot * TOPOLOGY + NODE_CHILDREN] > 0 && !isBranch.has(slot);
-    if (inner) gatherSlot(tree, slot, expansion, multipoles);
+    if (inner) gatherSlot(tree, slot, expansions, multipoles);
   }
   return { tree, multipoles };
 }
@@ -363,6 +367,7 @@ export function acceptanceOf(level: Level, softening: Softening): Acceptance {
     openingAngle: level.openingAngle,
     tolerance: level.tolerance,
     order: level.order,
+    ...spreadLimits(level.tolerance),
     soft2: plummerSquare(softening),
     support: splineSupport(softening),
   };
@@ -453,6 +458,12 @@ function finish(
 
 /** 1σ of a mean whose offset is measured but not corrected for. */
 const errorOf = ({ offset, sigma }: SampledError): number => Math.hypot(offset, sigma);
+
+/** e² of each body; empty where one length holds for all. */
+function squaresOf(softening: Softening): Float64Array {
+  const { lengths } = softening;
+  return lengths !== undefined && isOfEach(softening) ? squared(lengths) : new Float64Array(0);
+}
 
 function asDoubles(column: Float64Array | Float32Array): Float64Array {
   if (column instanceof Float64Array && column.buffer instanceof SharedArrayBuffer) return column;

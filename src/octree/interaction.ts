@@ -47,7 +47,19 @@ export interface Interactions {
   ) => void;
 }
 
-export function writeInteractions(p: number, softened: boolean, named: string): Interactions {
+/** Source text of the parts of an interaction, for sources whose mass is `m`. */
+export interface InteractionCode {
+  /** Computes the tensors from x, y, z and soft2. */
+  readonly tensors: string;
+  readonly load: (prefix: string, base: string) => string;
+  /** Adds to the locals at `base`; `opposite`: the tensors were made for the other direction. */
+  readonly accumulate: (source: string, mass: string, base: string, opposite: boolean) => string;
+  /** The value and the Clausius part at a point. */
+  readonly value: string;
+  readonly slope: string;
+}
+
+export function interactionCode(p: number, softened: boolean): InteractionCode {
   const momentList = indices(2, p);
   const values = indices(0, p);
   const slopes = softened ? indices(0, p - 1) : [];
@@ -77,7 +89,17 @@ export function writeInteractions(p: number, softened: boolean, named: string): 
       .map((sum, at) => `${slot('L', base, at)}+=${sum};`)
       .join('\n');
   const centre: Index = [0, 0, 0];
+  return {
+    tensors,
+    load,
+    accumulate,
+    value: sumOf(centre, 'd0_', 'a', 'm', false),
+    slope: softened ? sumOf(centre, 'd1_', 'a', 'm', false) : '',
+  };
+}
 
+export function writeInteractions(p: number, softened: boolean, named: string): Interactions {
+  const { tensors, load, accumulate, value, slope } = interactionCode(p, softened);
   return {
     interact: compile(
       `${named}interact`,
@@ -96,8 +118,8 @@ export function writeInteractions(p: number, softened: boolean, named: string): 
       `${named}pointValue`,
       ['G', 'g', 'M', 'ms', 'px', 'py', 'pz', 'soft2', 'out'],
       `const x=px-G[g],y=py-G[g+1],z=pz-G[g+2],m=G[g+3];${tensors}${load('a', 'ms')}` +
-        `out[0]+=${sumOf(centre, 'd0_', 'a', 'm', false)};` +
-        (softened ? `out[1]+=${sumOf(centre, 'd1_', 'a', 'm', false)};` : ''),
+        `out[0]+=${value};` +
+        (softened ? `out[1]+=${slope};` : ''),
     ),
   };
 }

@@ -1,5 +1,5 @@
 /** Multipoles of all nodes, and the estimate of the potential's depth that acceptance is judged by. */
-import type { Expansion } from './expansion.ts';
+import type { Expansions } from './expansions.ts';
 import {
   GEOMETRY,
   NODE_BEGIN,
@@ -8,7 +8,9 @@ import {
   NODE_DEPTH,
   NODE_END,
   NODE_MASS,
+  NODE_MEAN,
   NODE_RADIUS,
+  SPREAD,
   TOPOLOGY,
   type Octree,
 } from './tree.ts';
@@ -17,23 +19,28 @@ import {
 export function gatherSlot(
   tree: Octree,
   slot: number,
-  expansion: Expansion,
+  { plain: expansion, ofSpread, multipoles: stride }: Expansions,
   multipoles: Float64Array,
 ): void {
   const { geometry: G, topology: T, bodies } = tree;
-  const stride = expansion.multipoles;
   const at = slot * stride;
   const t = slot * TOPOLOGY;
   const g = slot * GEOMETRY;
   const cx = G[g];
   const cy = G[g + 1];
   const cz = G[g + 2];
+  const { spread } = tree;
+  const mean = ofSpread === null ? 0 : spread[slot * SPREAD + NODE_MEAN];
   multipoles.fill(0, at, at + stride);
   const children = T[t + NODE_CHILDREN];
   if (children === 0) {
-    const { x, y, z, mass } = bodies;
+    const { x, y, z, mass, squares } = bodies;
     for (let i = T[t + NODE_BEGIN]; i < T[t + NODE_END]; i++) {
-      expansion.addBody(multipoles, at, mass[i], x[i] - cx, y[i] - cy, z[i] - cz);
+      const dx = x[i] - cx;
+      const dy = y[i] - cy;
+      const dz = z[i] - cz;
+      expansion.addBody(multipoles, at, mass[i], dx, dy, dz);
+      ofSpread?.addBody(multipoles, at, mass[i], dx, dy, dz, (squares[i] - mean) / 2);
     }
     return;
   }
@@ -41,7 +48,12 @@ export function gatherSlot(
   for (let child = first; child < first + children; child++) {
     const c = child * GEOMETRY;
     const m = G[c + NODE_MASS];
-    expansion.addChild(multipoles, at, child * stride, m, G[c] - cx, G[c + 1] - cy, G[c + 2] - cz);
+    const dx = G[c] - cx;
+    const dy = G[c + 1] - cy;
+    const dz = G[c + 2] - cz;
+    expansion.addChild(multipoles, at, child * stride, m, dx, dy, dz);
+    const ds = (spread[child * SPREAD + NODE_MEAN] - mean) / 2;
+    ofSpread?.addChild(multipoles, at, child * stride, m, dx, dy, dz, ds);
   }
 }
 
@@ -49,14 +61,14 @@ export function gatherSlot(
 export function gatherBranch(
   tree: Octree,
   branch: number,
-  expansion: Expansion,
+  expansions: Expansions,
   multipoles: Float64Array,
 ): void {
   const first = tree.branchSlots[2 * branch];
   for (let slot = tree.branchSlots[2 * branch + 1] - 1; slot >= first; slot--) {
-    gatherSlot(tree, slot, expansion, multipoles);
+    gatherSlot(tree, slot, expansions, multipoles);
   }
-  gatherSlot(tree, tree.branchRoots[branch], expansion, multipoles);
+  gatherSlot(tree, tree.branchRoots[branch], expansions, multipoles);
 }
 
 /** Cells with at most this many bodies inherit the depth measured for a cell above them. */
@@ -66,8 +78,9 @@ const stack = new Int32Array(65536);
 /**
  * Estimates Σ m/r at the nodes of a branch by monopoles seen under a wide angle: good to some per
  * cent, which is all that acceptance needs. Parents get the least of their children's.
+ * @param soft2 - ε² of Plummer softening, null where it is the sum of two cells' means, else 0
  */
-export function estimateDepths(tree: Octree, branch: number, soft2: number): void {
+export function estimateDepths(tree: Octree, branch: number, soft2: number | null): void {
   const { geometry: G, topology: T } = tree;
   const rootSlot = tree.branchRoots[branch];
   const first = tree.branchSlots[2 * branch];
@@ -80,7 +93,8 @@ export function estimateDepths(tree: Octree, branch: number, soft2: number): voi
     const size = T[t + NODE_END] - T[t + NODE_BEGIN];
     const children = T[t + NODE_CHILDREN];
     if (G[g + NODE_DEPTH] === 0 && (size <= DEPTH_GROUP || children === 0)) {
-      G[g + NODE_DEPTH] = depthAt(tree, G[g], G[g + 1], G[g + 2], soft2);
+      const own2 = soft2 ?? tree.spread[slot * SPREAD + NODE_MEAN];
+      G[g + NODE_DEPTH] = depthAt(tree, G[g], G[g + 1], G[g + 2], own2, soft2 === null);
     }
     const child = T[t + NODE_CHILD];
     for (let c = child; c < child + children; c++) {
@@ -104,8 +118,15 @@ export function leastOfChildren(tree: Octree, slot: number): void {
   G[slot * GEOMETRY + NODE_DEPTH] = least;
 }
 
-function depthAt(tree: Octree, px: number, py: number, pz: number, soft2: number): number {
-  const { geometry: G, topology: T } = tree;
+function depthAt(
+  tree: Octree,
+  px: number,
+  py: number,
+  pz: number,
+  own2: number,
+  each: boolean,
+): number {
+  const { geometry: G, topology: T, spread } = tree;
   let sum = 0;
   let depth = 1;
   stack[0] = 0;
@@ -125,6 +146,7 @@ function depthAt(tree: Octree, px: number, py: number, pz: number, soft2: number
       continue;
     }
     const spread2 = children === 0 ? d2 + r * r : d2;
+    const soft2 = each ? own2 + spread[slot * SPREAD + NODE_MEAN] : own2;
     if (spread2 + soft2 > 0) sum += G[g + NODE_MASS] / Math.sqrt(spread2 + soft2);
   }
   return sum;

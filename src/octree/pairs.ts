@@ -4,6 +4,10 @@
  * All sums are positive and without G: `phi` collects Σ m f(r) with f = 1/r unsoftened, `psi` the part
  * Σ m [f(r) − r |f′(r)|] by which the Clausius share r |f′| falls short of it (0 unsoftened), and
  * `ax ay az` Σ m g(r) (x_j − x_i) with g = |f′|/r.
+ *
+ * Where bodies have softening lengths of their own, `squares` holds their e² and a pair is softened by
+ * e_i² + e_j² or, with the spline, by the larger; the number `softening` is then used by `atPoint` alone,
+ * as the e² of the point. A pair at one point neither of which has a length is left out.
  */
 import { compile } from './compile.ts';
 import { SPLINE_SUPPORT, splineForce, splinePotential, type SofteningKernel } from './softening.ts';
@@ -22,7 +26,15 @@ type Columns = [x: Float64Array, y: Float64Array, z: Float64Array, mass: Float64
 export interface PairKernels {
   /** All pairs inside [begin, end), both ways; `base` is the body whose sums are at 0. Returns pairs at distance 0 left out. */
   readonly inside: (
-    ...p: [...Columns, begin: number, end: number, base: number, sums: PairSums, softening: number]
+    ...p: [
+      ...Columns,
+      begin: number,
+      end: number,
+      base: number,
+      sums: PairSums,
+      softening: number,
+      squares: Float64Array,
+    ]
   ) => number;
   /** All pairs of [a, aEnd) with [b, bEnd), both ways. */
   readonly between: (
@@ -35,6 +47,7 @@ export interface PairKernels {
       base: number,
       sums: PairSums,
       softening: number,
+      squares: Float64Array,
     ]
   ) => void;
   /** Sums for the targets [t, tEnd) of one set from the sources [s, sEnd) of another. */
@@ -51,6 +64,8 @@ export interface PairKernels {
       base: number,
       sums: PairSums,
       softening: number,
+      targetSquares: Float64Array,
+      squares: Float64Array,
     ]
   ) => void;
   /** Adds to `out` (phi, psi, ax, ay, az) the sums at one point from [s, sEnd); a body at distance 0 is left out if unsoftened. Returns how many were. */
@@ -64,6 +79,7 @@ export interface PairKernels {
       sEnd: number,
       out: Float64Array,
       softening: number,
+      squares: Float64Array,
     ]
   ) => number;
 }
@@ -79,14 +95,30 @@ const KERNEL: Record<SofteningKernel, (withForce: boolean) => string> = {
       w=f-v*v*k/soft;${withForce ? 'g=k/(soft2*soft);' : ''}}`,
 };
 
+/** The same where `ei` and `e[j]` are the e² of the two bodies. */
+const KERNEL_OF_EACH: Record<SofteningKernel, (withForce: boolean) => string> = {
+  none: KERNEL.none,
+  plummer: (withForce) => `const soft=ei+e[j];${KERNEL.plummer(withForce)}`,
+  spline: (withForce) =>
+    `const ej=e[j],soft2=${SPLINE_SUPPORT ** 2}*(ei>ej?ei:ej);` +
+    KERNEL.spline(withForce).replace('else{', 'else{const soft=Math.sqrt(soft2);'),
+};
+
 const cache = new Map<string, PairKernels>();
 
-/** The kernels for a softening; `softening` in their calls is {@link pairSofteningOf}. */
-export function pairKernelsOf(kernel: SofteningKernel, withForce: boolean): PairKernels {
-  const key = `${kernel}${withForce ? 'Force' : ''}`;
+/**
+ * The kernels for a softening; `softening` in their calls is {@link pairSofteningOf}.
+ * @param each - bodies have lengths of their own
+ */
+export function pairKernelsOf(
+  kernel: SofteningKernel,
+  withForce: boolean,
+  each = false,
+): PairKernels {
+  const key = `${kernel}${each ? 'Each' : ''}${withForce ? 'Force' : ''}`;
   let kernels = cache.get(key);
   if (!kernels) {
-    kernels = writePairKernels(kernel, withForce, key);
+    kernels = writePairKernels(kernel, withForce, each, key);
     cache.set(key, kernels);
   }
   return kernels;
@@ -98,15 +130,25 @@ export function pairSofteningOf(kernel: SofteningKernel, length: number): number
   return kernel === 'plummer' ? length * length : SPLINE_SUPPORT * length;
 }
 
-function writePairKernels(kernel: SofteningKernel, force: boolean, key: string): PairKernels {
+function writePairKernels(
+  kernel: SofteningKernel,
+  force: boolean,
+  each: boolean,
+  key: string,
+): PairKernels {
   const soft = kernel !== 'none';
-  const open = 'const {phi,psi,ax,ay,az}=sums,soft2=soft*soft;';
+  const open = `const {phi,psi,ax,ay,az}=sums${each ? '' : ',soft2=soft*soft'};`;
   const start =
-    'const xi=X[i],yi=Y[i],zi=Z[i];let s=0' +
+    `const xi=X[i],yi=Y[i],zi=Z[i]${each ? ',ei=E[i]' : ''};let s=0` +
     (soft ? ',t=0' : '') +
     (force ? ',bx=0,by=0,bz=0;' : ';');
   const distance = 'const dx=x[j]-xi,dy=y[j]-yi,dz=z[j]-zi,r2=dx*dx+dy*dy+dz*dz;';
-  const eval_ = KERNEL[kernel](force);
+  const eval_ = (each ? KERNEL_OF_EACH : KERNEL)[kernel](force);
+  const leave = each
+    ? 'if(r2+ei+e[j]===0){left++;continue;}'
+    : soft
+      ? ''
+      : 'if(r2===0){left++;continue;}';
   const take =
     'const mj=mass[j];s+=mj*f;' +
     (soft ? 't+=mj*w;' : '') +
@@ -120,27 +162,32 @@ function writePairKernels(kernel: SofteningKernel, force: boolean, key: string):
     (soft ? 'psi[i-base]+=t;' : '') +
     (force ? 'ax[i-base]+=bx;ay[i-base]+=by;az[i-base]+=bz;' : '');
   const own = (code: string) =>
-    code.replaceAll('X[', 'x[').replaceAll('Y[', 'y[').replaceAll('Z[', 'z[');
+    code
+      .replaceAll('X[', 'x[')
+      .replaceAll('Y[', 'y[')
+      .replaceAll('Z[', 'z[')
+      .replaceAll('E[', 'e[');
   const outside = <F>(name: string, parameters: string[], body: string): F =>
     compileWithSpline<F>(`${key}${name}`, parameters, body);
   // Two bodies share one division where only the potential is wanted: a sixth to a quarter faster.
   const pairwise = kernel === 'none' && !force;
+  const taken = each ? ['notUsed', 'e'] : ['soft'];
 
   return {
     inside: outside(
       'Inside',
-      ['x', 'y', 'z', 'mass', 'begin', 'end', 'base', 'sums', 'soft'],
+      ['x', 'y', 'z', 'mass', 'begin', 'end', 'base', 'sums', ...taken],
       `${open}let left=0;
       for(let i=begin;i<end;i++){${own(start)}const mi=mass[i];
         let j=i+1;
         ${pairwise ? `for(;j+1<end;j+=2){${TWO_DISTANCES}if(r*q===0)break;${TAKE_TWO}}` : ''}
-        for(;j<end;j++){${distance}${soft ? '' : 'if(r2===0){left++;continue;}'}${eval_}${take}${give}}
+        for(;j<end;j++){${distance}${leave}${eval_}${take}${give}}
         ${store}}
       return left;`,
     ),
     between: outside(
       'Between',
-      ['x', 'y', 'z', 'mass', 'a', 'aEnd', 'b', 'bEnd', 'base', 'sums', 'soft'],
+      ['x', 'y', 'z', 'mass', 'a', 'aEnd', 'b', 'bEnd', 'base', 'sums', ...taken],
       `${open}
       for(let i=a;i<aEnd;i++){${own(start)}const mi=mass[i];let j=b;
         ${pairwise ? `for(;j+1<bEnd;j+=2){${TWO_DISTANCES}${TAKE_TWO}}` : ''}
@@ -149,7 +196,10 @@ function writePairKernels(kernel: SofteningKernel, force: boolean, key: string):
     ),
     onto: outside(
       'Onto',
-      ['X', 'Y', 'Z', 't0', 't1', 'x', 'y', 'z', 'mass', 'a', 'b', 'base', 'sums', 'soft'],
+      [
+        ...['X', 'Y', 'Z', 't0', 't1', 'x', 'y', 'z', 'mass', 'a', 'b', 'base', 'sums'],
+        ...(each ? ['notUsed', 'E', 'e'] : ['soft']),
+      ],
       `${open}
       for(let i=t0;i<t1;i++){${start}let j=a;
         ${pairwise ? `for(;j+1<b;j+=2){${TWO_DISTANCES}s+=(mass[j]*q+mass[j+1]*r)/(r*q);}` : ''}
@@ -158,9 +208,12 @@ function writePairKernels(kernel: SofteningKernel, force: boolean, key: string):
     ),
     atPoint: outside(
       'AtPoint',
-      ['xi', 'yi', 'zi', 'x', 'y', 'z', 'mass', 'a', 'b', 'out', 'soft'],
-      `const soft2=soft*soft;let left=0,s=0${soft ? ',t=0' : ''}${force ? ',bx=0,by=0,bz=0' : ''};
-      for(let j=a;j<b;j++){${distance}${soft ? '' : 'if(r2===0){left++;continue;}'}${eval_}${take}}
+      [
+        ...['xi', 'yi', 'zi', 'x', 'y', 'z', 'mass', 'a', 'b', 'out'],
+        ...(each ? ['ei', 'e'] : ['soft']),
+      ],
+      `${each ? '' : 'const soft2=soft*soft;'}let left=0,s=0${soft ? ',t=0' : ''}${force ? ',bx=0,by=0,bz=0' : ''};
+      for(let j=a;j<b;j++){${distance}${leave}${eval_}${take}}
       out[0]+=s;${soft ? 'out[1]+=t;' : ''}${force ? 'out[2]+=bx;out[3]+=by;out[4]+=bz;' : ''}
       return left;`,
     ),

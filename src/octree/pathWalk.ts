@@ -12,10 +12,13 @@ import {
   NODE_DEPTH,
   NODE_END,
   NODE_MASS,
+  NODE_MEAN,
   NODE_RADIUS,
+  SPREAD,
   TOPOLOGY,
   type Octree,
 } from './tree.ts';
+import { isSpreadFelt, isWider, meet, pairOfCells } from './spread.ts';
 import {
   DIRECT_AT_ONCE,
   DIRECT_IF_REFUSED,
@@ -38,11 +41,12 @@ export function sumTowards(
   out: Float64Array,
 ): void {
   const { tree, multipoles } = source;
-  const { geometry: G, topology: T, bodies } = tree;
-  const { x, y, z, mass } = bodies;
-  const { expansion, pairs, pairSoftening, acceptance } = tools;
-  const { interact, multipoles: momentStride, locals: localStride } = expansion;
-  const { soft2 } = acceptance;
+  const { geometry: G, topology: T, spread: S, bodies } = tree;
+  const { x, y, z, mass, squares } = bodies;
+  const { expansions, pairs, softenedByEach: each, acceptance } = tools;
+  const { plain, ofSpread, multipoles: momentStride, locals: localStride } = expansions;
+  const pairSoftening = each ? squares[place] : tools.pairSoftening;
+  const pair = pairOfCells(acceptance);
   const path = pathTo(tree, place);
   if (locals.length < path.length * localStride) {
     locals = new Float64Array(path.length * localStride * 2);
@@ -69,6 +73,7 @@ export function sumTowards(
     const n = (T[pt + NODE_END] - T[pt + NODE_BEGIN]) * (end - begin);
     const rt = G[gt + NODE_RADIUS];
     const rs = G[gs + NODE_RADIUS];
+    if (each) meet(pair, S, t, S, s, ofSpread !== null);
     // Inside the branch cells act on each other both ways at once, or not at all.
     const both = begin >= branchBegin && end <= branchEnd;
     const ways = both ? 2 : 1;
@@ -78,10 +83,12 @@ export function sumTowards(
       const dz = G[gt + 2] - G[gs + 2];
       const d2 = dx * dx + dy * dy + dz * dz;
       if (
-        isAccepted(acceptance, rt, rs, d2, G[gs + NODE_MASS], G[gt + NODE_DEPTH]) &&
-        (!both || isAccepted(acceptance, rs, rt, d2, G[gt + NODE_MASS], G[gs + NODE_DEPTH]))
+        isAccepted(acceptance, rt, rs, d2, G[gs + NODE_MASS], G[gt + NODE_DEPTH], pair) &&
+        (!both || isAccepted(acceptance, rs, rt, d2, G[gt + NODE_MASS], G[gs + NODE_DEPTH], pair))
       ) {
-        interact(G, gt, locals, step * localStride, G, gs, multipoles, s * momentStride, soft2);
+        const { interact } = isSpreadFelt(pair, d2) && ofSpread !== null ? ofSpread : plain;
+        const ms = s * momentStride;
+        interact(G, gt, locals, step * localStride, G, gs, multipoles, ms, pair.soft2);
         continue;
       }
     }
@@ -90,12 +97,13 @@ export function sumTowards(
     if (n <= ways * DIRECT_IF_REFUSED || (tLeaf && sLeaf)) {
       const split = Math.min(end, Math.max(begin, place));
       const after = place >= begin && place < end ? place + 1 : split;
-      pairs.atPoint(px, py, pz, x, y, z, mass, begin, split, out, pairSoftening);
-      pairs.atPoint(px, py, pz, x, y, z, mass, after, end, out, pairSoftening);
+      pairs.atPoint(px, py, pz, x, y, z, mass, begin, split, out, pairSoftening, squares);
+      pairs.atPoint(px, py, pz, x, y, z, mass, after, end, out, pairSoftening, squares);
       continue;
     }
     if (depth + 16 > stack.length) stack = longerStack(stack);
-    if (!sLeaf && (tLeaf || rs >= rt)) {
+    const splitSource = each ? isWider(s, rs, S, t, rt, S) : rs >= rt;
+    if (!sLeaf && (tLeaf || splitSource)) {
       // A cell with itself is cut on both sides.
       const next = s === t ? step + 1 : step;
       const first = T[ps + NODE_CHILD];
@@ -114,8 +122,12 @@ export function sumTowards(
     const dx = px - G[g];
     const dy = py - G[g + 1];
     const dz = pz - G[g + 2];
-    out[0] += expansion.valueAt(locals, at, dx, dy, dz);
-    out[1] += expansion.clausiusAt(locals, at, dx, dy, dz);
+    out[0] += plain.valueAt(locals, at, dx, dy, dz);
+    out[1] += plain.clausiusAt(locals, at, dx, dy, dz);
+    if (ofSpread === null) return;
+    const ds = (squares[place] - S[slot * SPREAD + NODE_MEAN]) / 2;
+    out[0] += ofSpread.valueAt(locals, at, dx, dy, dz, ds);
+    out[1] += ofSpread.clausiusAt(locals, at, dx, dy, dz, ds);
   });
 }
 

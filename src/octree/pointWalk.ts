@@ -19,6 +19,14 @@ export interface PointWalkOptions {
   readonly openingAngle: number;
 }
 
+/** Positions, and e² of each where bodies have softening lengths of their own. */
+export interface Points {
+  readonly x: Float64Array;
+  readonly y: Float64Array;
+  readonly z: Float64Array;
+  readonly squares: Float64Array;
+}
+
 export interface PointSums {
   /** Two numbers a point: Σ m f(r), and the part by which the Clausius share falls short of it. */
   readonly sums: Float64Array;
@@ -35,13 +43,14 @@ export async function sumsAtBodies(
   options: PointWalkOptions,
   crew: Crew,
 ): Promise<PointSums> {
-  const { x, y, z } = source.tree.bodies;
+  const { x, y, z, squares } = source.tree.bodies;
   const pick = (column: Float64Array) => Float64Array.from(places, (place) => column[place]);
-  return walk(source, { x: pick(x), y: pick(y), z: pick(z) }, places, options, crew);
+  const points = { x: pick(x), y: pick(y), z: pick(z), squares: pick(squares) };
+  return walk(source, points, places, options, crew);
 }
 
 /**
- * Potential −G Σ m f(r) at arbitrary points [velocity²].
+ * Potential −G Σ m f(r) at arbitrary points, which have no softening length of their own [velocity²].
  * @param points - coordinates, in the unit of length of the bodies
  */
 export async function potentialAt(
@@ -51,13 +60,14 @@ export async function potentialAt(
   options: PointWalkOptions,
   crew: Crew,
 ): Promise<Float64Array> {
-  const { sums } = await walk(source, points, null, options, crew);
+  const squares = new Float64Array(points.x.length);
+  const { sums } = await walk(source, { ...points, squares }, null, options, crew);
   return Float64Array.from(points.x, (_, k) => -gravity * sums[2 * k]);
 }
 
 async function walk(
   source: SourceTree,
-  points: { readonly x: Float64Array; readonly y: Float64Array; readonly z: Float64Array },
+  points: Points,
   places: Uint32Array | null,
   options: PointWalkOptions,
   crew: Crew,

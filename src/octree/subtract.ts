@@ -11,6 +11,7 @@ import { crewOfOne, type Crew, type TaskModule } from '../parallel/crew.ts';
 import { buildOctree, type BodyColumns } from './build.ts';
 import { acceptanceOf, gatherMultipoles, type Forces } from './forces.ts';
 import { LEVELS } from './levels.ts';
+import { isOfEach, squared } from './softening.ts';
 import { FEW_CHUNK } from './subtract.task.ts';
 
 const TASK: TaskModule<typeof SubtractTask> = {
@@ -46,18 +47,20 @@ export async function subtractBodies(
   crew: Crew,
 ): Promise<boolean> {
   const count = columns.mass.length;
+  const { tree: source, softening } = forces;
+  const lengths = isOfEach(softening) ? softening.lengths : undefined;
   const few = {
     x: pick(columns.x, removed),
     y: pick(columns.y, removed),
     z: pick(columns.z, removed),
     mass: pick(columns.mass, removed),
+    squares: lengths === undefined ? takeDoubles(0) : squared(pick(lengths, removed)),
   };
   const softened = forces.softening.kernel !== 'none';
   const column = (wanted: boolean) => takeDoubles(wanted ? count : 0);
   const none = column(false);
   const phi = column(true);
   const psi = column(softened);
-  const { tree: source, softening } = forces;
   if (source === null || removed.length <= DIRECT_REMOVED) {
     const small = count * removed.length < 1e6 ? crewOfOne() : crew;
     const { x, y, z } = columns;
@@ -70,7 +73,8 @@ export async function subtractBodies(
     return subtractSums(phi, psi, kept, forces.gravity, field);
   }
   const level = forces.level ?? LEVELS[0];
-  const tree = await buildOctree(few, crew);
+  const { squares, ...bodies } = few;
+  const tree = await buildOctree(lengths === undefined ? bodies : { ...bodies, squares }, crew);
   const removedSource = await gatherMultipoles(tree, level.order, softening, crew);
   await crew.run(
     FORCES,

@@ -23,6 +23,15 @@ export const NODE_END = 1;
 export const NODE_CHILD = 2;
 export const NODE_CHILDREN = 3;
 
+/** Offsets inside a node's entry of {@link Octree.spread}. */
+export const SPREAD = 5;
+/** Mean and variance of e² by mass; how far any body's e² is from the mean; least and greatest e². */
+export const NODE_MEAN = 0;
+export const NODE_VARIANCE = 1;
+export const NODE_FARTHEST = 2;
+export const NODE_LEAST = 3;
+export const NODE_GREATEST = 4;
+
 /** Bodies in tree order: a copy that the tree owns, with the way back to the input order. */
 export interface OrderedBodies {
   readonly count: number;
@@ -30,6 +39,8 @@ export interface OrderedBodies {
   readonly y: Float64Array;
   readonly z: Float64Array;
   readonly mass: Float64Array;
+  /** Squared softening length e² of each body; empty where one length holds for all. */
+  readonly squares: Float64Array;
   /** Input index of the body at each place. */
   readonly input: Uint32Array;
 }
@@ -41,6 +52,8 @@ export interface Octree {
   readonly geometry: Float64Array;
   /** {@link TOPOLOGY} integers a node: first body, end of bodies, first child's slot, number of children (0 in a leaf). */
   readonly topology: Uint32Array;
+  /** {@link SPREAD} reals a node: NODE_MEAN … NODE_GREATEST of its bodies' e²; empty as `bodies.squares` is. */
+  readonly spread: Float64Array;
   /** Slots in use, and how many of them are the shared top. */
   readonly nodeCount: number;
   readonly topCount: number;

@@ -5,7 +5,7 @@
  * where both cells lie in the branch, one way from everything outside. So a branch writes only to
  * its own sums, in an order that the data alone decide.
  */
-import type { Expansion } from './expansion.ts';
+import type { Expansions } from './expansions.ts';
 import type { PairKernels, PairSums } from './pairs.ts';
 import {
   GEOMETRY,
@@ -16,10 +16,13 @@ import {
   NODE_DEPTH,
   NODE_END,
   NODE_MASS,
+  NODE_MEAN,
   NODE_RADIUS,
+  SPREAD,
   TOPOLOGY,
   type Octree,
 } from './tree.ts';
+import { isSpreadFelt, isWider, meet, pairOfCells, type PairOfCells } from './spread.ts';
 
 /** What decides whether two cells interact as a whole. */
 export interface Acceptance {
@@ -29,8 +32,14 @@ export interface Acceptance {
   readonly tolerance: number;
   /** Order of the expansion. */
   readonly order: number;
-  /** ε² of Plummer softening, which makes the field smoother and so widens acceptance; else 0. */
+  /**
+   * ε² of Plummer softening, which makes the field smoother and so widens acceptance; else 0. Where
+   * bodies have lengths of their own, this and the support are those of the two cells.
+   */
   readonly soft2: number;
+  /** Largest variance of e² in two cells over u², and largest deviation over u, with u = d² + ε². */
+  readonly varianceLimit: number;
+  readonly farthestLimit: number;
   /** Distance inside which the pair force is not Newtonian and cells must open (spline support); else 0. */
   readonly support: number;
 }
@@ -46,6 +55,9 @@ export interface Acceptance {
  *   c (r_t/d)^(p+1), where c ≤ 1 is the share of φ that matter as dense as the source, out to d, would
  *   give. Far outside a system these errors add up, each of them small.
  *
+ * And where softening lengths differ within the cells, by little against u = d² + ε²: their error has
+ * one sign all around, so that it does not matter how small the cells are.
+ *
  * Called in the innermost loop with plain numbers, so that it is inlined there.
  */
 export function isAccepted(
@@ -55,10 +67,13 @@ export function isAccepted(
   distance2: number,
   sourceMass: number,
   targetDepth: number,
+  { soft2, support, variance, farthest }: PairOfCells,
 ): boolean {
-  const { openingAngle, tolerance, soft2, support } = rule;
+  const { openingAngle, tolerance, varianceLimit, farthestLimit } = rule;
   const reach = targetRadius + sourceRadius;
   const u = distance2 + soft2;
+  // Written so that a variance that overflowed is refused.
+  if (!(variance <= varianceLimit * u * u && farthest <= farthestLimit * u)) return false;
   const reach2 = reach * reach;
   if (reach2 >= openingAngle * openingAngle * u) return false;
   if (support > 0 && distance2 <= (reach + support) * (reach + support)) return false;
@@ -130,10 +145,12 @@ export interface SourceTree {
 }
 
 export interface WalkTools {
-  readonly expansion: Expansion;
+  readonly expansions: Expansions;
   readonly pairs: PairKernels;
   /** As the pair kernels take it. */
   readonly pairSoftening: number;
+  /** Bodies have softening lengths of their own: trees have a spread. */
+  readonly softenedByEach: boolean;
   readonly acceptance: Acceptance;
 }
 
@@ -209,17 +226,22 @@ class Walk {
   oneWay(t0: number, s0: number): void {
     const { target, base, firstSlot, scratch } = this;
     const { tree, multipoles } = this.source;
-    const { expansion, pairs, pairSoftening, acceptance } = this.tools;
-    const { interact, multipoles: momentStride, locals: localStride } = expansion;
+    const { tools } = this;
+    const { expansions, pairs, pairSoftening, acceptance } = tools;
+    const { plain, ofSpread, multipoles: momentStride, locals: localStride } = expansions;
+    const { interact } = plain;
     const onto = pairs.onto;
     const locals = scratch.locals;
     const tG = target.geometry;
     const tT = target.topology;
     const sG = tree.geometry;
     const sT = tree.topology;
+    const tS = target.spread;
+    const sS = tree.spread;
     const tb = target.bodies;
     const sb = tree.bodies;
-    const { soft2 } = acceptance;
+    const each = tools.softenedByEach;
+    const pair = pairOfCells(acceptance);
     let stack = scratch.stack;
     let cells = 0;
     let pairCount = 0;
@@ -237,14 +259,20 @@ class Walk {
         (tT[pt + NODE_END] - tT[pt + NODE_BEGIN]) * (sT[ps + NODE_END] - sT[ps + NODE_BEGIN]);
       const rt = tG[gt + NODE_RADIUS];
       const rs = sG[gs + NODE_RADIUS];
+      if (each) meet(pair, tS, t, sS, s, ofSpread !== null);
       if (n > DIRECT_AT_ONCE) {
         const dx = tG[gt] - sG[gs];
         const dy = tG[gt + 1] - sG[gs + 1];
         const dz = tG[gt + 2] - sG[gs + 2];
         const d2 = dx * dx + dy * dy + dz * dz;
-        if (isAccepted(acceptance, rt, rs, d2, sG[gs + NODE_MASS], tG[gt + NODE_DEPTH])) {
+        const mass = sG[gs + NODE_MASS];
+        const phi = tG[gt + NODE_DEPTH];
+        if (isAccepted(acceptance, rt, rs, d2, mass, phi, pair)) {
           const lt = (t === t0 ? 0 : t - firstSlot + 1) * localStride;
-          interact(tG, gt, locals, lt, sG, gs, multipoles, s * momentStride, soft2);
+          const ms = s * momentStride;
+          if (ofSpread !== null && isSpreadFelt(pair, d2)) {
+            ofSpread.interact(tG, gt, locals, lt, sG, gs, multipoles, ms, pair.soft2);
+          } else interact(tG, gt, locals, lt, sG, gs, multipoles, ms, pair.soft2);
           cells++;
           continue;
         }
@@ -267,12 +295,15 @@ class Walk {
           base,
           scratch,
           pairSoftening,
+          tb.squares,
+          sb.squares,
         );
         pairCount += n;
         continue;
       }
       if (depth + 32 > stack.length) stack = scratch.stack = longerStack(stack);
-      if (!sLeaf && (tLeaf || rs >= rt)) {
+      const splitSource = each ? isWider(s, rs, sS, t, rt, tS) : rs >= rt;
+      if (!sLeaf && (tLeaf || splitSource)) {
         const first = sT[ps + NODE_CHILD];
         for (let child = first + sT[ps + NODE_CHILDREN] - 1; child >= first; child--) {
           stack[depth++] = t;
@@ -294,14 +325,18 @@ class Walk {
   inside(root: number): void {
     const { base, firstSlot, scratch } = this;
     const { tree, multipoles } = this.source;
-    const { expansion, pairs, pairSoftening, acceptance } = this.tools;
-    const { interactBoth, multipoles: momentStride, locals: localStride } = expansion;
+    const { tools } = this;
+    const { expansions, pairs, pairSoftening, acceptance } = tools;
+    const { plain, ofSpread, multipoles: momentStride, locals: localStride } = expansions;
+    const { interactBoth } = plain;
     const { inside, between } = pairs;
     const locals = scratch.locals;
     const G = tree.geometry;
     const T = tree.topology;
-    const { x, y, z, mass } = tree.bodies;
-    const { soft2 } = acceptance;
+    const S = tree.spread;
+    const { x, y, z, mass, squares } = tree.bodies;
+    const each = tools.softenedByEach;
+    const pair = pairOfCells(acceptance);
     let stack = scratch.stack;
     let cells = 0;
     let pairCount = 0;
@@ -327,6 +362,7 @@ class Walk {
             base,
             scratch,
             pairSoftening,
+            squares,
           );
           coincident += left;
           pairCount += sizeA * (sizeA - 1);
@@ -348,29 +384,28 @@ class Walk {
       const gb = b * GEOMETRY;
       const ra = G[ga + NODE_RADIUS];
       const rb = G[gb + NODE_RADIUS];
+      if (each) meet(pair, S, a, S, b, ofSpread !== null);
       if (n > DIRECT_AT_ONCE * 2) {
         const dx = G[ga] - G[gb];
         const dy = G[ga + 1] - G[gb + 1];
         const dz = G[ga + 2] - G[gb + 2];
         const d2 = dx * dx + dy * dy + dz * dz;
+        const massA = G[ga + NODE_MASS];
+        const massB = G[gb + NODE_MASS];
+        const phiA = G[ga + NODE_DEPTH];
+        const phiB = G[gb + NODE_DEPTH];
         if (
-          isAccepted(acceptance, ra, rb, d2, G[gb + NODE_MASS], G[ga + NODE_DEPTH]) &&
-          isAccepted(acceptance, rb, ra, d2, G[ga + NODE_MASS], G[gb + NODE_DEPTH])
+          isAccepted(acceptance, ra, rb, d2, massB, phiA, pair) &&
+          isAccepted(acceptance, rb, ra, d2, massA, phiB, pair)
         ) {
           const la = (a === root ? 0 : a - firstSlot + 1) * localStride;
           const lb = (b === root ? 0 : b - firstSlot + 1) * localStride;
-          interactBoth(
-            G,
-            multipoles,
-            locals,
-            ga,
-            a * momentStride,
-            la,
-            gb,
-            b * momentStride,
-            lb,
-            soft2,
-          );
+          const ma = a * momentStride;
+          const mb = b * momentStride;
+          if (ofSpread !== null && isSpreadFelt(pair, d2)) {
+            ofSpread.interact(G, ga, locals, la, G, gb, multipoles, mb, pair.soft2);
+            ofSpread.interact(G, gb, locals, lb, G, ga, multipoles, ma, pair.soft2);
+          } else interactBoth(G, multipoles, locals, ga, ma, la, gb, mb, lb, pair.soft2);
           cells += 2;
           continue;
         }
@@ -390,11 +425,13 @@ class Walk {
           base,
           scratch,
           pairSoftening,
+          squares,
         );
         pairCount += 2 * n;
         continue;
       }
-      const splitA = !aLeaf && (bLeaf || ra >= rb);
+      const aIsWider = each ? isWider(a, ra, S, b, rb, S) : ra >= rb;
+      const splitA = !aLeaf && (bLeaf || aIsWider);
       const p = splitA ? pa : pb;
       const first = T[p + NODE_CHILD];
       for (let child = first + T[p + NODE_CHILDREN] - 1; child >= first; child--) {
@@ -415,14 +452,16 @@ class Walk {
 export function descendBranch(
   target: Octree,
   branch: number,
-  expansion: Expansion,
+  expansions: Expansions,
   softened: boolean,
   force: boolean,
   scratch: WalkScratch,
 ): void {
   const { geometry: G, topology: T, bodies } = target;
-  const { x, y, z } = bodies;
-  const { locals: stride, passDown, valueAt, clausiusAt, gradientAt } = expansion;
+  const { x, y, z, squares } = bodies;
+  const S = target.spread;
+  const { plain, ofSpread, locals: stride } = expansions;
+  const { passDown, valueAt, clausiusAt, gradientAt } = plain;
   const { phi, psi, ax, ay, az, locals } = scratch;
   const rootSlot = target.branchRoots[branch];
   const firstSlot = target.branchSlots[2 * branch];
@@ -437,19 +476,20 @@ export function descendBranch(
     const cx = G[g];
     const cy = G[g + 1];
     const cz = G[g + 2];
+    const mean = ofSpread === null ? 0 : S[slot * SPREAD + NODE_MEAN];
     const children = T[t + NODE_CHILDREN];
     if (children > 0) {
       const first = T[t + NODE_CHILD];
       for (let child = first; child < first + children; child++) {
         const c = child * GEOMETRY;
-        passDown(
-          locals,
-          at,
-          (child - firstSlot + 1) * stride,
-          G[c] - cx,
-          G[c + 1] - cy,
-          G[c + 2] - cz,
-        );
+        const to = (child - firstSlot + 1) * stride;
+        const dx = G[c] - cx;
+        const dy = G[c + 1] - cy;
+        const dz = G[c + 2] - cz;
+        passDown(locals, at, to, dx, dy, dz);
+        if (ofSpread === null) continue;
+        const ds = (S[child * SPREAD + NODE_MEAN] - mean) / 2;
+        ofSpread.passDown(locals, at, to, dx, dy, dz, ds);
       }
       continue;
     }
@@ -459,8 +499,14 @@ export function descendBranch(
       const dz = z[i] - cz;
       phi[k] += valueAt(locals, at, dx, dy, dz);
       if (softened) psi[k] += clausiusAt(locals, at, dx, dy, dz);
+      if (force) gradientAt(locals, at, dx, dy, dz, gradient);
+      if (ofSpread !== null) {
+        const ds = (squares[i] - mean) / 2;
+        phi[k] += ofSpread.valueAt(locals, at, dx, dy, dz, ds);
+        psi[k] += ofSpread.clausiusAt(locals, at, dx, dy, dz, ds);
+        if (force) ofSpread.gradientAt(locals, at, dx, dy, dz, ds, gradient);
+      }
       if (force) {
-        gradientAt(locals, at, dx, dy, dz, gradient);
         ax[k] += gradient[0];
         ay[k] += gradient[1];
         az[k] += gradient[2];

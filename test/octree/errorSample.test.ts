@@ -3,12 +3,12 @@ import { describe, expect, it } from 'vitest';
 import { buildOctree } from '../../src/octree/build.ts';
 import { drawByMass, someOf } from '../../src/octree/draw.ts';
 import { leastError, makeReference } from '../../src/octree/errorSample.ts';
-import { expansionOf } from '../../src/octree/expansion.ts';
+import { expansionsFor } from '../../src/octree/expansions.ts';
 import { acceptanceOf, PROMISED_SIGMAS, sumForces } from '../../src/octree/forces.ts';
 import { LEVELS } from '../../src/octree/levels.ts';
 import { pairKernelsOf, pairSofteningOf } from '../../src/octree/pairs.ts';
 import { sumTowards } from '../../src/octree/pathWalk.ts';
-import { NO_SOFTENING } from '../../src/octree/softening.ts';
+import { isOfEach, NO_SOFTENING } from '../../src/octree/softening.ts';
 import { crewOfOne } from '../../src/parallel/crew.ts';
 import { changed, modelColumns, natural, SOFTENINGS } from './samples.ts';
 
@@ -53,8 +53,9 @@ describe('a level tried on few bodies', () => {
     if (!forces.tree) throw new Error('no tree');
     const { input, count } = forces.tree.tree.bodies;
     const tools = {
-      expansion: expansionOf(level.order, softening.kernel === 'plummer'),
-      pairs: pairKernelsOf(softening.kernel, false),
+      expansions: expansionsFor(level.order, softening),
+      pairs: pairKernelsOf(softening.kernel, false, isOfEach(softening)),
+      softenedByEach: isOfEach(softening),
       pairSoftening: pairSofteningOf(softening.kernel, softening.length),
       acceptance: acceptanceOf(level, softening),
     };

@@ -1,7 +1,7 @@
 /** Forces of the engine against plain double loops over all pairs. */
 import { describe, expect, it } from 'vitest';
 import { sumAtPoint } from '../../src/octree/classical.ts';
-import { expansionOf } from '../../src/octree/expansion.ts';
+import { expansionsFor } from '../../src/octree/expansions.ts';
 import { acceptanceOf, PROMISED_SIGMAS, sumForces } from '../../src/octree/forces.ts';
 import { LEVELS } from '../../src/octree/levels.ts';
 import { pairKernelsOf, pairSofteningOf } from '../../src/octree/pairs.ts';
@@ -123,9 +123,10 @@ it.each(SOFTENINGS)('the classical walk finds the same sums: $kernel', async (so
   const plain = plainField(bodies, softening);
   const { soft2, support } = acceptanceOf(LEVELS[2], softening);
   const tools = {
-    expansion: expansionOf(LEVELS[2].order, softening.kernel === 'plummer'),
+    expansions: expansionsFor(LEVELS[2].order, softening),
     pairs: pairKernelsOf(softening.kernel, false),
     pairSoftening: pairSofteningOf(softening.kernel, softening.length),
+    softenedByEach: false,
     openingAngle: 0.4,
     soft2,
     support,
@@ -138,7 +139,7 @@ it.each(SOFTENINGS)('the classical walk finds the same sums: $kernel', async (so
   let interactions = 0;
   for (let place = 0; place < 8000; place += 37) {
     out.fill(0);
-    interactions += sumAtPoint(forces.tree, x[place], y[place], z[place], place, tools, out);
+    interactions += sumAtPoint(forces.tree, x[place], y[place], z[place], 0, place, tools, out);
     chosen.push(input[place]);
     walk.push(-out[0]);
     walkShare.push(out[1] - out[0]);
@@ -155,7 +156,7 @@ it.each(SOFTENINGS)('the classical walk finds the same sums: $kernel', async (so
   expect(interactions).toBeLessThan(0.5 * chosen.length * 8000);
   // A point where no body is: the whole sum.
   out.fill(0);
-  sumAtPoint(forces.tree, 3, 4, 5, -1, tools, out);
+  sumAtPoint(forces.tree, 3, 4, 5, 0, -1, tools, out);
   let direct = 0;
   bodies.mass.forEach((m, i) => {
     const r = Math.hypot(bodies.x[i] - 3, bodies.y[i] - 4, bodies.z[i] - 5);

@@ -2,14 +2,26 @@
 import { describe, expect, it } from 'vitest';
 import { pairKernelsOf, pairSofteningOf, type PairSums } from '../../src/octree/pairs.ts';
 import {
+  isOfEach,
   NO_SOFTENING,
   splineForce,
   splinePotential,
   SPLINE_SUPPORT,
+  squared,
   supportOf,
   type Softening,
 } from '../../src/octree/softening.ts';
-import { columnsOf, cubeColumns, pairLaw, plainField, type Columns } from './samples.ts';
+import {
+  columnsOf,
+  cubeColumns,
+  pairLaw,
+  plainField,
+  softeningOfPair,
+  type Columns,
+} from './samples.ts';
+
+/** Squares that kernels for one length do not look at. */
+const NONE = new Float64Array(0);
 
 describe('the spline', () => {
   // Source: the kernel of Monaghan & Lattanzio 1985 integrated by hand and by quadrature (agreement 1e-14).
@@ -81,20 +93,28 @@ it('a pair at r = 1 under Plummer softening of 0.1 has the published shares', ()
   const { atPoint } = pairKernelsOf('plummer', false);
   const out = new Float64Array(5);
   const [x, y, z, mass] = [[1], [0], [0], [1]].map((list) => Float64Array.from(list));
-  atPoint(0, 0, 0, x, y, z, mass, 0, 1, out, pairSofteningOf('plummer', 0.1));
+  atPoint(0, 0, 0, x, y, z, mass, 0, 1, out, pairSofteningOf('plummer', 0.1), NONE);
   // Source: u = −Gmm′/√(r²+ε²) gives 1/√1.01 and W/U = r²/(r²+ε²) = 1/1.01.
   expect(out[0]).toBeCloseTo(0.9950371902, 10);
   expect((out[0] - out[1]) / out[0]).toBeCloseTo(0.9900990099, 10);
 });
 
-const SOFTENINGS: Softening[] = [
-  NO_SOFTENING,
-  { kernel: 'plummer', length: 0.2 },
-  { kernel: 'spline', length: 0.2 }, // support 0.56: a good part of the pairs lie inside
+/** Lengths of the bodies' own: some 0, so that the loops meet pairs without softening. */
+const OWN_LENGTHS = Float64Array.from({ length: 53 }, (_, i) => [0.2, 0, 0.002, 0.3, 0][i % 5]);
+
+const SOFTENINGS: [string, Softening][] = [
+  ['none', NO_SOFTENING],
+  ['plummer', { kernel: 'plummer', length: 0.2 }],
+  // Support 0.56: a good part of the pairs lie inside.
+  ['spline', { kernel: 'spline', length: 0.2 }],
+  ['plummer, lengths of each', { kernel: 'plummer', length: 0.2, lengths: OWN_LENGTHS }],
+  ['spline, lengths of each', { kernel: 'spline', length: 0.2, lengths: OWN_LENGTHS }],
 ];
 
-describe.each(SOFTENINGS)('loops over pairs, $kernel', (softening) => {
+describe.each(SOFTENINGS)('loops over pairs, %s', (_, softening) => {
+  const each = isOfEach(softening);
   const soft = pairSofteningOf(softening.kernel, softening.length);
+  const squares = softening.lengths === undefined ? NONE : squared(softening.lengths);
   // Odd numbers, so that loops two at a time have a rest.
   const bodies = cubeColumns(53, 1, (random) => random.uniform());
   const { x, y, z, mass } = bodies;
@@ -115,7 +135,7 @@ describe.each(SOFTENINGS)('loops over pairs, $kernel', (softening) => {
         if (j === i) continue;
         const d = [x[j] - x[i], y[j] - y[i], z[j] - z[i]];
         const r = Math.hypot(...d);
-        const { f, s } = pairLaw(softening, r);
+        const { f, s } = pairLaw(softeningOfPair(softening, i, j), r);
         phi += mass[j] * f;
         psi += mass[j] * (f - s * r * r);
         ax += mass[j] * s * d[0];
@@ -137,11 +157,11 @@ describe.each(SOFTENINGS)('loops over pairs, $kernel', (softening) => {
   }
 
   describe.each([false, true])('with force: %s', (force) => {
-    const kernels = pairKernelsOf(softening.kernel, force);
+    const kernels = pairKernelsOf(softening.kernel, force, each);
 
     it('inside a range', () => {
       const sums = sumsFor(53);
-      expect(kernels.inside(x, y, z, mass, 5, 52, 3, sums, soft)).toBe(0);
+      expect(kernels.inside(x, y, z, mass, 5, 52, 3, sums, soft, squares)).toBe(0);
       expectSums(sums, 3, [5, 52], () => [5, 52], force);
       expect(sums.phi[1]).toBe(0); // body 4 is no part of it
       expect(sums.phi[49]).toBe(0); // nor is body 52
@@ -153,7 +173,7 @@ describe.each(SOFTENINGS)('loops over pairs, $kernel', (softening) => {
       [3, 4, 10, 11],
     ])('between [%i, %i) and [%i, %i)', (a, aEnd, b, bEnd) => {
       const sums = sumsFor(53);
-      kernels.between(x, y, z, mass, a, aEnd, b, bEnd, 0, sums, soft);
+      kernels.between(x, y, z, mass, a, aEnd, b, bEnd, 0, sums, soft, squares);
       expectSums(sums, 0, [a, aEnd], () => [b, bEnd], force);
       expectSums(sums, 0, [b, bEnd], () => [a, aEnd], force);
     });
@@ -163,7 +183,7 @@ describe.each(SOFTENINGS)('loops over pairs, $kernel', (softening) => {
       [40, 53, 0, 6],
     ])('onto [%i, %i) from [%i, %i) of another set', (t, tEnd, s, sEnd) => {
       const sums = sumsFor(53);
-      kernels.onto(x, y, z, t, tEnd, x, y, z, mass, s, sEnd, 0, sums, soft);
+      kernels.onto(x, y, z, t, tEnd, x, y, z, mass, s, sEnd, 0, sums, soft, squares, squares);
       expectSums(sums, 0, [t, tEnd], () => [s, sEnd], force);
     });
 
@@ -171,8 +191,9 @@ describe.each(SOFTENINGS)('loops over pairs, $kernel', (softening) => {
       const sums = sumsFor(53);
       for (let i = 0; i < 53; i++) {
         const out = new Float64Array(5);
-        kernels.atPoint(x[i], y[i], z[i], x, y, z, mass, 0, i, out, soft);
-        kernels.atPoint(x[i], y[i], z[i], x, y, z, mass, i + 1, 53, out, soft);
+        const own = each ? squares[i] : soft;
+        kernels.atPoint(x[i], y[i], z[i], x, y, z, mass, 0, i, out, own, squares);
+        kernels.atPoint(x[i], y[i], z[i], x, y, z, mass, i + 1, 53, out, own, squares);
         [sums.phi, sums.psi, sums.ax, sums.ay, sums.az].forEach((sum, k) => (sum[i] = out[k]));
       }
       expectSums(sums, 0, [0, 53], () => [0, 53], force);
@@ -181,7 +202,18 @@ describe.each(SOFTENINGS)('loops over pairs, $kernel', (softening) => {
 
   it('agree with the field that other tests compare with', () => {
     const sums = sumsFor(53);
-    pairKernelsOf(softening.kernel, true).inside(x, y, z, mass, 0, 53, 0, sums, soft);
+    pairKernelsOf(softening.kernel, true, each).inside(
+      x,
+      y,
+      z,
+      mass,
+      0,
+      53,
+      0,
+      sums,
+      soft,
+      squares,
+    );
     for (let i = 0; i < 53; i++) {
       expect(sums.phi[i]).toBeCloseTo(-field.phi[i], 12);
       expect(sums.phi[i] - sums.psi[i]).toBeCloseTo(-field.share[i], 12);
@@ -202,10 +234,10 @@ describe('bodies at one point', () => {
     for (const force of [false, true]) {
       const sums = sumsFor(3);
       const { inside, atPoint } = pairKernelsOf('none', force);
-      expect(inside(x, y, z, mass, 0, 3, 0, sums, 0)).toBe(1);
+      expect(inside(x, y, z, mass, 0, 3, 0, sums, 0, NONE)).toBe(1);
       [4 / 5, 4 / 5, 3 / 5].forEach((phi, i) => expect(sums.phi[i]).toBeCloseTo(phi, 15));
       const out = new Float64Array(5);
-      expect(atPoint(0, 0, 0, x, y, z, mass, 0, 3, out, 0)).toBe(2);
+      expect(atPoint(0, 0, 0, x, y, z, mass, 0, 3, out, 0, NONE)).toBe(2);
       expect(out[0]).toBeCloseTo(4 / 5, 15);
     }
   });
@@ -213,11 +245,29 @@ describe('bodies at one point', () => {
   it.each(['plummer', 'spline'] as const)('have the depth 1/ε of a %s kernel', (kernel) => {
     const sums = sumsFor(3);
     const soft = pairSofteningOf(kernel, 0.5);
-    pairKernelsOf(kernel, true).inside(x, y, z, mass, 0, 2, 0, sums, soft);
+    pairKernelsOf(kernel, true).inside(x, y, z, mass, 0, 2, 0, sums, soft, NONE);
     expect(sums.phi[0]).toBeCloseTo(2 / 0.5, 14);
     expect(sums.phi[1]).toBeCloseTo(1 / 0.5, 14);
     // At r = 0 there is no r |f′|: all of f is missing from the Clausius share; and no force.
     expect(sums.psi[0]).toBeCloseTo(sums.phi[0], 14);
     expect([sums.ax[0], sums.ay[0], sums.az[0]]).toEqual([0, 0, 0]);
+  });
+
+  it.each([
+    ['plummer', 1 / Math.hypot(0.3, 0.4)],
+    ['spline', 1 / 0.4],
+  ] as const)('with lengths of their own are left out only if neither has one: %s', (kernel, f) => {
+    for (const force of [false, true]) {
+      const kernels = pairKernelsOf(kernel, force, true);
+      const squares = Float64Array.of(0.09, 0.16, 1);
+      const sums = sumsFor(3);
+      expect(kernels.inside(x, y, z, mass, 0, 2, 0, sums, 0, squares)).toBe(0);
+      expect(sums.phi[0]).toBeCloseTo(2 * f, 14);
+      expect(sums.phi[1]).toBeCloseTo(f, 14);
+      expect(sums.psi[0]).toBeCloseTo(sums.phi[0], 14);
+      const none = sumsFor(3);
+      expect(kernels.inside(x, y, z, mass, 0, 3, 0, none, 0, new Float64Array(3))).toBe(1);
+      [4 / 5, 4 / 5, 3 / 5].forEach((phi, i) => expect(none.phi[i]).toBeCloseTo(phi, 15));
+    }
   });
 });

@@ -92,7 +92,7 @@ export function changed(
  * them, with support 2.8 ε.
  */
 export function pairLaw({ kernel, length }: Softening, r: number): { f: number; s: number } {
-  if (kernel === 'none') return { f: 1 / r, s: 1 / (r * r * r) };
+  if (kernel === 'none' || length === 0) return { f: 1 / r, s: 1 / (r * r * r) };
   if (kernel === 'plummer') {
     const root = Math.sqrt(r * r + length * length);
     return { f: 1 / root, s: 1 / root ** 3 };
@@ -114,6 +114,16 @@ export function pairLaw({ kernel, length }: Softening, r: number): { f: number; 
       ? 32 / 3 - (192 / 5) * u ** 2 + 32 * u ** 3
       : 64 / 3 - 48 * u + (192 / 5) * u ** 2 - (32 / 3) * u ** 3 - 1 / (15 * u ** 3);
   return { f: -potential / h, s: force / h ** 3 };
+}
+
+/**
+ * The softening of one pair where bodies have lengths of their own: the root of the sum of both squares,
+ * with the spline the longer (no source: common practice).
+ */
+export function softeningOfPair({ kernel, length, lengths }: Softening, i: number, j: number) {
+  if (lengths === undefined) return { kernel, length };
+  const ofPair = kernel === 'spline' ? Math.max : Math.hypot;
+  return { kernel, length: ofPair(lengths[i], lengths[j]) };
 }
 
 export interface PlainField {
@@ -142,8 +152,9 @@ export function plainField({ x, y, z, mass }: Columns, softening: Softening): Pl
       const dy = y[j] - y[i];
       const dz = z[j] - z[i];
       const r = Math.sqrt(dx * dx + dy * dy + dz * dz);
-      if (r === 0 && softening.kernel === 'none') continue;
-      const { f, s } = pairLaw(softening, r);
+      const ofPair = softeningOfPair(softening, i, j);
+      const { f, s } = pairLaw(ofPair, r);
+      if (f === Infinity) continue;
       const w = s * r * r;
       phi[i] -= mass[j] * f;
       phi[j] -= mass[i] * f;
