@@ -74,10 +74,12 @@ export function sumTowards(
     const rt = G[gt + NODE_RADIUS];
     const rs = G[gs + NODE_RADIUS];
     if (each) meet(pair, S, t, S, s, ofSpread !== null);
+    // The cells above the branch, or the cell itself: never taken whole, however soft its field is.
+    const holdsBody = begin <= place && place < end;
     // Inside the branch cells act on each other both ways at once, or not at all.
     const both = begin >= branchBegin && end <= branchEnd;
     const ways = both ? 2 : 1;
-    if (n > ways * DIRECT_AT_ONCE) {
+    if (!holdsBody && n > ways * DIRECT_AT_ONCE) {
       const dx = G[gt] - G[gs];
       const dy = G[gt + 1] - G[gs + 1];
       const dz = G[gt + 2] - G[gs + 2];
@@ -103,7 +105,7 @@ export function sumTowards(
     }
     if (depth + 16 > stack.length) stack = longerStack(stack);
     const splitSource = each ? isWider(s, rs, S, t, rt, S) : rs >= rt;
-    if (!sLeaf && (tLeaf || splitSource)) {
+    if (!sLeaf && (tLeaf || holdsBody || splitSource)) {
       // A cell with itself is cut on both sides.
       const next = s === t ? step + 1 : step;
       const first = T[ps + NODE_CHILD];
@@ -119,6 +121,18 @@ export function sumTowards(
   path.forEach((slot, step) => {
     const g = slot * GEOMETRY;
     const at = step * localStride;
+    const child = path[step + 1];
+    if (ofSpread !== null && child !== undefined) {
+      // Of what a cell hands down, small terms are left out: only the same way gives the same sums.
+      const c = child * GEOMETRY;
+      const dx = G[c] - G[g];
+      const dy = G[c + 1] - G[g + 1];
+      const dz = G[c + 2] - G[g + 2];
+      const ds = (S[child * SPREAD + NODE_MEAN] - S[slot * SPREAD + NODE_MEAN]) / 2;
+      plain.passDown(locals, at, at + localStride, dx, dy, dz);
+      ofSpread.passDown(locals, at, at + localStride, dx, dy, dz, ds);
+      return;
+    }
     const dx = px - G[g];
     const dy = py - G[g + 1];
     const dz = pz - G[g + 2];

@@ -122,8 +122,8 @@ export function pairLaw({ kernel, length }: Softening, r: number): { f: number; 
  */
 export function softeningOfPair({ kernel, length, lengths }: Softening, i: number, j: number) {
   if (lengths === undefined) return { kernel, length };
-  const ofPair = kernel === 'spline' ? Math.max : Math.hypot;
-  return { kernel, length: ofPair(lengths[i], lengths[j]) };
+  const [a, b] = [lengths[i], lengths[j]];
+  return { kernel, length: kernel === 'spline' ? Math.max(a, b) : Math.sqrt(a * a + b * b) };
 }
 
 export interface PlainField {
