@@ -43,7 +43,9 @@ export async function describe(
     const found: SnapshotDescription[] = [];
     const code = await eachPath(files, streams, async (file) => {
       const [prepared] = await prepareSnapshots([file], survey);
-      const description = await describeSnapshot(file, prepared.options.read);
+      // Another part of the same snapshot has been described.
+      if (prepared.parts !== null && found.some((one) => one.file === prepared.file)) return;
+      const description = await describeSnapshot(prepared.file, prepared.options.read);
       if (format === 'table') {
         await sink((found.length > 0 ? '\n' : '') + descriptionTable(description, paint));
       }

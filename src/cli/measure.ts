@@ -79,13 +79,15 @@ export async function measure(
     read: await readOptionsOf({ layout, columns, only, group, within, about }, streams.interrupt),
   };
   extrasNamed(options.with ?? []); // A name that is not known is told before anything is read.
-  const files: string[] = [];
+  const found: string[] = [];
   const before = await eachPath(args, streams, async (arg) => {
-    files.push(...(await findSnapshots([arg])));
+    found.push(...(await findSnapshots([arg])));
   });
-  await refuseOverwriting(out, files);
-  const snapshots = await prepareSnapshots(files, survey);
-  const isSeveral = args.length > 1 || files.length > 1;
+  await refuseOverwriting(out, found);
+  const snapshots = await prepareSnapshots(found, survey);
+  const files = snapshots.map(({ file }) => file);
+  const isInParts = snapshots.length === 1 && snapshots[0].parts !== null;
+  const isSeveral = (args.length > 1 && !isInParts) || files.length > 1;
   const remarksApart = !quiet && (format !== 'table' || out !== undefined);
 
   const asksFor = snapshots.find((snapshot) => snapshot.threads !== null)?.threads ?? undefined;

@@ -114,7 +114,7 @@ async function measureAll(
       let done = 0;
       for await (const { file, record, error } of await measureFiles(snapshots, survey, crew)) {
         await turn(streams.interrupt);
-        progress.say(`${file}, ${done + 1} of ${files.length}`, ++done / files.length);
+        progress.say(`${file}, ${done + 1} of ${snapshots.length}`, ++done / snapshots.length);
         if (error === null) records.push(record);
         else if (error instanceof InputError || error instanceof UnanswerableError) {
           progress.clear();

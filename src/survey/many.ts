@@ -3,10 +3,10 @@ import type { MeasureRecord } from '../dynamics/record.ts';
 import { InputError, UnanswerableError, UsageError, type SettlemarkError } from '../errors.ts';
 import type { Crew, TaskModule } from '../parallel/crew.ts';
 import { received } from '../parallel/protocol.ts';
-import { fileBytes } from '../snapshot/files.ts';
+import { snapshotBytes } from '../snapshot/parts.ts';
 import { measurePrepared, type SurveyOptions } from './measure.ts';
 import type * as MeasureTask from './measure.task.ts';
-import { prepareSnapshots, type PreparedSnapshot } from './prepare.ts';
+import { eachOnce, prepareEach, type PreparedSnapshot } from './prepare.ts';
 
 const TASK: TaskModule<typeof MeasureTask> = {
   url: new URL('./measure.task.js', import.meta.url),
@@ -66,12 +66,12 @@ async function prepareAll(
   const paths = snapshots.filter((snapshot) => typeof snapshot === 'string');
   let prepared: Iterator<Entry>;
   try {
-    prepared = (await prepareSnapshots(paths, options)).values();
+    prepared = (await prepareEach(paths, options)).values();
   } catch (error) {
     if (!isOfInput(error)) throw error;
     const each = paths.map(async (file): Promise<Entry> => {
       try {
-        return (await prepareSnapshots([file], options))[0];
+        return (await prepareEach([file], options))[0];
       } catch (reason) {
         if (!isOfInput(reason)) throw reason;
         return { file, record: null, error: reason };
@@ -79,8 +79,10 @@ async function prepareAll(
     });
     prepared = (await Promise.all(each)).values();
   }
-  return snapshots.map((snapshot) =>
-    typeof snapshot === 'string' ? (prepared.next().value as Entry) : snapshot,
+  return eachOnce(
+    snapshots.map((snapshot) =>
+      typeof snapshot === 'string' ? (prepared.next().value as Entry) : snapshot,
+    ),
   );
 }
 
@@ -123,14 +125,14 @@ async function smallFiles(
   const some = entries.slice(begin, begin + crew.threads * FILES_A_WORKER);
   const bad = some.findIndex(isFailed);
   const good = (bad < 0 ? some : some.slice(0, bad)) as PreparedSnapshot[];
-  const small = await Promise.all(good.map(({ file }) => isSmall(file)));
+  const small = await Promise.all(good.map(isSmall));
   const end = small.indexOf(false);
   return end < 0 ? good : good.slice(0, end);
 }
 
 /** A path that cannot be looked at is left to the reader, which says what is wrong with it. */
-async function isSmall(path: string): Promise<boolean> {
-  return path !== '-' && ((await fileBytes(path)) ?? Infinity) <= SMALL_BYTES;
+async function isSmall(snapshot: PreparedSnapshot): Promise<boolean> {
+  return snapshot.file !== '-' && ((await snapshotBytes(snapshot)) ?? Infinity) <= SMALL_BYTES;
 }
 
 async function measureTogether(

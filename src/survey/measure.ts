@@ -42,7 +42,7 @@ export async function measureFile(
 
 /** {@link measureFile} for a snapshot whose options are settled. */
 export async function measurePrepared(
-  { file, options, runFile }: PreparedSnapshot,
+  { file, parts, options, runFile }: PreparedSnapshot,
   watch: Pick<SurveyOptions, 'read' | 'onStage'>,
   crew: Crew,
 ): Promise<MeasureRecord> {
@@ -60,7 +60,12 @@ export async function measurePrepared(
   };
   return reusingMemory(async () => {
     const moreBytes = options.forces === 'file' ? BYTES_OF_FILE_FORCES : 0;
-    await requireMemory(file, options.read ?? {}, (options.softening ?? 0) > 0, moreBytes);
+    await requireMemory(
+      { file, parts },
+      options.read ?? {},
+      (options.softening ?? 0) > 0,
+      moreBytes,
+    );
     const particles = await readSnapshot(file, read, crew);
     const readSeconds = (performance.now() - start) / 1000;
     const { onStage } = watch;

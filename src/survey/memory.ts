@@ -1,7 +1,7 @@
 /** Memory that a measurement will take, asked for before anything is read. */
 import { freemem } from 'node:os';
 import { InputError, UsageError } from '../errors.ts';
-import { fileBytes } from '../snapshot/files.ts';
+import { snapshotBytes, type JoinedFile } from '../snapshot/parts.ts';
 import { describeSnapshot } from '../snapshot/read.ts';
 import type { ReadOptions, SnapshotDescription } from '../snapshot/reading.ts';
 import { isSelecting } from '../snapshot/select.ts';
@@ -51,13 +51,14 @@ export function memoryNeeded(
  * @throws InputError `input.tooLarge`
  */
 export async function requireMemory(
-  path: string,
+  snapshot: JoinedFile,
   options: ReadOptions,
   softened: boolean,
   moreBytes: number,
   available?: number,
 ): Promise<void> {
-  if (path === '-' || ((await fileBytes(path)) ?? 0) < ASK_ABOVE_BYTES) return;
+  const { file: path } = snapshot;
+  if (path === '-' || ((await snapshotBytes(snapshot)) ?? 0) < ASK_ABOVE_BYTES) return;
   const description = await describeSnapshot(path, options, 'no values');
   // How many bodies a selection leaves is not known before: those that are read must fit.
   const needed = isSelecting(options)

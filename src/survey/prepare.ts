@@ -2,13 +2,17 @@
 import { dirname } from 'node:path';
 import type { MeasureOptions } from '../dynamics/settings.ts';
 import { loadUnits } from '../snapshot/ownUnits.ts';
+import { joinFiles } from '../snapshot/parts.ts';
 import type { ReadOptions } from '../snapshot/reading.ts';
 import type { SurveyOptions } from './measure.ts';
 import { findRunFile, readRunFile, type RunFile, type RunSettings } from './runFile.ts';
 
 /** A snapshot and how it will be read and measured. */
 export interface PreparedSnapshot {
+  /** Its file; of a snapshot in parts the first of them. */
   readonly file: string;
+  /** Files of a snapshot in parts, as far as they are there; null for others. */
+  readonly parts: readonly string[] | null;
   readonly options: Omit<SurveyOptions, 'runFile' | 'onStage'>;
   /** Path of the run file whose defaults are among the options, or null. */
   readonly runFile: string | null;
@@ -18,15 +22,35 @@ export interface PreparedSnapshot {
 
 /**
  * Settles the options of each snapshot. Run files are looked for in the folders of the snapshots,
- * once each, unless `options.runFile` names one for all or is false.
+ * once each, unless `options.runFile` names one for all or is false. Files that are parts of one
+ * snapshot, as their layout says, are one.
  * @throws UsageError and InputError of `readRunFile` and `loadUnits`
  */
 export async function prepareSnapshots(
   files: readonly string[],
   options: SurveyOptions = {},
 ): Promise<PreparedSnapshot[]> {
-  const settled = new Map<string | null, Promise<Omit<PreparedSnapshot, 'file'>>>();
-  const prepared: PreparedSnapshot[] = [];
+  return eachOnce(await prepareEach(files, options));
+}
+
+/** Of the same snapshot in parts only the first entry. */
+export function eachOnce<T extends { readonly file: string }>(entries: readonly T[]): T[] {
+  const seen = new Set<string>();
+  return entries.filter((entry) => {
+    if (!('parts' in entry) || entry.parts === null) return true;
+    const isNew = !seen.has(entry.file);
+    seen.add(entry.file);
+    return isNew;
+  });
+}
+
+/** {@link prepareSnapshots} with an entry for each file, in their order. */
+export async function prepareEach(
+  files: readonly string[],
+  options: SurveyOptions,
+): Promise<PreparedSnapshot[]> {
+  const settled = new Map<string | null, Promise<Omit<PreparedSnapshot, 'file' | 'parts'>>>();
+  const prepared: Omit<PreparedSnapshot, 'parts'>[] = [];
   for (const file of files) {
     const folder = file === '-' ? null : dirname(file);
     let rest = settled.get(folder);
@@ -36,7 +60,10 @@ export async function prepareSnapshots(
     }
     prepared.push({ file, ...(await rest) });
   }
-  return prepared;
+  const joined = await joinFiles(
+    prepared.map(({ file, options: { read } }) => ({ file, layout: read?.layout })),
+  );
+  return prepared.map((entry, k) => ({ ...entry, ...joined[k] }));
 }
 
 async function runFileOf(
@@ -53,7 +80,7 @@ async function overlay(
   options: SurveyOptions,
   run: RunFile | null,
   file: string,
-): Promise<Omit<PreparedSnapshot, 'file'>> {
+): Promise<Omit<PreparedSnapshot, 'file' | 'parts'>> {
   const stated = defined(options) as Stated;
   const read = defined(options.read ?? {}) as ReadOptions;
   for (const key of ['runFile', 'onStage', 'read'] as const) delete stated[key];

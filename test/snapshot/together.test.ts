@@ -270,3 +270,33 @@ it('tells progress up to the last byte, and stops when it is told to', async () 
     }
   }
 });
+
+it('parts of a snapshot are loaded by all workers to what one thread gives, in their order', async () => {
+  const each = 90_000;
+  const vector = (name: string) => ({ name, type: 'float64', width: 3 });
+  const fields = [{ name: 'mass', type: 'float64' }, vector('position'), vector('velocity')];
+  const read = await putLayout('parts', { fields, parts: 'part_{part}.bin' });
+  const paths: string[] = [];
+  for (const k of [0, 1]) {
+    const values = Float64Array.from({ length: 7 * each }, (_, i) => ((i * 7 + k) % 1013) / 8);
+    paths.push(await put(`part_${k}.bin`, new Uint8Array(values.buffer)));
+  }
+  let told = 0;
+  const onProgress = (done: number, all: number) => (told = done / all);
+  const [alone, ...together] = await Promise.all(
+    crews.map((crew) => readSnapshot(paths[1], { ...read, onProgress }, crew)),
+  );
+  expect(alone.count).toBe(2 * each);
+  // The first mass of the second file follows the last of the first.
+  expect(alone.mass[each]).toBe(1 / 8);
+  for (const particles of together) expect(contentOf(particles)).toEqual(contentOf(alone));
+  expect(told).toBe(1);
+  // What is wrong with the second file is told as of that file.
+  await truncate(paths[1], 56 * each - 1);
+  for (const crew of crews) {
+    await expect(readSnapshot(paths[0], read, crew)).rejects.toMatchObject({
+      code: 'input.partialRecord',
+      message: expect.stringContaining('part_1.bin') as string,
+    });
+  }
+});

@@ -7,6 +7,7 @@ import { memoryNeeded, requireMemory, requireMemoryToMake } from '../../src/surv
 import { describeSnapshot } from '../../src/snapshot/read.ts';
 
 const COUNT = 6_000_000;
+const alone = (file: string) => ({ file, parts: null });
 let folder = '';
 let large = '';
 
@@ -22,7 +23,7 @@ beforeAll(async () => {
 afterAll(() => rm(folder, { recursive: true }));
 
 it('refuses what will not fit, and says how much it takes and what is free', async () => {
-  await expect(requireMemory(large, {}, false, 0, 1e9)).rejects.toMatchObject({
+  await expect(requireMemory(alone(large), {}, false, 0, 1e9)).rejects.toMatchObject({
     code: 'input.tooLarge',
     message: expect.stringMatching(
       /large\.bin holds 6000000 bodies, .* 1\.\d+ GB .* 1\.00 GB are free/,
@@ -32,11 +33,11 @@ it('refuses what will not fit, and says how much it takes and what is free', asy
 });
 
 it('lets through what fits, and leaves small and missing files to the reader', async () => {
-  await expect(requireMemory(large, {}, false, 0, 2e9)).resolves.toBeUndefined();
+  await expect(requireMemory(alone(large), {}, false, 0, 2e9)).resolves.toBeUndefined();
   await expect(
-    requireMemory(join(folder, 'missing.bin'), {}, false, 0, 1),
+    requireMemory(alone(join(folder, 'missing.bin')), {}, false, 0, 1),
   ).resolves.toBeUndefined();
-  await expect(requireMemory('-', {}, false, 0, 1)).resolves.toBeUndefined();
+  await expect(requireMemory(alone('-'), {}, false, 0, 1)).resolves.toBeUndefined();
 });
 
 it('asks for the columns in their precision, and more with softening', async () => {

@@ -1,8 +1,8 @@
-/** Pieces of the blocks of a raw file → columns, each through one reused chunk. */
+/** Pieces of the blocks of raw files → columns, each through one reused chunk. */
 import { InputError } from '../../errors.ts';
 import type { TakeJob } from '../../parallel/crew.ts';
 import { readExactly, type OpenFile } from '../files.ts';
-import type { Piece, Target } from './bodies.ts';
+import type { Load, Piece, Target } from './bodies.ts';
 import { decodeIds, decodeReals, giveChunk, takeChunk, type Chunk } from './decode.ts';
 import type { LayoutField } from './layout.ts';
 import type { Segment } from './markers.ts';
@@ -10,25 +10,26 @@ import type { Block, RawStructure } from './structure.ts';
 import { NATIVE_ORDER, TYPE_BYTES, type ByteOrder } from './types.ts';
 
 export interface PiecesRound {
-  readonly file: OpenFile;
-  readonly structure: RawStructure;
-  readonly targets: readonly Target[];
+  readonly loads: readonly Load[];
   readonly pieces: readonly Piece[];
 }
 
 /** A job is a piece. @throws InputError `input.markers`, `input.changed`, `input.unreadable` */
 export async function decodePieces(round: PiecesRound, takeJob: TakeJob): Promise<void> {
-  const { file, structure, targets, pieces } = round;
+  const { loads, pieces } = round;
   const chunk = takeChunk(pieces.reduce((most, { bytes }) => Math.max(most, bytes), 0));
-  const decoders = structure.blocks.map((block) =>
-    decoderOf(file, structure, block, placeTargets(block, targets), chunk),
+  const decoders = loads.map(({ file, structure, targets }) =>
+    structure.blocks.map((block) =>
+      decoderOf(file, structure, block, placeTargets(block, targets), chunk),
+    ),
   );
   try {
     for (let job = takeJob(); job >= 0; job = takeJob()) {
-      const { block, body, first, at, count, bytes } = pieces[job];
+      const { load, block, body, first, at, count, bytes } = pieces[job];
+      const { file, structure } = loads[load];
       const { segments, stride } = structure.blocks[block];
       await readStretch(file, segments, body * stride, bytes, chunk.bytes);
-      decoders[block](first, at, count);
+      decoders[load][block](first, at, count);
     }
   } finally {
     giveChunk(chunk);

@@ -1,5 +1,5 @@
-/** Bodies of a raw file into columns: cut into pieces, loaded by one thread or by all of a crew. */
-import { crewOfOne, type TaskModule } from '../../parallel/crew.ts';
+/** Bodies of raw files into columns: cut into pieces, loaded by one thread or by all of a crew. */
+import { crewOfOne, type Crew, type TaskModule } from '../../parallel/crew.ts';
 import type { OpenFile } from '../files.ts';
 import type { FloatColumn, IdColumn } from '../particles.ts';
 import { bytesOf, crewFor, PIECE_BYTES, watchOf, type LoadOptions } from '../pieces.ts';
@@ -25,8 +25,18 @@ export interface BodyRange {
   readonly end: number;
 }
 
+/** What is read of one file: the bodies of `ranges`, into the targets from index 0 on. */
+export interface Load {
+  readonly file: OpenFile;
+  readonly structure: RawStructure;
+  readonly targets: readonly Target[];
+  readonly ranges: readonly BodyRange[];
+}
+
 /** Bodies `body` … of a block, `first` … of the file, which go to index `at` … of the targets. */
 export interface Piece {
+  /** Index of the load. */
+  readonly load: number;
   readonly block: number;
   readonly body: number;
   readonly first: number;
@@ -47,21 +57,27 @@ export async function readBodies(
   targets: readonly Target[],
   ranges: readonly BodyRange[],
   options: LoadOptions,
+  crew?: Crew,
+): Promise<void> {
+  await readLoads([{ file, structure, targets, ranges }], options, crew);
+}
+
+/** {@link readBodies} of several files at once, all workers on all of them. */
+export async function readLoads(
+  loads: readonly Load[],
+  options: LoadOptions,
   crew = crewOfOne(),
 ): Promise<void> {
-  const pieces = piecesOf(structure, targets, ranges);
+  const pieces = loads.flatMap(piecesOf);
   // Codes of components are numbered as they are met: one thread after the other.
-  const inOrder = targets.some(({ kind }) => kind === 'components');
+  const inOrder = loads.some(({ targets }) => targets.some(({ kind }) => kind === 'components'));
   const workers = inOrder ? crewOfOne() : crewFor(bytesOf(pieces), crew);
-  const round = { file, structure, targets, pieces };
+  const round = { loads, pieces };
   await workers.run(TASK, 'decodePieces', round, pieces.length, watchOf(pieces, options));
 }
 
-function piecesOf(
-  { blocks }: RawStructure,
-  targets: readonly Target[],
-  ranges: readonly BodyRange[],
-): Piece[] {
+function piecesOf({ structure, targets, ranges }: Load, load: number): Piece[] {
+  const { blocks } = structure;
   const fields = new Set(targets.flatMap(({ sources }) => sources.map(({ field }) => field)));
   const pieces: Piece[] = [];
   blocks.forEach(({ fields: placed, stride, runs }, block) => {
@@ -74,7 +90,7 @@ function piecesOf(
         for (let first = Math.max(begin, run.at); first < last; first += most) {
           const count = Math.min(most, last - first);
           const [body, at] = [run.body + first - run.at, passed + first - begin];
-          pieces.push({ block, body, first, at, count, bytes: count * stride });
+          pieces.push({ load, block, body, first, at, count, bytes: count * stride });
         }
         passed += end - begin;
       }

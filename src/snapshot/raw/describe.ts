@@ -5,17 +5,19 @@ import { allocateColumn, type FloatColumn, type Particles, type Remark } from '.
 import {
   FIELD_NAMES,
   type DescribedColumn,
+  type DescribedComponent,
   type FieldName,
   type ReadOptions,
   type SnapshotDescription,
 } from '../reading.ts';
 import { screenSample } from '../screen.ts';
 import { readBodies, type BodyRange, type Target } from './bodies.ts';
-import { findLayout } from './find-layout.ts';
+import { findLayout, type FoundLayout } from './find-layout.ts';
 import { layOverOrExplain } from './fit.ts';
 import { frameOf } from './frame.ts';
 import type { PlacedComponent } from './components.ts';
 import { describeLayout, isHeldBy, isSkip, type Layout, type LayoutField } from './layout.ts';
+import { findParts, partsJoined, totalOf, type RawPart } from './parts.ts';
 import { planColumns, QUANTITIES, similarNames, type Plan, type Quantity } from './plan.ts';
 import { columnType, statedValues } from './read.ts';
 import type { RawStructure } from './structure.ts';
@@ -33,8 +35,47 @@ export async function describeRaw(
   path: string,
   options: ReadOptions,
 ): Promise<SnapshotDescription> {
+  const found = await findLayout(path, options.layout);
+  const { layout } = found;
+  if (layout.parts === undefined) return describeFile(path, path, found, options);
+  const parts = await findParts(path, found);
+  const withBodies = parts.filter(({ structure }) => structure !== null);
+  const sample = withBodies.find((part) => part.path === path) ?? withBodies[0];
+  const described = await describeFile(sample.path, path, found, options);
+  return {
+    ...described,
+    bytes: parts.reduce((sum, { bytes }) => sum + bytes, 0),
+    count: totalOf(parts),
+    components: componentsOf(parts),
+    remarks: [partsJoined(parts), ...described.remarks],
+  };
+}
+
+/** Kinds of bodies of all parts; a mass is stated if it is the same in all of them. */
+function componentsOf(parts: readonly RawPart[]): DescribedComponent[] {
+  const all = new Map<string, { name: string; count: number; mass: number | null }>();
+  for (const { name, count, mass } of parts.flatMap(
+    ({ structure }) => structure?.components ?? [],
+  )) {
+    const known = all.get(name);
+    if (known === undefined) all.set(name, { name, count, mass });
+    else {
+      if (known.count === 0) known.mass = mass;
+      else if (count > 0 && mass !== known.mass) known.mass = null;
+      known.count += count;
+    }
+  }
+  return [...all.values()];
+}
+
+/** @param name - the snapshot as it was named */
+async function describeFile(
+  path: string,
+  name: string,
+  found: FoundLayout,
+  options: ReadOptions,
+): Promise<SnapshotDescription> {
   return withInput(path, async (file) => {
-    const found = await findLayout(path, options.layout);
     const { layout } = found;
     const structure = await layOverOrExplain(file, layout, found.file);
     const ranges = sampleRanges(structure.count);
@@ -43,7 +84,7 @@ export async function describeRaw(
     const planned = tryPlan(path, layout, options);
     const stated = statedValues(path, structure);
     return {
-      file: path,
+      file: name,
       format: 'raw',
       bytes: file.size,
       count: structure.count,

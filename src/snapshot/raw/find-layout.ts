@@ -39,6 +39,14 @@ export async function findLayout(path: string, given: string | undefined): Promi
   return { layout: await loadLayout(file), file, remarks: [remark] };
 }
 
+/** Path of the layout file that {@link findLayout} takes, or null for the default. */
+export async function layoutFileOf(
+  path: string,
+  given: string | undefined,
+): Promise<string | null> {
+  return given ?? (await besideData(path)).file;
+}
+
 function ambiguous(path: string, candidates: readonly string[]): Remark {
   return {
     code: 'layout.ambiguous',

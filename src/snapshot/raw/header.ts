@@ -70,7 +70,11 @@ export function statedCount(
 }
 
 /** A value of the header as a count. @throws InputError `input.badCount` */
-export function countOf(file: OpenFile, what: string, value: number | bigint): bigint {
+export function countOf(
+  file: Pick<OpenFile, 'path'>,
+  what: string,
+  value: number | bigint,
+): bigint {
   if (typeof value === 'bigint' ? value >= 0n : Number.isInteger(value) && value >= 0) {
     return BigInt(value);
   }

@@ -7,16 +7,11 @@ import { expectation, foundText, keyPath, lookUp, offer, type Issue } from '../s
 import { checkMeaning } from './layout-meaning.ts';
 import { LAYOUT_KEYS, layoutSchema, type Layout } from './layout.ts';
 
-/** Keys of the format that this version does not read yet. */
-const NOT_YET: Readonly<Record<string, string>> = {
-  parts: 'Join the parts to one file, or measure them one by one.',
-};
-
 /**
  * Parses and checks a layout.
  * @param text - JSON
  * @param file - name for messages
- * @throws InputError `input.layoutNotJson`, `input.layoutInvalid`, `input.layoutUnsupported`
+ * @throws InputError `input.layoutNotJson`, `input.layoutInvalid`
  */
 export function parseLayout(text: string, file: string): Layout {
   const value = parseJson(text, (at, cause) => {
@@ -32,17 +27,6 @@ export function parseLayout(text: string, file: string): Layout {
 
 /** Checks a layout given as an object; errors as {@link parseLayout}. */
 export function checkLayout(value: unknown, file: string): Layout {
-  if (typeof value === 'object' && value !== null) {
-    for (const [key, remedy] of Object.entries(NOT_YET)) {
-      if (key in value) {
-        throw new InputError(
-          'input.layoutUnsupported',
-          `${file}: "${key}" is not supported by this version`,
-          remedy,
-        );
-      }
-    }
-  }
   const result = layoutSchema.safeParse(value);
   if (!result.success) throw invalid(file, value, result.error.issues);
   checkMeaning(result.data, file);

@@ -13,6 +13,7 @@ export function checkMeaning(layout: Layout, file: string): void {
   checkFields(layout, refuse);
   checkStatedOnce(layout, refuse);
   checkComoving(layout, refuse);
+  checkParts(layout, refuse);
   checkHeader(layout, refuse);
 }
 
@@ -244,6 +245,26 @@ function checkComoving(layout: Layout, refuse: Refuse): void {
       'comoving',
       'found no rate of expansion; expected hubbleRate, or hubbleConstant and matterDensity',
       'Say { "header": "NAME" } if the header holds it, or 0 for a box that does not expand.',
+    );
+  }
+}
+
+function checkParts({ parts }: Layout, refuse: Refuse): void {
+  if (parts === undefined) return;
+  const example = 'Write it as "run_{part}.bin", or "run_*_{part}.bin" for a series.';
+  const places = parts.split('{part}').length - 1;
+  if (places !== 1) {
+    refuse('parts', `found {part} ${places} times in "${parts}"; expected it once`, example);
+  }
+  if (/[/\\]/.test(parts)) {
+    refuse('parts', `found a folder in "${parts}"; expected the name of a file alone`, example);
+  }
+  // A number beside * could begin anywhere.
+  if (/\*\{part\}|\{part\}[*0-9]|[0-9]\{part\}|\*\*/.test(parts)) {
+    refuse(
+      'parts',
+      `found "${parts}", in which it is not clear where the number begins and ends; expected a letter or sign on both sides of it`,
+      example,
     );
   }
 }

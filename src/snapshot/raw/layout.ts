@@ -156,6 +156,13 @@ export const layoutSchema = z
     fields: z.array(z.union([field, skip])).min(1),
     constants: constants.optional(),
     comoving: comoving.optional(),
+    parts: z
+      .string()
+      .min(1)
+      .optional()
+      .describe(
+        'a snapshot lies in several files, whose names are this with a number for {part}; * stands for what is the same in all files of one snapshot and differs between snapshots',
+      ),
     units: z.enum(unitNames).optional().describe('system of units; sets G unless gravity is given'),
   })
   .meta({
@@ -235,6 +242,7 @@ export function describeLayout(layout: Layout): string {
   });
   const parts = [`${layout.byteOrder}-endian`, ARRANGEMENT_TEXT[layout.arrangement]];
   if (layout.markers !== 'none') parts.push(`${layout.markers} markers`);
+  if (layout.parts !== undefined) parts.push(`parts ${layout.parts}`);
   if (layout.headerBytes > 0) parts.push(`header of ${layout.headerBytes} bytes`);
   return `${parts.join(', ')}: ${fields.join(', ')}`;
 }

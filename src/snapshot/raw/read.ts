@@ -48,6 +48,9 @@ export async function readRawFile(
   crew?: Crew,
 ): Promise<Particles> {
   const found = await findLayout(file.path, options.layout);
+  if (found.layout.parts !== undefined) {
+    return (await import('./parts.ts')).readParts(file.path, found, options, crew);
+  }
   const structure = await layOverOrExplain(file, found.layout, found.file);
   const plan = planColumns(file.path, found.layout, options);
   const columns = allocate(file, structure.count, plan, found.layout);
@@ -65,9 +68,15 @@ export async function readRawFile(
 
 const ID_QUANTITIES: ReadonlySet<Quantity> = new Set(['id', 'group', 'subgroup']);
 
-type Columns = ReadonlyMap<Quantity, Target>;
+export type Columns = ReadonlyMap<Quantity, Target>;
 
-function allocate(file: OpenFile, count: number, plan: Plan, layout: Layout): Columns {
+/** Columns for so many bodies. @throws InputError `input.tooLarge` */
+export function allocate(
+  file: Pick<OpenFile, 'path'>,
+  count: number,
+  plan: Plan,
+  layout: Layout,
+): Columns {
   try {
     return new Map(
       [...plan].map(([quantity, sources]) => [
@@ -87,7 +96,7 @@ function allocate(file: OpenFile, count: number, plan: Plan, layout: Layout): Co
 }
 
 function allocateTarget(
-  file: OpenFile,
+  file: Pick<OpenFile, 'path'>,
   count: number,
   quantity: Quantity,
   sources: Sources,
@@ -129,7 +138,8 @@ function fillStated(structure: RawStructure, quantity: StatedQuantity, column: F
   }
 }
 
-function assemble(
+/** Particles of the columns that were read, and what the layout states of them. */
+export function assemble(
   path: string,
   found: FoundLayout,
   structure: RawStructure,

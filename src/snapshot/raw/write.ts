@@ -41,6 +41,13 @@ export async function writeRaw(
   layout: Layout = DEFAULT_LAYOUT,
   options: WriteOptions = {},
 ): Promise<void> {
+  if (layout.parts !== undefined) {
+    throw new InputError(
+      'input.layoutUnsupported',
+      `${path}: the layout has the key "parts", and one file is written`,
+      'Remove the key from the layout to write.',
+    );
+  }
   checkConstants(path, particles, layout);
   const components = writtenComponents(path, particles, layout);
   const header = headerOf(path, particles, layout, components ?? []);

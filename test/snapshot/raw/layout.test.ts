@@ -165,14 +165,21 @@ describe('a layout that is wrong', () => {
     );
   });
 
-  it.each(['parts'])('says that %s come later', (key) => {
-    expect(() => checkLayout({ ...FULL, [key]: [] }, 'l.json')).toThrow(
+  it.each([
+    ['run.bin', '0 times'],
+    ['{part}_{part}', '2 times'],
+    ['parts/run_{part}.bin', 'a folder'],
+    ['run_*{part}.bin', 'where the number begins'],
+    ['run1{part}.bin', 'where the number begins'],
+    ['', 'parts'],
+  ])('refuses the parts %j', (parts, text) => {
+    expect(() => checkLayout({ ...FULL, parts }, 'l.json')).toThrow(
       expect.objectContaining({
-        code: 'input.layoutUnsupported',
-        message: expect.stringContaining(`"${key}" is not supported by this version`) as string,
-        remedy: expect.any(String) as string,
+        code: 'input.layoutInvalid',
+        message: expect.stringContaining(text) as string,
       }),
     );
+    expect(checkLayout({ ...FULL, parts: 'a_*_{part}.x' }, 'l.json').parts).toBe('a_*_{part}.x');
   });
 
   it('takes any name for a field, those of object members too', () => {
