@@ -114,6 +114,7 @@ export class DistributionFunction {
     const isDeep = this.rooted !== null && depth < whole;
     const proposal = isDeep ? this.rooted : this.plain;
     const all = proposal.beyond(first, start);
+    if (Number.isNaN(all)) throw new RangeError(`the distribution function at r = ${r} is NaN`);
     const potential = well.potential(r);
     for (;;) {
       const at = proposal.placeOf(all * random.openUniform(), first);

@@ -82,7 +82,7 @@ export function planSphere(options: SphereOptions, owner = ''): SpherePlan {
   });
   const cut = options.cut ?? Infinity;
   requirePositive(`${owner}cut`, options.cut);
-  requireLengths(options, owner);
+  requireRatios(options, owner);
   const models = given.map(modelOf);
   const components = given.map((component, k): ComponentPlan => {
     const { scaleRadius = 1, mass = 1, name } = component;
@@ -108,16 +108,23 @@ export function planSphere(options: SphereOptions, owner = ''): SpherePlan {
 
 /** How far apart two lengths of one sphere may be: the inversion resolves all that lies between. */
 const MOST_RATIO = 1e10;
+/** The same for masses: their powers must stay far inside the range of doubles. */
+const MOST_MASS_RATIO = 1e30;
 
-/** @throws UsageError `usage.modelOption` if lengths of a sphere are too far apart */
-function requireLengths(options: SphereOptions, owner: string): void {
-  const { scaleRadius: first = 1, second } = options;
+/** @throws UsageError `usage.modelOption` if lengths or masses of a sphere are too far apart */
+function requireRatios(options: SphereOptions, owner: string): void {
+  const { scaleRadius: first = 1, mass: firstMass = 1, second } = options;
   const components = second === undefined ? [options] : [options, second];
+  const massRatio = (second?.mass ?? 1) / (second === undefined ? 1 : firstMass);
+  if (!(massRatio >= 1 / MOST_MASS_RATIO && massRatio <= MOST_MASS_RATIO)) {
+    const expected = `within a factor of ${MOST_MASS_RATIO} of ${firstMass}, the mass of the first component`;
+    throw optionError(`${owner}second.mass`, second?.mass ?? 1, expected);
+  }
   components.forEach(({ scaleRadius = 1, anisotropyRadius = Infinity }, k) => {
     const prefix = k === 0 ? owner : `${owner}second.`;
     const ratio = scaleRadius / first;
     if (!(ratio >= 1 / MOST_RATIO && ratio <= MOST_RATIO)) {
-      const expected = `from ${first / MOST_RATIO} to ${first * MOST_RATIO}, the scale radius of the first component over and times ${MOST_RATIO}`;
+      const expected = `within a factor of ${MOST_RATIO} of ${first}, the scale radius of the first component`;
       throw optionError(`${prefix}scaleRadius`, scaleRadius, expected);
     }
     if (!(anisotropyRadius >= scaleRadius / MOST_RATIO)) {

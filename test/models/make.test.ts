@@ -210,7 +210,12 @@ describe('makeModel', () => {
     [
       { scaleRadius: 2, second: { model: 'jaffe', count: 1, scaleRadius: 1e11 } },
       'usage.modelOption',
-      ['--second scale-radius', 'to 20000000000,'],
+      ['--second scale-radius', 'within a factor of 10000000000 of 2'],
+    ],
+    [
+      { second: { model: 'plummer', count: 1, mass: 1e31 } },
+      'usage.modelOption',
+      ['--second mass', 'within a factor'],
     ],
     [{ second: { model: 'uniform', count: 1 } }, 'usage.modelOption', ['uniform']],
     [
