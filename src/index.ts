@@ -23,6 +23,7 @@ import type { Particles } from './snapshot/particles.ts';
 import type { Units } from './snapshot/ownUnits.ts';
 import type { FieldName, ReadOptions, SnapshotDescription } from './snapshot/reading.ts';
 import type { AveragedBalance } from './survey/average.ts';
+import type { Conversion, ConvertOptions } from './survey/convert.ts';
 import type { MakeSnapshotOptions } from './survey/make.ts';
 import type { FileOutcome } from './survey/many.ts';
 import type { SurveyOptions } from './survey/measure.ts';
@@ -92,6 +93,7 @@ export type {
   Particles,
   Remark,
   Selection,
+  Unread,
   VelocityForm,
 } from './snapshot/particles.ts';
 export type {
@@ -101,6 +103,8 @@ export type {
   SnapshotDescription,
 } from './snapshot/reading.ts';
 export type { AveragedBalance } from './survey/average.ts';
+export type { Conversion, ConvertOptions } from './survey/convert.ts';
+export type { Difference } from './snapshot/comparison.ts';
 export type { MakeSnapshotOptions } from './survey/make.ts';
 export type { FileOutcome } from './survey/many.ts';
 export type { Stage, SurveyOptions } from './survey/measure.ts';
@@ -342,6 +346,22 @@ export async function* leapfrog(
   crew: Crew,
 ): AsyncGenerator<Particles> {
   yield* (await import('./models/leapfrog.ts')).leapfrog(start, options, crew);
+}
+
+/**
+ * Converts a snapshot to another format or layout. What was written is read again and compared bit for
+ * bit before it gets its name.
+ * @param from - a file, or `-` for an Arrow stream on standard input
+ * @throws InputError `input.wouldBeLost`, `input.wouldBeRounded`, and those of reader and writer;
+ * UsageError; InterruptedError
+ */
+export async function convertSnapshot(
+  from: string,
+  to: string,
+  options: ConvertOptions = {},
+  crew?: Crew,
+): Promise<Conversion> {
+  return (await import('./survey/convert.ts')).convertSnapshot(from, to, options, crew);
 }
 
 /**

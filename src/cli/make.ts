@@ -45,8 +45,6 @@ const SETTINGS = [
   'softening',
   'softeningKernel',
 ] as const;
-const ARROW_ENDINGS = ['.arrow', '.arrows', '.feather', '.ipc'];
-const RAW_ENDINGS = ['.bin', '.raw', '.dat'];
 
 /** Makes the model, scales it if wanted, and writes it. */
 export async function make(
@@ -57,7 +55,7 @@ export async function make(
   const { format: asked, threads, quiet = false, seed = 1 } = options;
   const count = required('--count', 'the number of bodies', options.count);
   const out = required('--out', 'the file to write', options.out);
-  const format = asked ?? formatByEnding(out);
+  const format = asked ?? (await formatOf(out));
   // The model's name is checked by the library, which knows the models.
   const sphere = sphereOf({ ...options, count, model: model as ModelName });
   const meeting = meetingOf(options, sphere);
@@ -85,10 +83,10 @@ function required<T>(option: string, meaning: string, value: T | undefined): T {
   );
 }
 
-function formatByEnding(out: string): 'raw' | 'arrow' {
-  const name = out.toLowerCase();
-  if (ARROW_ENDINGS.some((ending) => name.endsWith(ending))) return 'arrow';
-  if (RAW_ENDINGS.some((ending) => name.endsWith(ending))) return 'raw';
+async function formatOf(out: string): Promise<'raw' | 'arrow'> {
+  const { ARROW_ENDINGS, formatByEnding, RAW_ENDINGS } = await import('../snapshot/endings.ts');
+  const format = formatByEnding(out);
+  if (format !== null) return format;
   throw new UsageError(
     'usage.format',
     `the ending of --out ${out} does not say which format is wanted; known are ${[...ARROW_ENDINGS, ...RAW_ENDINGS].join(' ')}`,

@@ -1,6 +1,7 @@
 /** The commands and their options; each command's work is loaded when it is called. */
 import { readFileSync } from 'node:fs';
 import { Command, Option } from 'commander';
+import type { ConvertCommandOptions } from './convert.ts';
 import type { DemoOptions } from './demo.ts';
 import type { DescribeOptions } from './describe.ts';
 import type { MakeCommandOptions } from './make.ts';
@@ -69,6 +70,29 @@ export function buildProgram(streams: Streams, done: (code: ExitCode) => void): 
     )
     .action(async (model: string, options: MakeCommandOptions) => {
       done(await (await import('./make.ts')).make(model, options, streams));
+    });
+
+  reading(program.command('convert <file> <new-file>'))
+    .description('write a snapshot in another format or layout, and check that nothing is lost')
+    .addOption(
+      new Option('--format <name>', 'format of the new file; its ending may name it').choices([
+        'raw',
+        'arrow',
+      ]),
+    )
+    .option('--to-layout <file>', 'layout of a raw file to write (one that fits, put beside it)')
+    .addOption(
+      new Option('--precision <type>', 'type of real numbers (the one they have)').choices([
+        'float32',
+        'float64',
+      ]),
+    )
+    .option('--drop <name,...>', 'columns and facts that may be lost')
+    .option('--round', 'numbers may be rounded to the types of --to-layout')
+    .addOption(threads())
+    .option('--quiet', 'say nothing about the file written')
+    .action(async (from: string, to: string, options: ConvertCommandOptions) => {
+      done(await (await import('./convert.ts')).convert(from, to, options, streams));
     });
 
   program

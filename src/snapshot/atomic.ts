@@ -14,6 +14,8 @@ import { InputError, SettlemarkError } from '../errors.ts';
  *
  * @param path - final name, in a folder that exists
  * @param write - must not close the handle
+ * @param check - gets the name of the temporary file when all is written; if it throws, the file does
+ * not appear. Not called for a device or pipe
  * @returns what `write` returned
  * @throws InputError `input.cannotWrite` (no permission, no folder, disk full, a folder of that
  * name); errors of `write` that are not the file system's pass unchanged
@@ -21,6 +23,7 @@ import { InputError, SettlemarkError } from '../errors.ts';
 export async function writeAtomically<T>(
   path: string,
   write: (handle: FileHandle) => Promise<T>,
+  check?: (temporary: string) => Promise<void>,
 ): Promise<T> {
   try {
     const target = await realpath(path).catch((error: unknown) => {
@@ -39,7 +42,7 @@ export async function writeAtomically<T>(
       );
     }
     if (before && !before.isFile()) return await writeDirectly(target, write);
-    return await writeAndRename(target, before ? before.mode & 0o777 : null, write);
+    return await writeAndRename(target, before ? before.mode & 0o777 : null, write, check);
   } catch (error) {
     throw asWriteError(path, error);
   }
@@ -61,6 +64,7 @@ async function writeAndRename<T>(
   target: string,
   mode: number | null,
   write: (handle: FileHandle) => Promise<T>,
+  check?: (temporary: string) => Promise<void>,
 ): Promise<T> {
   const folder = dirname(target);
   const temporary = join(folder, `.settlemark-${randomBytes(8).toString('hex')}.partial`);
@@ -74,6 +78,7 @@ async function writeAndRename<T>(
     } finally {
       await handle.close();
     }
+    await check?.(temporary);
     await rename(temporary, target);
     await syncFolder(folder);
     return result;

@@ -96,6 +96,14 @@ export interface ParticleOrigin {
   readonly selection?: Selection | null;
   /** Findings of the reader that a user should see with the result (for instance a layout found by itself). */
   readonly remarks: readonly Remark[];
+  /** What the file holds and the reader did not load. */
+  readonly unread?: readonly Unread[];
+}
+
+/** Something in a file that particles have no place for, or that was not asked for. */
+export interface Unread {
+  readonly name: string;
+  readonly what: 'column' | 'field' | 'item of the header' | 'key of the metadata';
 }
 
 /** A finding with a stable code, one sentence, and what to do about it. */

@@ -92,6 +92,27 @@ export function requireMemoryToMake(count: number, bytesABody: number, available
   );
 }
 
+/**
+ * The same for a conversion, which holds all columns of the snapshot and no tree.
+ * @throws InputError `input.tooLarge`
+ */
+export async function requireMemoryToConvert(path: string, options: ReadOptions): Promise<void> {
+  if (path === '-') return;
+  const { columns, count } = await describeSnapshot(path, options, 'no values');
+  const perBody = columns
+    .filter(({ field }) => field !== null)
+    .reduce((sum, { width }) => sum + 8 * width, 0);
+  const needed = 2 * BASE_BYTES + count * perBody;
+  if (count * perBody < ASK_ABOVE_BYTES) return;
+  const free = memoryAvailable();
+  if (needed <= free) return;
+  throw new InputError(
+    'input.tooLarge',
+    `${path} holds ${count} bodies, which take about ${gigabytes(needed)} to convert; ${gigabytes(free)} are free`,
+    'use a machine with more memory, or end other programs',
+  );
+}
+
 /** Bytes free to this process: what the machine has, or less if its container allows less. */
 function memoryAvailable(): number {
   const limit = process.constrainedMemory();

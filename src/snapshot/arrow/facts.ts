@@ -24,6 +24,11 @@ const KEY = {
   velocity: 'settlemark.velocity',
 } as const;
 
+/** Whether a key of the metadata is one of those that are read here. */
+export function isFact(key: string): boolean {
+  return (Object.values(KEY) as string[]).includes(key);
+}
+
 const OWN_UNIT_TEXTS = ['mass', 'length', 'velocity', 'time'] as const;
 
 /**

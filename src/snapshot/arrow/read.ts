@@ -1,13 +1,20 @@
 /** Arrow IPC → Particles. */
 import { InputError } from '../../errors.ts';
+import { reusingMemory } from '../../numerics/reuse.ts';
 import type { Crew } from '../../parallel/crew.ts';
 import { withInput, type OpenFile } from '../files.ts';
-import type { FloatColumn, OptionalColumns, ParticleOrigin, Particles } from '../particles.ts';
+import type {
+  FloatColumn,
+  OptionalColumns,
+  ParticleOrigin,
+  Particles,
+  Unread,
+} from '../particles.ts';
 import { seldom } from '../pieces.ts';
 import type { FieldName, ReadOptions } from '../reading.ts';
 import { BatchPlanner } from './batches.ts';
 import type { StoredColumn } from './convert.ts';
-import { readFacts } from './facts.ts';
+import { isFact, readFacts } from './facts.ts';
 import { type NumberKind, type PlannedColumn } from './kinds.ts';
 import { allocateColumns, loadBatches, type ColumnSet } from './load.ts';
 import type { Schema } from './messages.ts';
@@ -63,6 +70,37 @@ export async function readArrowFile(
     await loadBatches(batches, planner.plan, columns, path, options, crew);
     return assemble(planner, columns, count, isFile ? 'arrow-file' : 'arrow-stream');
   });
+}
+
+/**
+ * Reads a file batch by batch. Each is given to `visit` before the next is read; errors as
+ * {@link readArrow}.
+ * @param first - index in the file of the first body of the part
+ */
+export async function readArrowParts(
+  path: string,
+  options: ReadOptions,
+  visit: (part: Particles, first: number) => void,
+): Promise<void> {
+  await withInput(path, (file) =>
+    withArrowFile(file, async (isFile) => {
+      const planner = particlePlanner(path, options);
+      const batches = await planFile(file, isFile, planner, options);
+      assertParticles(countRows(batches), path);
+      let first = 0;
+      for (const batch of batches) {
+        await reusingMemory(async () => {
+          const columns = allocateColumns(planner.plan, batch.rows, path);
+          await loadBatches([batch], planner.plan, columns, path, options);
+          visit(
+            assemble(planner, columns, batch.rows, isFile ? 'arrow-file' : 'arrow-stream'),
+            first,
+          );
+        });
+        first += batch.rows;
+      }
+    }),
+  );
 }
 
 /** Reads a stream of bytes that can be taken only once; errors and columns as {@link readArrow}. */
@@ -147,10 +185,22 @@ function assemble(
       .filter(({ targets }) => targets.some((target) => PHASE_SPACE.includes(target)))
       .map(({ kind }) => MANTISSA_BITS[kind] ?? 53),
   );
-  const origin = { file: planner.file, format, mantissaBits, remarks: [] };
+  const unread = unreadOf(planner);
+  const origin = { file: planner.file, format, mantissaBits, remarks: [], unread };
   const componentNames = planner.components.names;
   const optional = optionalColumns(columns);
   return { count, mass, x, y, z, vx, vy, vz, columns: optional, componentNames, ...facts, origin };
+}
+
+/** Columns and metadata that say something which the particles do not. */
+function unreadOf({ schema, plan }: BatchPlanner): Unread[] {
+  const planned = new Set(plan.map(({ fieldIndex }) => fieldIndex));
+  const columns = (schema?.fields ?? []).filter((_, index) => !planned.has(index));
+  const keys = [...(schema?.metadata.keys() ?? [])].filter((key) => !isFact(key));
+  return [
+    ...columns.map(({ name }) => ({ name, what: 'column' as const })),
+    ...keys.map((name) => ({ name, what: 'key of the metadata' as const })),
+  ];
 }
 
 function optionalColumns(columns: ColumnSet): OptionalColumns {

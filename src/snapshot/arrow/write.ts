@@ -11,7 +11,7 @@ import {
 } from 'apache-arrow/ipc/metadata/message';
 import { Field, Schema } from 'apache-arrow/schema';
 import { Dictionary, Float32, Float64, Int, Int32, Utf8, type DataType } from 'apache-arrow/type';
-import { UsageError } from '../../errors.ts';
+import { InputError, InterruptedError, UsageError } from '../../errors.ts';
 import { writeAtomically } from '../atomic.ts';
 import type { Particles } from '../particles.ts';
 import { writeFacts } from './facts.ts';
@@ -21,6 +21,11 @@ export interface WriteArrowOptions {
   readonly format?: 'file' | 'stream';
   /** Default 262144: 2 MiB a column of float64. */
   readonly rowsPerBatch?: number;
+  /** Of the columns that are no identifiers; default: the one they have. */
+  readonly precision?: 'float32' | 'float64' | undefined;
+  /** Looks at the temporary file before it gets its name; what it throws keeps it from that. */
+  readonly check?: ((temporary: string) => Promise<void>) | undefined;
+  readonly signal?: AbortSignal | undefined;
 }
 
 interface WrittenColumn {
@@ -41,10 +46,11 @@ const ZEROS = new Uint8Array(ALIGNMENT);
  * Writes columns `mass x y z vx vy vz` in the precision they have, the optional columns that there
  * are (`acceleration` as `ax ay az`, components as a dictionary), and time, units, G, softening as
  * metadata of the schema. The columns go to the file as they lie in memory: no copy is made, apart
- * from one batch of component indices.
+ * from one batch of component indices and of columns that change their precision.
  *
  * The file appears whole or not at all.
- * @throws InputError `input.cannotWrite`; UsageError `usage.rowsPerBatch`
+ * @throws InputError `input.cannotWrite`, `input.doesNotFit` (a value beyond the range of float32);
+ * UsageError `usage.rowsPerBatch`; InterruptedError
  * Source: Apache Arrow columnar format 1.5, "IPC Streaming Format", "IPC File Format".
  */
 export async function writeArrow(
@@ -59,23 +65,30 @@ export async function writeArrow(
       `writing ${path}: ${rowsPerBatch} rows in a batch; expected a whole number above 0`,
     );
   const format = options.format ?? (path.toLowerCase().endsWith('.arrows') ? 'stream' : 'file');
-  const columns = columnsOf(particles);
+  const columns = columnsOf(particles, options.precision);
   const fields = columns.map(({ name, type }) => new Field(name, type, false));
   const schema = new Schema(fields, writeFacts(particles));
-  await writeAtomically(path, async (handle) => {
-    const writer = new MessageWriter(handle);
+  const write = async (handle: FileHandle): Promise<void> => {
+    const writer = new MessageWriter(handle, path);
     if (format === 'file') await writer.bytes([MAGIC, ZEROS.subarray(0, 2)]);
     await writer.message(Message.from(schema), []);
     if (particles.columns.component) await writer.dictionary(particles.componentNames);
     for (let begin = 0; begin < particles.count; begin += rowsPerBatch) {
+      if (options.signal?.aborted === true) throw new InterruptedError();
       await writer.batch(columns, begin, Math.min(begin + rowsPerBatch, particles.count));
     }
     await writer.bytes([END_OF_STREAM]);
     if (format === 'file') await writer.footer(schema);
-  });
+  };
+  await writeAtomically(path, write, options.check);
 }
 
-function columnsOf(particles: Particles): WrittenColumn[] {
+const IDENTIFIERS = ['id', 'group', 'subgroup'];
+
+function columnsOf(
+  particles: Particles,
+  precision: WriteArrowOptions['precision'],
+): WrittenColumn[] {
   const { mass, x, y, z, vx, vy, vz, columns } = particles;
   const { acceleration, component, ...others } = columns;
   const named: [string, WrittenColumn['values']][] = Object.entries({
@@ -83,7 +96,11 @@ function columnsOf(particles: Particles): WrittenColumn[] {
     ...others,
     ...(acceleration && { ax: acceleration.x, ay: acceleration.y, az: acceleration.z }),
   });
-  const written = named.map(([name, values]) => ({ name, type: typeOf(values), values }));
+  const written = named.map(([name, values]) => {
+    const keepsType = precision === undefined || IDENTIFIERS.includes(name);
+    const wanted = precision === 'float32' ? new Float32() : new Float64();
+    return { name, type: keepsType ? typeOf(values) : wanted, values };
+  });
   if (component)
     written.push({
       name: 'component',
@@ -107,12 +124,14 @@ function typeOf(values: WrittenColumn['values']): DataType {
 /** Writes encapsulated messages one after the other and remembers where they lie. */
 class MessageWriter {
   private readonly handle: FileHandle;
+  private readonly path: string;
   private position = 0;
   private readonly batches: FileBlock[] = [];
   private readonly dictionaries: FileBlock[] = [];
 
-  constructor(handle: FileHandle) {
+  constructor(handle: FileHandle, path: string) {
     this.handle = handle;
+    this.path = path;
   }
 
   async bytes(parts: readonly Uint8Array[]): Promise<void> {
@@ -143,11 +162,7 @@ class MessageWriter {
 
   async batch(columns: readonly WrittenColumn[], begin: number, end: number): Promise<void> {
     const rows = end - begin;
-    const body = columns.map(({ name, values }) =>
-      name === 'component'
-        ? bytesOf(Int32Array.from((values as Uint16Array).subarray(begin, end)), 0, rows)
-        : bytesOf(values, begin, end),
-    );
+    const body = columns.map((column) => bytesOf(rowsOf(column, begin, end, this.path), 0, rows));
     const header = recordBatch(
       rows,
       columns.length,
@@ -197,6 +212,31 @@ function recordBatch(
   }
   const nodes = Array.from({ length: columnCount }, () => new FieldNode(rows, 0));
   return { batch: new RecordBatch(rows, nodes, regions, null), bodyLength: offset };
+}
+
+/** Some rows of a column in the type that is written. */
+function rowsOf(
+  { name, type, values }: WrittenColumn,
+  begin: number,
+  end: number,
+  path: string,
+): WrittenColumn['values'] {
+  if (values instanceof Uint16Array && name === 'component')
+    return Int32Array.from(values.subarray(begin, end));
+  if (values instanceof Float32Array && type instanceof Float64)
+    return Float64Array.from(values.subarray(begin, end));
+  if (!(values instanceof Float64Array && type instanceof Float32))
+    return (values as Float64Array).subarray(begin, end);
+  const narrow = Float32Array.from(values.subarray(begin, end));
+  const bad = narrow.findIndex(
+    (value, i) => !Number.isFinite(value) && Number.isFinite(values[begin + i]),
+  );
+  if (bad < 0) return narrow;
+  throw new InputError(
+    'input.doesNotFit',
+    `${path}: ${name} of body ${begin + bad} is ${values[begin + bad]}, which float32 cannot hold`,
+    'Write float64.',
+  );
 }
 
 function bytesOf(values: WrittenColumn['values'], begin: number, end: number): Uint8Array {

@@ -2,6 +2,7 @@
 import { InputError } from '../../errors.ts';
 import type { Particles } from '../particles.ts';
 import type { StatedComponent } from './components.ts';
+import { quotient } from './encode.ts';
 import type { Layout, LayoutComponent } from './layout.ts';
 
 /**
@@ -109,7 +110,8 @@ export function componentHeader(
     for (const key of ['count', 'mass', 'softening'] as const) {
       const reference = component[key];
       if (typeof reference !== 'object') continue;
-      const value = Number(components[index][key]) / ('scale' in reference ? reference.scale : 1);
+      const scale = 'scale' in reference ? reference.scale : 1;
+      const value = quotient(Number(components[index][key]), scale);
       const other = values[reference.header] ?? value;
       if (other !== value) {
         throw doesNotFit(

@@ -22,6 +22,21 @@ export function sourceOf(path: string, particles: Particles, field: LayoutField)
   return values;
 }
 
+/**
+ * The number to write for a value, so that the number times `scale` gives the value again: their
+ * quotient, or a double beside it, since the quotient is rounded.
+ */
+export function quotient(value: number, scale: number): number {
+  const nearest = value / scale;
+  if (nearest * scale === value) return nearest;
+  const step = Math.abs(nearest) * 2 ** -53;
+  for (let k = 1; k <= 4; k++) {
+    if ((nearest + k * step) * scale === value) return nearest + k * step;
+    if ((nearest - k * step) * scale === value) return nearest - k * step;
+  }
+  return nearest;
+}
+
 function columnsOf(particles: Particles): Record<string, Values[] | undefined> {
   const { mass, x, y, z, vx, vy, vz, columns } = particles;
   const { acceleration } = columns;

@@ -1,5 +1,6 @@
 /** The reader of raw files: layout, structure, plan, columns. */
 import { InputError } from '../../errors.ts';
+import { reusingMemory } from '../../numerics/reuse.ts';
 import type { Crew } from '../../parallel/crew.ts';
 import { assertUnchanged, withInput, type OpenFile } from '../files.ts';
 import {
@@ -7,16 +8,18 @@ import {
   type FloatColumn,
   type OptionalColumns,
   type Particles,
+  type Unread,
 } from '../particles.ts';
 import type { ReadOptions } from '../reading.ts';
 import { UNIT_SYSTEMS } from '../units.ts';
-import { readBodies, type Target } from './bodies.ts';
+import { readBodies, type BodyRange, type Target } from './bodies.ts';
 import { ComponentCodes } from './component-codes.ts';
+import type { PlacedComponent } from './components.ts';
 import { allocateIds } from './decode.ts';
 import { findLayout, type FoundLayout } from './find-layout.ts';
 import { frameOf } from './frame.ts';
 import { layOverOrExplain } from './fit.ts';
-import type { Layout } from './layout.ts';
+import { isSkip, type Layout } from './layout.ts';
 import {
   partialFields,
   planColumns,
@@ -25,7 +28,7 @@ import {
   type Quantity,
   type Sources,
 } from './plan.ts';
-import type { RawStructure } from './structure.ts';
+import { layOver, type RawStructure } from './structure.ts';
 import { TYPE_DIGITS } from './types.ts';
 
 /**
@@ -52,18 +55,48 @@ export async function readRawFile(
     return (await import('./parts.ts')).readParts(file.path, found, options, crew);
   }
   const structure = await layOverOrExplain(file, found.layout, found.file);
-  const plan = planColumns(file.path, found.layout, options);
-  const columns = allocate(file, structure.count, plan, found.layout);
-  await readBodies(
-    file,
-    structure,
-    [...columns.values()],
-    [{ begin: 0, end: structure.count }],
-    options,
-    crew,
-  );
+  const whole = { begin: 0, end: structure.count };
+  const particles = await readRange(file, found, structure, whole, options, crew);
   await assertUnchanged(file);
-  return assemble(file.path, found, structure, plan, columns, options);
+  return particles;
+}
+
+/**
+ * Reads a file with a layout of which it is known that it is the right one, some bodies at a time.
+ * Each part is given to `visit` before the next is read; errors as {@link readRaw}.
+ * @param first - index in the file of the first body of the part
+ */
+export async function readRawParts(
+  path: string,
+  layout: Layout,
+  bodiesAPart: number,
+  options: ReadOptions,
+  visit: (part: Particles, first: number) => void,
+): Promise<void> {
+  await withInput(path, async (file) => {
+    const structure = await layOver(file, layout);
+    const found = { layout, file: null, remarks: [] };
+    for (let begin = 0; begin < structure.count; begin += bodiesAPart) {
+      const range = { begin, end: Math.min(begin + bodiesAPart, structure.count) };
+      await reusingMemory(async () => {
+        visit(await readRange(file, found, structure, range, options), begin);
+      });
+    }
+  });
+}
+
+async function readRange(
+  file: OpenFile,
+  found: FoundLayout,
+  structure: RawStructure,
+  range: BodyRange,
+  options: ReadOptions,
+  crew?: Crew,
+): Promise<Particles> {
+  const plan = planColumns(file.path, found.layout, options);
+  const columns = allocate(file, range.end - range.begin, plan, found.layout);
+  await readBodies(file, structure, [...columns.values()], [range], options, crew);
+  return assemble(file.path, found, structure, plan, columns, options, range);
 }
 
 const ID_QUANTITIES: ReadonlySet<Quantity> = new Set(['id', 'group', 'subgroup']);
@@ -127,15 +160,26 @@ function isStated(layout: Layout, quantity: Quantity): quantity is StatedQuantit
   return isConstant || (layout.components ?? []).some((one) => one[quantity] !== undefined);
 }
 
-/** Writes what the layout states into a column whose bodies have the indices of the file. */
-function fillStated(structure: RawStructure, quantity: StatedQuantity, column: FloatColumn): void {
-  const { components, layout } = structure;
+/** Writes what the layout states into a column of the bodies of a range. */
+function fillStated(
+  { components, layout }: RawStructure,
+  range: BodyRange,
+  quantity: StatedQuantity,
+  column: FloatColumn,
+): void {
   if (quantity === 'mass' && layout.constants?.mass !== undefined) {
     column.fill(layout.constants.mass);
   }
-  for (const { begin, count, [quantity]: value } of components) {
-    if (value !== null) column.fill(value, begin, begin + count);
+  for (const component of components) {
+    const { [quantity]: value } = component;
+    if (value !== null) column.fill(value, ...within(component, range));
   }
+}
+
+/** Indices in a range at which the bodies of a component begin and end. */
+function within({ begin, count }: PlacedComponent, range: BodyRange): [number, number] {
+  const index = (body: number) => Math.min(Math.max(body, range.begin), range.end) - range.begin;
+  return [index(begin), index(begin + count)];
 }
 
 /** Particles of the columns that were read, and what the layout states of them. */
@@ -146,17 +190,18 @@ export function assemble(
   plan: Plan,
   columns: Columns,
   options: ReadOptions,
+  range: BodyRange = { begin: 0, end: structure.count },
 ): Particles {
   const { layout } = found;
   for (const [quantity, target] of columns) {
     if (target.kind === 'reals' && isStated(layout, quantity)) {
-      fillStated(structure, quantity, target.column);
+      fillStated(structure, range, quantity, target.column);
     }
   }
   const [mass, x, y, z, vx, vy, vz] = PHASE_SPACE.map((name) => realsOf(columns, name));
-  const { component, componentNames } = componentsOf(structure, columns, options);
+  const { component, componentNames } = componentsOf(structure, range, columns, options);
   return {
-    count: structure.count,
+    count: range.end - range.begin,
     ...{ mass, x, y, z, vx, vy, vz },
     columns: { ...optionalColumns(columns), ...(component && { component }) },
     componentNames,
@@ -171,8 +216,31 @@ export function assemble(
         ...similarNames(path, layout, options),
         ...partialFields(path, layout, options, plan),
       ],
+      unread: unreadOf(layout, plan),
     },
   };
+}
+
+const HEADER_USED = new Set(['time', 'count', 'gravity', 'softening', 'partCount', 'totalCount']);
+
+/** Fields and items of the header that say something which the particles do not. */
+function unreadOf(layout: Layout, plan: Plan): Unread[] {
+  const planned = new Set([...plan.values()].flat().map(({ field }) => field));
+  const fields = layout.fields.flatMap((entry) =>
+    isSkip(entry) || planned.has(entry) ? [] : [entry.name],
+  );
+  const { scaleFactor, redshift, hubbleRate, boxSize } = layout.comoving ?? {};
+  const referred = new Set(
+    (layout.components ?? [])
+      .flatMap(({ count, mass, softening }) => [count, mass, softening])
+      // From the others of the frame the rate at this time follows, but not they from it.
+      .concat(scaleFactor, redshift, hubbleRate, boxSize)
+      .map((one) => (typeof one === 'object' ? one.header : null)),
+  );
+  const items = layout.header
+    .filter(({ name }) => !HEADER_USED.has(name) && !referred.has(name))
+    .map(({ name }) => ({ name, what: 'item of the header' as const }));
+  return [...new Set(fields)].map((name): Unread => ({ name, what: 'field' })).concat(items);
 }
 
 const PHASE_SPACE = ['mass', 'x', 'y', 'z', 'vx', 'vy', 'vz'] as const;
@@ -185,7 +253,8 @@ function realsOf(columns: Columns, quantity: Quantity): FloatColumn {
 
 /** Components as the layout lists them, or as a field has them. */
 function componentsOf(
-  { components, count }: RawStructure,
+  { components }: RawStructure,
+  range: BodyRange,
   columns: Columns,
   options: ReadOptions,
 ): { component?: Uint16Array; componentNames: readonly string[] } {
@@ -195,8 +264,8 @@ function componentsOf(
   }
   const isWanted = options.optional?.includes('component') ?? false;
   if (!isWanted || components.length === 0) return { componentNames: [] };
-  const component = new Uint16Array(new SharedArrayBuffer(2 * count));
-  components.forEach(({ begin, count: own }, index) => component.fill(index, begin, begin + own));
+  const component = new Uint16Array(new SharedArrayBuffer(2 * (range.end - range.begin)));
+  components.forEach((one, index) => component.fill(index, ...within(one, range)));
   return { component, componentNames: components.map(({ name }) => name) };
 }
 

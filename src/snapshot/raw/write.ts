@@ -1,10 +1,11 @@
 /** The writer of raw files: the bytes that a layout asks for, under the final name only when whole. */
-import { InputError } from '../../errors.ts';
+import type { FileHandle } from 'node:fs/promises';
+import { InputError, InterruptedError } from '../../errors.ts';
 import { writeAtomically } from '../atomic.ts';
 import type { Particles } from '../particles.ts';
 import { writtenComponents, componentHeader } from './component-writer.ts';
 import type { StatedComponent } from './components.ts';
-import { sourceOf, type Values } from './encode.ts';
+import { quotient, sourceOf, type Values } from './encode.ts';
 import { frameHeader } from './frame.ts';
 import {
   bodyBytes,
@@ -22,6 +23,9 @@ import { integerRange, TYPE_BYTES, writeNumber, type NumberType } from './types.
 export interface WriteOptions {
   /** Most bytes of a Fortran subrecord with 4-byte words; 2^31 − 9, as compilers have it. */
   readonly subrecordBytes?: number;
+  /** Looks at the temporary file before it gets its name; what it throws keeps it from that. */
+  readonly check?: ((temporary: string) => Promise<void>) | undefined;
+  readonly signal?: AbortSignal | undefined;
 }
 
 const SUBRECORD_BYTES = 2 ** 31 - 9;
@@ -33,7 +37,8 @@ const CHUNK_BYTES = 4 << 20;
  * @param layout - default: 7 little-endian float64 a body, mass x y z vx vy vz
  * @throws InputError `input.cannotWrite` (file system), `input.missingColumn` (the layout has a
  * field or header item that the particles lack), `input.doesNotFit` (a value outside its type's
- * range, or at odds with the layout's constants or units); the old file stays in these cases
+ * range, or at odds with the layout's constants or units); InterruptedError; the old file stays in
+ * these cases
  */
 export async function writeRaw(
   path: string,
@@ -55,7 +60,7 @@ export async function writeRaw(
     runs: runsOf(section, particles.count),
     encoder: encoderOf(path, particles, layout, section.entries),
   }));
-  await writeAtomically(path, async (handle) => {
+  const write = async (handle: FileHandle): Promise<void> => {
     const out = new RecordWriter(handle, layout, options.subrecordBytes ?? SUBRECORD_BYTES);
     if (header.length > 0) {
       await out.begin(header.length);
@@ -69,6 +74,7 @@ export async function writeRaw(
       const chunk = new DataView(new ArrayBuffer(Math.min(perChunk, particles.count) * stride));
       for (const run of runs) {
         for (let done = 0; done < run.count; done += perChunk) {
+          if (options.signal?.aborted === true) throw new InterruptedError();
           const count = Math.min(perChunk, run.count - done);
           for (const encode of encoder.fields) encode(chunk, run.at + done, count);
           await out.write(new Uint8Array(chunk.buffer, 0, count * stride));
@@ -76,7 +82,8 @@ export async function writeRaw(
       }
       await out.end();
     }
-  });
+  };
+  await writeAtomically(path, write, options.check);
 }
 
 type Encode = (chunk: DataView, firstBody: number, count: number) => void;
@@ -120,7 +127,7 @@ function encodeLane(
   if (type === 'float64') {
     return (chunk, firstBody, count) => {
       for (let i = 0, o = offset; i < count; i++, o += stride) {
-        chunk.setFloat64(o, Number(values[firstBody + i]) / scale, little);
+        chunk.setFloat64(o, quotient(Number(values[firstBody + i]), scale), little);
       }
     };
   }
