@@ -25,6 +25,7 @@ import type { FieldName, ReadOptions, SnapshotDescription } from './snapshot/rea
 import type { AveragedBalance } from './survey/average.ts';
 import type { Conversion, ConvertOptions } from './survey/convert.ts';
 import type { MakeSnapshotOptions } from './survey/make.ts';
+import type { Ledger } from './survey/ledger.ts';
 import type { FileOutcome } from './survey/many.ts';
 import type { SurveyOptions } from './survey/measure.ts';
 import type { PreparedSnapshot } from './survey/prepare.ts';
@@ -106,6 +107,8 @@ export type { AveragedBalance } from './survey/average.ts';
 export type { Conversion, ConvertOptions } from './survey/convert.ts';
 export type { Difference } from './snapshot/comparison.ts';
 export type { MakeSnapshotOptions } from './survey/make.ts';
+export { LEDGER_NAME } from './survey/ledgerName.ts';
+export type { Ledger } from './survey/ledger.ts';
 export type { FileOutcome } from './survey/many.ts';
 export type { Stage, SurveyOptions } from './survey/measure.ts';
 export type { PreparedSnapshot } from './survey/prepare.ts';
@@ -172,14 +175,33 @@ export async function readRunFile(path: string): Promise<RunFile> {
  * Reads and measures many snapshots: small ones spread whole over the crew's workers, large ones
  * worked on by all together. Records and errors come in the order given.
  * @param snapshots - files, or snapshots of {@link prepareSnapshots}, whose own options count then
+ * @param ledger - of {@link openLedger}: what it knows is not measured again, what is new it keeps
  * @returns an async iterator of outcomes, each with a record or the error that kept it from one
  */
 export async function measureFiles(
   snapshots: readonly (string | PreparedSnapshot)[],
   options: SurveyOptions,
   crew: Crew,
+  ledger?: Ledger,
 ): Promise<AsyncGenerator<FileOutcome>> {
+  if (ledger !== undefined) {
+    const paths = snapshots.filter((snapshot) => typeof snapshot === 'string');
+    const ready = (await prepareSnapshots(paths, options)).values();
+    const prepared = snapshots.map((snapshot) =>
+      typeof snapshot === 'string' ? (ready.next().value as PreparedSnapshot) : snapshot,
+    );
+    return (await import('./survey/measureNew.ts')).measureNew(prepared, options, crew, ledger);
+  }
   return (await import('./survey/many.ts')).measureMany(snapshots, options, crew);
+}
+
+/**
+ * Opens the ledger of a run, in which records are kept by the bytes of their snapshots and the options
+ * that change a figure. One that is not there yet is empty; `close()` makes sure that all is on disk.
+ * @throws InputError `input.notALedger`, `input.unreadable`
+ */
+export async function openLedger(path: string): Promise<Ledger> {
+  return (await import('./survey/ledger.ts')).Ledger.open(path);
 }
 
 /**
@@ -325,6 +347,11 @@ export async function makeSnapshot(options: MakeSnapshotOptions, crew: Crew): Pr
  */
 export async function readRecords(path: string): Promise<MeasureRecord[]> {
   return (await import('./survey/records.ts')).readRecords(path);
+}
+
+/** Whether a path is one of records, by its name or, for Arrow, its metadata: see {@link readRecords}. */
+export async function isRecords(path: string): Promise<boolean> {
+  return (await import('./survey/records.ts')).isRecords(path);
 }
 
 /**

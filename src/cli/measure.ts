@@ -11,7 +11,6 @@ import {
   type ForcesOrigin,
   type MeasureRecord,
   type SofteningKernel,
-  type SurveyOptions,
 } from '../index.ts';
 import { turn, withCrew } from './crew.ts';
 import { eachPath } from './many.ts';
@@ -24,7 +23,7 @@ import {
   type Format,
 } from './output.ts';
 import { startProgress } from './progress.ts';
-import { readOptionsOf, type ReadingOptions } from './readOptions.ts';
+import { surveyOptionsOf, type ReadingOptions } from './readOptions.ts';
 import { remarksText } from './remarks.ts';
 import { paintFor, NO_PAINT } from './style.ts';
 import { write, type Streams } from './streams.ts';
@@ -57,27 +56,10 @@ export async function measure(
   options: MeasureCommandOptions,
   streams: Streams,
 ): Promise<ExitCode> {
-  const {
-    layout,
-    columns,
-    only,
-    group,
-    within,
-    about,
-    runFile,
-    threads,
-    format: asked,
-    out,
-    quiet = false,
-    ...rest
-  } = options;
+  const { threads, format: asked, out, quiet = false } = options;
   const format = formatOf(asked, out, FORMATS);
   refuseTerminal(format, out, streams);
-  const survey: SurveyOptions = {
-    ...rest,
-    ...(runFile !== undefined && runFile !== true && { runFile }),
-    read: await readOptionsOf({ layout, columns, only, group, within, about }, streams.interrupt),
-  };
+  const survey = await surveyOptionsOf(options, streams.interrupt);
   extrasNamed(options.with ?? []); // A name that is not known is told before anything is read.
   const found: string[] = [];
   const before = await eachPath(args, streams, async (arg) => {

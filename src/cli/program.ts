@@ -59,6 +59,8 @@ export function buildProgram(streams: Streams, done: (code: ExitCode) => void): 
     .description('say whether a run has settled, since when, and on what evidence')
     .addOption(formats(['table', 'json']))
     .addOption(new Option('--out <file>', 'write to a file; its ending may name the format'))
+    .option('--ledger <file>', 'where records are kept (settlemark.ledger in the folder)')
+    .option('--no-ledger', 'keep no records, and measure all anew')
     .option('--quiet', 'no progress on standard error')
     .action(async (inputs: string[], options: TrackOptions) => {
       done(await (await import('./track.ts')).track(inputs, options, streams));

@@ -1,5 +1,10 @@
 /** Options about what is read, from the command line to the library. */
-import { parseColumns, type ReadOptions } from '../index.ts';
+import {
+  parseColumns,
+  type MeasureOptions,
+  type ReadOptions,
+  type SurveyOptions,
+} from '../index.ts';
 
 /** As commander gives them; what was not given is undefined. */
 export interface ReadingOptions {
@@ -23,5 +28,31 @@ export async function readOptionsOf(
     ...stated,
     ...(columns !== undefined && { columns: await parseColumns(columns) }),
     signal,
+  };
+}
+
+/** What commands have besides the options that decide figures. */
+interface CommandOptions extends ReadingOptions, Omit<MeasureOptions, 'fromRunFile' | 'units'> {
+  readonly units?: string;
+  readonly runFile?: string | boolean;
+}
+
+/** Options that say how a command works and what it writes: none of them changes a figure. */
+const OF_THE_COMMAND = ['threads', 'format', 'out', 'quiet', 'ledger'] as const;
+
+/**
+ * The options of a survey, without those of the command itself.
+ * @throws UsageError as {@link readOptionsOf}
+ */
+export async function surveyOptionsOf(
+  options: CommandOptions,
+  signal: AbortSignal,
+): Promise<SurveyOptions> {
+  const { layout, columns, only, group, within, about, runFile, ...rest } = options;
+  for (const key of OF_THE_COMMAND) delete (rest as Record<string, unknown>)[key];
+  return {
+    ...rest,
+    ...(typeof runFile === 'string' || runFile === false ? { runFile } : {}),
+    read: await readOptionsOf({ layout, columns, only, group, within, about }, signal),
   };
 }

@@ -2,6 +2,7 @@
 import {
   findSnapshots,
   InputError,
+  isRecords,
   measureFiles,
   prepareSnapshots,
   readRecords,
@@ -11,19 +12,19 @@ import {
   EXIT,
   type MeasureRecord,
   type Remark,
-  type SurveyOptions,
   type Verdict,
 } from '../index.ts';
 import { turn, withCrew } from './crew.ts';
 import { reportFailure } from './failure.ts';
+import { ledgerFor, type LedgerOptions } from './ledger.ts';
 import type { MeasureCommandOptions } from './measure.ts';
 import { formatOf, refuseOverwriting, withOutput } from './output.ts';
 import { startProgress } from './progress.ts';
-import { readOptionsOf } from './readOptions.ts';
+import { surveyOptionsOf } from './readOptions.ts';
 import { NO_PAINT, paintFor } from './style.ts';
 import type { Streams } from './streams.ts';
 
-export interface TrackOptions extends Omit<MeasureCommandOptions, 'format'> {
+export interface TrackOptions extends Omit<MeasureCommandOptions, 'format'>, LedgerOptions {
   readonly format?: 'table' | 'json';
 }
 
@@ -38,7 +39,7 @@ export async function track(
   const records: MeasureRecord[] = [];
   const snapshots: string[] = [];
   for (const arg of args) {
-    if (/\.(ndjson|jsonl)$/i.test(arg)) records.push(...(await readRecords(arg)));
+    if (await isRecords(arg)) records.push(...(await readRecords(arg)));
     else snapshots.push(...(await findSnapshots([arg])));
   }
   await refuseOverwriting(out, [...args, ...snapshots]);
@@ -60,8 +61,10 @@ async function judge(
   records: MeasureRecord[],
   streams: Streams,
 ): Promise<Verdict> {
-  const skipped =
-    snapshots.length > 0 ? await measureAll(snapshots, options, records, streams) : [];
+  const { skipped, remarks: ofLedger } =
+    snapshots.length > 0
+      ? await measureAll(snapshots, options, records, streams)
+      : { skipped: [], remarks: [] };
   if (records.length === 0) {
     throw new UnanswerableError(
       'unanswerable.series',
@@ -70,7 +73,7 @@ async function judge(
     );
   }
   const found = verdictOf(records);
-  const remarks: Remark[] = [...found.remarks];
+  const remarks: Remark[] = [...found.remarks, ...ofLedger];
   if (skipped.length > 0) {
     remarks.unshift({
       code: 'snapshotsSkipped',
@@ -87,32 +90,23 @@ async function measureAll(
   options: TrackOptions,
   records: MeasureRecord[],
   streams: Streams,
-): Promise<string[]> {
-  const {
-    layout,
-    columns,
-    only,
-    group,
-    within,
-    about,
-    runFile,
-    threads,
-    quiet = false,
-    ...rest
-  } = options;
-  const survey: SurveyOptions = {
-    ...rest,
-    ...(runFile !== undefined && runFile !== true && { runFile }),
-    read: await readOptionsOf({ layout, columns, only, group, within, about }, streams.interrupt),
-  };
+): Promise<{ readonly skipped: readonly string[]; readonly remarks: readonly Remark[] }> {
+  const { threads, quiet = false } = options;
+  const survey = await surveyOptionsOf(options, streams.interrupt);
   const snapshots = await prepareSnapshots(files, survey);
   const asksFor = snapshots.find((snapshot) => snapshot.threads !== null)?.threads ?? undefined;
   const skipped: string[] = [];
+  const { ledger, remarks } = await ledgerFor(files, options);
   await withCrew(threads ?? asksFor, streams.interrupt, async (crew) => {
     const progress = startProgress(streams.stderr, quiet, crew);
     try {
       let done = 0;
-      for await (const { file, record, error } of await measureFiles(snapshots, survey, crew)) {
+      for await (const { file, record, error } of await measureFiles(
+        snapshots,
+        survey,
+        crew,
+        ledger ?? undefined,
+      )) {
         await turn(streams.interrupt);
         progress.say(`${file}, ${done + 1} of ${snapshots.length}`, ++done / snapshots.length);
         if (error === null) records.push(record);
@@ -123,8 +117,9 @@ async function measureAll(
         } else throw error;
       }
     } finally {
+      await ledger?.close();
       progress.close();
     }
   });
-  return skipped;
+  return { skipped, remarks: [...remarks, ...(ledger?.remarks ?? [])] };
 }

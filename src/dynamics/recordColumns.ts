@@ -54,8 +54,8 @@ interface Schema {
  *
  * A vector has the columns `.x .y .z`. Of the Lagrangian radii each mass fraction has one for the
  * radius (`lagrangian[0.5]`) and one for its error (`lagrangian.errors[0.5]`); fractions that any
- * of the records has, ascending. Other lists are numbered from 0. Of a setting there is the value
- * alone; of the remarks there are the codes, with spaces between. What no record has is left out.
+ * of the records has, ascending. Other lists are numbered from 0. Of a setting there are the value
+ * and, as `.from`, where it is from; of the remarks there are the codes, with spaces between. What no record has is left out.
  */
 export async function recordColumns(records: readonly MeasureRecord[]): Promise<RecordColumn[]> {
   const table = new TableOfRecords(records);
@@ -77,7 +77,6 @@ class TableOfRecords {
 
   addBranch(path: Path, schema: Schema, text: string): void {
     for (const [key, property] of Object.entries(schema.properties ?? {})) {
-      if (key === 'from' && schema.properties?.['value'] !== undefined) continue;
       this.#add([...path, key], property, property.description ?? text);
     }
   }

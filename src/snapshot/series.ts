@@ -5,7 +5,7 @@ import { UnanswerableError } from '../errors.ts';
 import { asReadError } from './files.ts';
 
 /** Files that lie in the folders of runs and are no snapshots. */
-const NO_SNAPSHOT = ['.json', '.csv', '.ndjson', '.md', '.txt'];
+const NO_SNAPSHOT = ['.json', '.ledger', '.csv', '.ndjson', '.md', '.txt'];
 
 /**
  * Files as they are named and the snapshots in the folders named (not in their subfolders), in the

@@ -19,9 +19,13 @@ const SMALL_BYTES = 4 * 2 ** 20;
 const FILES_A_WORKER = 16;
 
 /** What became of one path. Errors are those that a user's input can cause; bugs are thrown. */
-export type FileOutcome =
+export type FileOutcome = (
   | { readonly file: string; readonly record: MeasureRecord; readonly error: null }
-  | { readonly file: string; readonly record: null; readonly error: SettlemarkError };
+  | { readonly file: string; readonly record: null; readonly error: SettlemarkError }
+) & {
+  /** Whether the record came from a ledger, and nothing was measured. */
+  readonly isKnown?: boolean;
+};
 
 /** A snapshot that is ready to be measured, or the error of its run file. */
 type Entry = PreparedSnapshot | (FileOutcome & { readonly record: null });
@@ -31,26 +35,28 @@ type Entry = PreparedSnapshot | (FileOutcome & { readonly record: null });
  * allows. The figures of a record do not depend on how the work was spread.
  * @param snapshots - files, or prepared snapshots, whose own options count: of `options` only progress
  *   and signal are used for these
+ * @param filesAWorker - small files that a worker takes at once, whose outcomes come together
  */
 export async function* measureMany(
   snapshots: readonly (string | PreparedSnapshot)[],
   options: SurveyOptions,
   crew: Crew,
+  filesAWorker = FILES_A_WORKER,
 ): AsyncGenerator<FileOutcome> {
   const entries = await prepareAll(snapshots, options);
-  let round = await beginRound(entries, 0, options, crew);
+  let round = await beginRound(entries, 0, options, crew, filesAWorker);
   try {
     for (let at = 0; at < entries.length;) {
       if (round === null) {
         const entry = entries[at++];
         yield isFailed(entry) ? entry : await measureAlone(entry, options, crew);
-        round = await beginRound(entries, at, options, crew);
+        round = await beginRound(entries, at, options, crew, filesAWorker);
         continue;
       }
       const { files, outcomes } = round;
       at += files;
       // The next round waits at the workers, so that none of them waits for the last file of this one.
-      round = await beginRound(entries, at, options, crew);
+      round = await beginRound(entries, at, options, crew, filesAWorker);
       yield* await outcomes;
     }
   } finally {
@@ -107,8 +113,9 @@ async function beginRound(
   begin: number,
   options: SurveyOptions,
   crew: Crew,
+  filesAWorker: number,
 ): Promise<SmallRound | null> {
-  const batch = await smallFiles(entries, begin, crew);
+  const batch = await smallFiles(entries, begin, crew, filesAWorker);
   if (batch.length < 2) return null;
   const outcomes = measureTogether(batch, options, crew);
   outcomes.catch(() => undefined); // Whoever waits for them hears of it, which may be later.
@@ -120,9 +127,10 @@ async function smallFiles(
   entries: readonly Entry[],
   begin: number,
   crew: Crew,
+  filesAWorker: number,
 ): Promise<PreparedSnapshot[]> {
   if (crew.threads === 1) return [];
-  const some = entries.slice(begin, begin + crew.threads * FILES_A_WORKER);
+  const some = entries.slice(begin, begin + crew.threads * filesAWorker);
   const bad = some.findIndex(isFailed);
   const good = (bad < 0 ? some : some.slice(0, bad)) as PreparedSnapshot[];
   const small = await Promise.all(good.map(isSmall));

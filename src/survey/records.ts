@@ -1,67 +1,143 @@
-/** Records that were made earlier: one JSON object a line. */
+/** Records that were made earlier: one JSON object a line, or a table as CSV or Arrow. */
 import { createReadStream } from 'node:fs';
-import { createInterface } from 'node:readline';
+import { open, readFile } from 'node:fs/promises';
 import { RECORD_VERSION, type MeasureRecord } from '../dynamics/record.ts';
 import { InputError } from '../errors.ts';
+import { asReadError } from '../snapshot/files.ts';
+import { blocksOfLines } from '../snapshot/lines.ts';
+import { notATable, recordsFromTable } from './recordTables.ts';
 
 /** Keys without which a line is not a record. */
 const KEYS = ['whole', 'bound', 'lagrangian', 'boundLagrangian', 'frame', 'settings', 'engine'];
 
-/** Whether a path is named like a file of records. */
-export const isRecords = (path: string): boolean => /\.(ndjson|jsonl)$/i.test(path);
+/** Mark of a table of records among the metadata of an Arrow schema. */
+const ARROW_MARK = 'settlemark.record';
+/** The metadata of an Arrow file or stream stand near its beginning. */
+const ARROW_HEAD_BYTES = 2 ** 16;
 
 /**
- * Reads records line by line; empty lines are passed over.
+ * Whether a path is one of records: named like lines of JSON or CSV, or an Arrow table of records.
+ * A file that cannot be looked at is none; its reader says why.
+ */
+export async function isRecords(path: string): Promise<boolean> {
+  if (/\.(ndjson|jsonl|csv)$/i.test(path)) return true;
+  if (!/\.(arrows?|feather|ipc)$/i.test(path)) return false;
+  try {
+    const handle = await open(path, 'r');
+    try {
+      const head = Buffer.alloc(ARROW_HEAD_BYTES);
+      const { bytesRead } = await handle.read(head, 0, head.length, 0);
+      return head.subarray(0, bytesRead).includes(ARROW_MARK);
+    } finally {
+      await handle.close();
+    }
+  } catch {
+    return false;
+  }
+}
+
+/**
+ * Reads records: `.csv` and Arrow tables of records, else one record a line, where empty lines are passed over.
  * @throws InputError `input.notARecord` with file and line; `input.recordVersion`; `input.notFound`
  */
 export async function readRecords(path: string): Promise<MeasureRecord[]> {
-  const records: MeasureRecord[] = [];
-  let line = 0;
   try {
-    const lines = createInterface({ input: createReadStream(path), crlfDelay: Infinity });
-    for await (const text of lines) {
-      line++;
-      if (text.trim() !== '') records.push(recordIn(text, `${path}, line ${line}`));
-    }
+    if (/\.csv$/i.test(path)) return await fromCsv(path);
+    if (/\.(arrows?|feather|ipc)$/i.test(path)) return await fromArrow(path);
+    return await fromLines(path);
   } catch (error) {
     if (error instanceof InputError) throw error;
-    const reason = error instanceof Error ? error.message : String(error);
-    throw new InputError('input.notFound', `${path}: ${reason}`, 'check the path', {
-      cause: error,
-    });
+    throw asReadError(path, error);
+  }
+}
+
+async function fromLines(path: string): Promise<MeasureRecord[]> {
+  const records: MeasureRecord[] = [];
+  let line = 0;
+  for await (const texts of blocksOfLines(createReadStream(path, { highWaterMark: 2 ** 20 }))) {
+    for (const text of texts) {
+      line++;
+      if (text.trim() !== '') records.push(recordIn(text, path, line));
+    }
   }
   return records;
 }
 
-function recordIn(text: string, where: string): MeasureRecord {
+function recordIn(text: string, path: string, line: number): MeasureRecord {
   let value: unknown;
   try {
     value = JSON.parse(text);
   } catch (error) {
-    throw notARecord(where, 'it is not JSON', error);
+    throw notARecord(path, line, 'it is not JSON', error);
   }
-  if (value === null || typeof value !== 'object') throw notARecord(where, 'it is not an object');
+  if (value === null || typeof value !== 'object')
+    throw notARecord(path, line, 'it is not an object');
   const missing = KEYS.find((key) => {
     const part = (value as Record<string, unknown>)[key];
     return part === null || typeof part !== 'object';
   });
-  if (missing !== undefined) throw notARecord(where, `it has no "${missing}"`);
+  if (missing !== undefined) throw notARecord(path, line, `it has no "${missing}"`);
   const { record: version } = value as { record?: unknown };
   if (version !== RECORD_VERSION) {
     throw new InputError(
       'input.recordVersion',
-      `${where}: a record of version ${JSON.stringify(version) ?? 'none'}; this Settlemark knows version ${RECORD_VERSION}`,
+      `${path}, line ${line}: a record of version ${JSON.stringify(version) ?? 'none'}; this Settlemark knows version ${RECORD_VERSION}`,
       'measure the snapshot again',
     );
   }
   return value as MeasureRecord;
 }
 
-function notARecord(where: string, why: string, cause?: unknown): InputError {
+function notARecord(path: string, line: number, why: string, cause?: unknown): InputError {
   return new InputError(
     'input.notARecord',
-    `${where}: not a record of a snapshot: ${why}`,
+    `${path}, line ${line}: not a record of a snapshot: ${why}`,
     'give files that `settlemark measure --format ndjson` wrote, one record a line',
     { cause },
   );
+}
+
+async function fromCsv(path: string): Promise<MeasureRecord[]> {
+  const { parse } = await import('csv-parse/sync');
+  const text = await readFile(path, 'utf8');
+  let rows: string[][];
+  try {
+    rows = parse(text, { bom: true, skip_empty_lines: true });
+  } catch (error) {
+    throw notATable(path, `it is not CSV: ${error instanceof Error ? error.message : ''}`, error);
+  }
+  const [names, ...cells] = rows;
+  if (names === undefined) throw notATable(path, 'it is empty');
+  return recordsFromTable({
+    path,
+    names,
+    rows: cells.length,
+    cell: (row, column) => cells[row][column],
+    place: (row) => `${path}, row ${row + 2}`,
+  });
+}
+
+async function fromArrow(path: string): Promise<MeasureRecord[]> {
+  const { tableFromIPC } = await import('apache-arrow');
+  const bytes = await readFile(path);
+  let table: ReturnType<typeof tableFromIPC>;
+  try {
+    table = tableFromIPC(bytes);
+  } catch (error) {
+    throw notATable(path, 'it is not Arrow, or not whole', error);
+  }
+  const names = table.schema.fields.map(({ name }) => name);
+  const vectors = names.map((_, k) => table.getChildAt(k));
+  return recordsFromTable({
+    path,
+    names,
+    rows: table.numRows,
+    cell: (row, column) => {
+      const value: unknown = vectors[column]?.get(row) ?? null;
+      return typeof value === 'bigint'
+        ? Number(value)
+        : (value as string | number | boolean | null);
+    },
+    place: (row) => `${path}, row ${row + 1}`,
+  });
 }

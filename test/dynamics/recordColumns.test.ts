@@ -66,7 +66,6 @@ function expected(record: MeasureRecord): Map<string, unknown> {
       });
     } else if (typeof value === 'object' && value !== null) {
       for (const [key, part] of Object.entries(value)) {
-        if (key === 'from' && path.startsWith('settings')) continue;
         visit(key === 'value' ? path : [path, key].filter(Boolean).join('.'), part);
       }
     } else cells.set(path, value);
