@@ -72,8 +72,8 @@ export function recordsFromTable(table: TableOfRecords): MeasureRecord[] {
 
 function typedCell(table: TableOfRecords, row: number, column: number, name: string): Cell {
   const cell = table.cell(row, column);
-  if (typeof cell !== 'string' || TEXTS.test(name)) return cell;
   if (cell === '') return null;
+  if (typeof cell !== 'string' || TEXTS.test(name)) return cell;
   if (cell === 'true' || cell === 'false') return cell === 'true';
   const value = Number(cell);
   if (Number.isFinite(value) && cell.trim() !== '') return value;
@@ -92,7 +92,7 @@ function setterOf(name: string): (record: Branch, cell: Cell) => void {
   const isList = name === 'settings.fractions' || name === 'settings.with';
   return (record, cell) => {
     const value = isList ? wordsOf(cell, name) : cell;
-    branchAt(record, path)[last] = value;
+    branchAt(record, path, last)[last] = value;
   };
 }
 
@@ -111,10 +111,10 @@ function pathOf(name: string): string[] {
 }
 
 /** The object or list at a path, made where it is not there: a list where the next key is a number. */
-function branchAt(record: Branch, path: readonly string[]): Branch {
+function branchAt(record: Branch, path: readonly string[], last = ''): Branch {
   let branch = record;
   path.forEach((key, k) => {
-    const isList = /^\d+$/.test(path[k + 1] ?? '');
+    const isList = /^\d+$/.test(path[k + 1] ?? last);
     branch[key] ??= isList ? [] : {};
     branch = branch[key] as Branch;
   });

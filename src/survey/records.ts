@@ -12,8 +12,8 @@ const KEYS = ['whole', 'bound', 'lagrangian', 'boundLagrangian', 'frame', 'setti
 
 /** Mark of a table of records among the metadata of an Arrow schema. */
 const ARROW_MARK = 'settlemark.record';
-/** The metadata of an Arrow file or stream stand near its beginning. */
-const ARROW_HEAD_BYTES = 2 ** 16;
+/** The metadata of an Arrow stream stand at its beginning, those of a file may stand at its end alone. */
+const ARROW_ENDS_BYTES = 2 ** 18;
 
 /**
  * Whether a path is one of records: named like lines of JSON or CSV, or an Arrow table of records.
@@ -25,9 +25,13 @@ export async function isRecords(path: string): Promise<boolean> {
   try {
     const handle = await open(path, 'r');
     try {
-      const head = Buffer.alloc(ARROW_HEAD_BYTES);
-      const { bytesRead } = await handle.read(head, 0, head.length, 0);
-      return head.subarray(0, bytesRead).includes(ARROW_MARK);
+      const { size } = await handle.stat();
+      const end = Buffer.alloc(Math.min(ARROW_ENDS_BYTES, size));
+      for (const position of [0, size - end.length]) {
+        await handle.read(end, 0, end.length, position);
+        if (end.includes(ARROW_MARK)) return true;
+      }
+      return false;
     } finally {
       await handle.close();
     }
