@@ -59,16 +59,6 @@ export async function describeSnapshot(
   return (await import('./raw/describe.ts')).describeRaw(path, options);
 }
 
-/**
- * The files that decide what is read for a snapshot: itself and, if it is raw, its layout.
- * @throws InputError as {@link readSnapshot} if the layout cannot be found or used
- */
-export async function sourceFiles(path: string, options: ReadOptions = {}): Promise<string[]> {
-  const { findLayout } = await import('./raw/find-layout.ts');
-  const { file } = await findLayout(path, options.layout);
-  return file === null ? [path] : [path, file];
-}
-
 // Loaded when first needed, and asked for once: each import costs a small snapshot some turns.
 let arrowReader: Promise<typeof ArrowReader> | undefined;
 let rawReader: Promise<typeof RawReader> | undefined;

@@ -3,8 +3,7 @@ import { createHash } from 'node:crypto';
 import { createReadStream } from 'node:fs';
 import { stat } from 'node:fs/promises';
 import { relative, resolve } from 'node:path';
-import { sourceFiles } from '../snapshot/read.ts';
-import type { ReadOptions } from '../snapshot/reading.ts';
+import { layoutFileOf } from '../snapshot/raw/find-layout.ts';
 import type { PreparedSnapshot } from './prepare.ts';
 
 /** A file as it was seen. */
@@ -19,16 +18,16 @@ export interface Source {
 }
 
 /**
- * The files that a snapshot consists of, its layout among them.
+ * The files that a snapshot consists of: itself or its parts, then its layout.
  * @throws Error if one cannot be looked at or is no regular file
  */
 export async function sourcesOf(
-  file: string,
-  options: ReadOptions,
+  { file, parts, options }: PreparedSnapshot,
   folder: string,
 ): Promise<readonly Source[]> {
+  const layout = await layoutFileOf(file, options.read?.layout);
   return Promise.all(
-    (await sourceFiles(file, options)).map(async (path) => {
+    [...(parts ?? [file]), ...(layout === null ? [] : [layout])].map(async (path) => {
       const status = await stat(path, { bigint: true });
       if (!status.isFile()) throw new Error(`${path} is no regular file`);
       // Times of change cannot be set back by copying tools, as times of modification can.

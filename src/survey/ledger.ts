@@ -74,22 +74,22 @@ export class Ledger {
   }
 
   /** The record of a snapshot as it is now on disk, or null if it must be measured. */
-  async find({ file, options, runFile }: PreparedSnapshot): Promise<MeasureRecord | null> {
-    const key = figureOptions(options);
+  async find(snapshot: PreparedSnapshot): Promise<MeasureRecord | null> {
+    const key = figureOptions(snapshot.options);
     let sources: readonly Source[];
     try {
-      sources = await sourcesOf(file, options.read ?? {}, this.#folder);
+      sources = await sourcesOf(snapshot, this.#folder);
     } catch {
       return null; // The reader says what is wrong with it.
     }
     const last = this.#byName.get(`${key} ${sources[0].name}`);
-    if (last !== undefined && isUntouched(last, sources)) return recordOf(last, { file, runFile });
+    if (last !== undefined && isUntouched(last, sources)) return recordOf(last, snapshot);
     // Bytes are read only where some entry could be of them.
     if (!this.#sizes.has(`${key} ${bytesOf(sources)}`)) return null;
     const sums = await fingerprint(sources, this.#folder).catch(() => null);
     const same = sums && this.#byContent.get(`${key} ${sums.join(' ')}`);
     if (sums === null || !same) return null;
-    const record = recordOf(same, { file, runFile });
+    const record = recordOf(same, snapshot);
     // Known by another name or date: noted, so that it need not be read the next time.
     if (record !== null) await this.#append(this.#headOf(key, sources, sums), same.json);
     return record;
@@ -115,8 +115,8 @@ export class Ledger {
   }
 
   /** The files of a snapshot as they are now; null if they cannot be looked at, or are no files. */
-  async look({ file, options }: PreparedSnapshot): Promise<readonly Source[] | null> {
-    return sourcesOf(file, options.read ?? {}, this.#folder).catch(() => null);
+  async look(snapshot: PreparedSnapshot): Promise<readonly Source[] | null> {
+    return sourcesOf(snapshot, this.#folder).catch(() => null);
   }
 
   /** Makes sure that what was kept is on the disk. */
@@ -196,7 +196,7 @@ export class Ledger {
       // One call, so that lines of several processes do not mix.
       const { bytesWritten } = await handle.write(bytes, 0, bytes.length);
       this.#isTorn = bytesWritten < bytes.length;
-      if (this.#isTorn) throw Object.assign(new Error('the disk is full'), { code: 'ENOSPC' });
+      if (this.#isTorn) throw new Error('the disk is full');
       this.#index({ ...head, json });
     } catch (error) {
       this.#giveUp(error);
@@ -242,12 +242,9 @@ function entryIn(line: string): Entry | null {
 }
 
 /** The record under the names that its files have now. */
-function recordOf(
-  { json }: Entry,
-  names: Pick<MeasureRecord, 'file' | 'runFile'>,
-): MeasureRecord | null {
+function recordOf({ json }: Entry, { file, runFile }: PreparedSnapshot): MeasureRecord | null {
   try {
-    return { ...(JSON.parse(json) as MeasureRecord), ...names };
+    return { ...(JSON.parse(json) as MeasureRecord), file, runFile };
   } catch {
     return null;
   }
