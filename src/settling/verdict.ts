@@ -4,6 +4,7 @@ import type { MeasureRecord } from '../dynamics/record.ts';
 import type { Remark } from '../snapshot/particles.ts';
 import { auditOf, type Audit } from './audit.ts';
 import { cutAt } from './cut.ts';
+import { gravityTest } from './gravityTest.ts';
 import { LIMITS } from './limits.ts';
 import { autocorrelationTime, bootstrapHalfWidth, meanOf } from './means.ts';
 import { decide, type Decision, type Finding, type State, type Track } from './rule.ts';
@@ -89,7 +90,11 @@ export function verdictOf(records: readonly MeasureRecord[]): Verdict {
     independentSnapshots: independent?.count ?? null,
     advisedSpacing: independent === null ? null : independent.spacing * crossingTime,
     audit: auditOf(series.records),
-    remarks: [...series.remarks, ...remarksOf(series, decision, level)],
+    remarks: [
+      ...series.remarks,
+      ...remarksOf(series, decision, level),
+      ...gravityTest(series.records.slice(decision.settledFrom ?? 0)),
+    ],
   };
 }
 
