@@ -30,6 +30,7 @@ import type { FileOutcome } from './survey/many.ts';
 import type { SurveyOptions } from './survey/measure.ts';
 import type { PreparedSnapshot } from './survey/prepare.ts';
 import type { RunFile } from './survey/runFile.ts';
+import type { SeriesOptions } from './survey/series.ts';
 
 export {
   EXIT,
@@ -64,6 +65,8 @@ export type {
   Setting,
   SettingOrigin,
   SofteningSetting,
+  TimeSetting,
+  TimeSource,
   UnitsSetting,
   Vector,
 } from './dynamics/record.ts';
@@ -111,8 +114,11 @@ export { LEDGER_NAME } from './survey/ledgerName.ts';
 export type { Ledger } from './survey/ledger.ts';
 export type { FileOutcome } from './survey/many.ts';
 export type { Stage, SurveyOptions } from './survey/measure.ts';
-export type { PreparedSnapshot } from './survey/prepare.ts';
+export type { PreparedOptions, PreparedSnapshot } from './survey/prepare.ts';
+export type { SeriesRange } from './survey/range.ts';
 export type { RunFile, RunSettings } from './survey/runFile.ts';
+export type { SeriesOptions } from './survey/series.ts';
+export type { StatedTime, TimeSettings } from './survey/times.ts';
 
 /** Options of {@link measure}: those of the measurement, of the reader, and the number of threads. */
 export interface MeasureCall extends SurveyOptions {
@@ -164,6 +170,19 @@ export async function prepareSnapshots(
   options: SurveyOptions = {},
 ): Promise<PreparedSnapshot[]> {
   return (await import('./survey/prepare.ts')).prepareSnapshots(files, options);
+}
+
+/**
+ * The snapshots of one run, as a series: in the order of time, of several at one time the last, cut
+ * to `from`, `to` and `every`; errors as {@link prepareSnapshots} and {@link findSnapshots}, and
+ * UnanswerableError if nothing is left. What it returns can be measured by {@link measureFiles}.
+ * @param paths - files and folders, all of one run
+ */
+export async function findSeries(
+  paths: readonly string[],
+  options: SeriesOptions = {},
+): Promise<PreparedSnapshot[]> {
+  return (await import('./survey/series.ts')).findSeries(paths, options);
 }
 
 /** Reads and checks a run file; errors as {@link prepareSnapshots}. */

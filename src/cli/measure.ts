@@ -1,16 +1,11 @@
 /** `settlemark measure`: one record a snapshot. */
 import {
   extrasNamed,
-  findSnapshots,
   measureFiles,
-  prepareSnapshots,
   recordsToArrow,
   recordsToCsv,
-  type CentreMethod,
   type ExitCode,
-  type ForcesOrigin,
   type MeasureRecord,
-  type SofteningKernel,
 } from '../index.ts';
 import { turn, withCrew } from './crew.ts';
 import { eachPath } from './many.ts';
@@ -23,27 +18,12 @@ import {
   type Format,
 } from './output.ts';
 import { startProgress } from './progress.ts';
-import { surveyOptionsOf, type ReadingOptions } from './readOptions.ts';
 import { remarksText } from './remarks.ts';
+import { snapshotsOf, surveyOf, type SnapshotOptions } from './snapshots.ts';
 import { paintFor, NO_PAINT } from './style.ts';
 import { write, type Streams } from './streams.ts';
 
-export interface MeasureCommandOptions extends ReadingOptions {
-  /** True is commander's word for an option that was not given. */
-  readonly runFile?: string | boolean;
-  readonly units?: string;
-  readonly gravity?: number;
-  readonly softening?: number;
-  readonly softeningKernel?: SofteningKernel;
-  readonly error?: number;
-  readonly exact?: boolean;
-  readonly fractions?: readonly number[];
-  readonly centre?: CentreMethod;
-  readonly coulombFactor?: number;
-  readonly forces?: ForcesOrigin;
-  readonly coincident?: 'leave-out' | 'refuse';
-  readonly with?: readonly string[];
-  readonly shells?: number;
+export interface MeasureCommandOptions extends SnapshotOptions {
   readonly threads?: number;
   readonly format?: Format;
   readonly out?: string;
@@ -56,18 +36,17 @@ export async function measure(
   options: MeasureCommandOptions,
   streams: Streams,
 ): Promise<ExitCode> {
-  const { threads, format: asked, out, quiet = false } = options;
-  const format = formatOf(asked, out, FORMATS);
+  const { threads, format: askedFormat, out, quiet = false, ...rest } = options;
+  const format = formatOf(askedFormat, out, FORMATS);
   refuseTerminal(format, out, streams);
-  const survey = await surveyOptionsOf(options, streams.interrupt);
   extrasNamed(options.with ?? []); // A name that is not known is told before anything is read.
-  const found: string[] = [];
-  const before = await eachPath(args, streams, async (arg) => {
-    found.push(...(await findSnapshots([arg])));
-  });
-  await refuseOverwriting(out, found);
-  const snapshots = await prepareSnapshots(found, survey);
+  const asked = await surveyOf(rest, streams);
+  const { snapshots, code: before } = await snapshotsOf(args, asked, streams);
   const files = snapshots.map(({ file }) => file);
+  await refuseOverwriting(
+    out,
+    snapshots.flatMap(({ file, parts }) => parts ?? [file]),
+  );
   const isInParts = snapshots.length === 1 && snapshots[0].parts !== null;
   const isSeveral = (args.length > 1 && !isInParts) || files.length > 1;
   const remarksApart = !quiet && (format !== 'table' || out !== undefined);
@@ -83,7 +62,7 @@ export async function measure(
         files.length > 1 ? `${begun + 1} of ${files.length}, ${files[begun]}` : files[0];
       const outcomes = await measureFiles(
         snapshots,
-        { ...survey, onStage: (stage, fraction) => progress.stage(name(), stage, fraction) },
+        { ...asked.survey, onStage: (stage, fraction) => progress.stage(name(), stage, fraction) },
         crew,
       );
       const code = await eachPath(

@@ -46,7 +46,7 @@ export function buildProgram(streams: Streams, done: (code: ExitCode) => void): 
       done(await (await import('./describe.ts')).describe(files, options, streams));
     });
 
-  measuring(reading(program.command('measure <snapshot...>')))
+  following(measuring(reading(program.command('measure <snapshot...>'))))
     .description('measure snapshots: energies, virial ratio, radii, times, each with its error')
     .addOption(formats(['table', 'json', 'ndjson', 'csv', 'arrow']))
     .addOption(new Option('--out <file>', 'write to a file; its ending may name the format'))
@@ -55,7 +55,7 @@ export function buildProgram(streams: Streams, done: (code: ExitCode) => void): 
       done(await (await import('./measure.ts')).measure(snapshots, options, streams));
     });
 
-  measuring(reading(program.command('track <run...>')))
+  following(measuring(reading(program.command('track <run...>'))))
     .description('say whether a run has settled, since when, and on what evidence')
     .addOption(formats(['table', 'json']))
     .addOption(new Option('--out <file>', 'write to a file; its ending may name the format'))
@@ -154,6 +154,18 @@ function measuring(command: Command): Command {
       ).choices(['leave-out', 'refuse']),
     )
     .addOption(threads());
+}
+
+function following(command: Command): Command {
+  return command
+    .option('--times <file>', 'times of the snapshots: CSV with the columns file,time')
+    .option('--no-times', 'not even times.csv beside the snapshots')
+    .option('--interval <DT>', 'snapshot k has the time k DT', numberOf('--interval'))
+    .option('--start <T>', 'time of the first, with --interval (0)', numberOf('--start'))
+    .option('--time-pattern <name>', 'time in the names of files: snap_{time}.bin')
+    .option('--from <T>', 'only snapshots from this time on', numberOf('--from'))
+    .option('--to <T>', 'only snapshots up to this time', numberOf('--to'))
+    .option('--every <n>', 'only every n-th of them', wholeOf('--every', 1));
 }
 
 function making(command: Command): Command {

@@ -3,7 +3,9 @@ import {
   parseColumns,
   type MeasureOptions,
   type ReadOptions,
+  type SeriesRange,
   type SurveyOptions,
+  type TimeSettings,
 } from '../index.ts';
 
 /** As commander gives them; what was not given is undefined. */
@@ -32,13 +34,16 @@ export async function readOptionsOf(
 }
 
 /** What commands have besides the options that decide figures. */
-interface CommandOptions extends ReadingOptions, Omit<MeasureOptions, 'fromRunFile' | 'units'> {
+export interface CommandOptions
+  extends ReadingOptions, TimeSettings, SeriesRange, Omit<MeasureOptions, 'fromRunFile' | 'units'> {
   readonly units?: string;
   readonly runFile?: string | boolean;
 }
 
 /** Options that say how a command works and what it writes: none of them changes a figure. */
 const OF_THE_COMMAND = ['threads', 'format', 'out', 'quiet', 'ledger'] as const;
+/** Options that say which snapshots are meant. */
+const OF_THE_SERIES = ['from', 'to', 'every'] as const;
 
 /**
  * The options of a survey, without those of the command itself.
@@ -49,7 +54,8 @@ export async function surveyOptionsOf(
   signal: AbortSignal,
 ): Promise<SurveyOptions> {
   const { layout, columns, only, group, within, about, runFile, ...rest } = options;
-  for (const key of OF_THE_COMMAND) delete (rest as Record<string, unknown>)[key];
+  for (const key of [...OF_THE_COMMAND, ...OF_THE_SERIES])
+    delete (rest as Record<string, unknown>)[key];
   return {
     ...rest,
     ...(typeof runFile === 'string' || runFile === false ? { runFile } : {}),

@@ -1,17 +1,18 @@
 /** `settlemark track`: has the run settled, when, and how do we know? */
 import {
-  findSnapshots,
+  findSeries,
   InputError,
   isRecords,
   measureFiles,
-  prepareSnapshots,
   readRecords,
   UnanswerableError,
   verdictOf,
   type ExitCode,
   EXIT,
   type MeasureRecord,
+  type PreparedSnapshot,
   type Remark,
+  type SurveyOptions,
   type Verdict,
 } from '../index.ts';
 import { turn, withCrew } from './crew.ts';
@@ -20,7 +21,7 @@ import { ledgerFor, type LedgerOptions } from './ledger.ts';
 import type { MeasureCommandOptions } from './measure.ts';
 import { formatOf, refuseOverwriting, withOutput } from './output.ts';
 import { startProgress } from './progress.ts';
-import { surveyOptionsOf } from './readOptions.ts';
+import { surveyOf } from './snapshots.ts';
 import { NO_PAINT, paintFor } from './style.ts';
 import type { Streams } from './streams.ts';
 
@@ -34,18 +35,24 @@ export async function track(
   options: TrackOptions,
   streams: Streams,
 ): Promise<ExitCode> {
-  const { out } = options;
-  const format = formatOf(options.format, out, ['table', 'json']);
+  const { threads, format: askedFormat, out, quiet = false, ...rest } = options;
+  const format = formatOf(askedFormat, out, ['table', 'json']);
   const records: MeasureRecord[] = [];
-  const snapshots: string[] = [];
+  const paths: string[] = [];
   for (const arg of args) {
     if (await isRecords(arg)) records.push(...(await readRecords(arg)));
-    else snapshots.push(...(await findSnapshots([arg])));
+    else paths.push(arg);
   }
-  await refuseOverwriting(out, [...args, ...snapshots]);
+  const { survey, range } = await surveyOf(rest, streams);
+  const snapshots = paths.length > 0 ? await findSeries(paths, { ...survey, ...range }) : [];
+  await refuseOverwriting(out, [
+    ...args,
+    ...snapshots.flatMap(({ file, parts }) => parts ?? [file]),
+  ]);
+  const work = { snapshots, survey, threads, quiet, ledger: rest.ledger };
   // A file that cannot be written is told of before anything is measured.
   await withOutput(out, streams, async (sink) => {
-    const verdict = await judge(snapshots, options, records, streams);
+    const verdict = await judge(work, records, streams);
     if (format === 'json') return sink(`${JSON.stringify(verdict, null, 2)}\n`);
     const { verdictPage } = await import('./verdictPage.ts');
     return sink(
@@ -55,16 +62,18 @@ export async function track(
   return EXIT.done;
 }
 
-async function judge(
-  snapshots: readonly string[],
-  options: TrackOptions,
-  records: MeasureRecord[],
-  streams: Streams,
-): Promise<Verdict> {
+interface Work {
+  readonly snapshots: readonly PreparedSnapshot[];
+  readonly survey: SurveyOptions;
+  readonly threads: number | undefined;
+  readonly quiet: boolean;
+  readonly ledger: LedgerOptions['ledger'];
+}
+
+async function judge(work: Work, records: MeasureRecord[], streams: Streams): Promise<Verdict> {
+  const { snapshots } = work;
   const { skipped, remarks: ofLedger } =
-    snapshots.length > 0
-      ? await measureAll(snapshots, options, records, streams)
-      : { skipped: [], remarks: [] };
+    snapshots.length > 0 ? await measureAll(work, records, streams) : { skipped: [], remarks: [] };
   if (records.length === 0) {
     throw new UnanswerableError(
       'unanswerable.series',
@@ -73,7 +82,7 @@ async function judge(
     );
   }
   const found = verdictOf(records);
-  const remarks: Remark[] = [...found.remarks, ...ofLedger];
+  const remarks: Remark[] = [...found.remarks, ...ofLedger, ...remarksOfTimes(snapshots)];
   if (skipped.length > 0) {
     remarks.unshift({
       code: 'snapshotsSkipped',
@@ -84,19 +93,31 @@ async function judge(
   return { ...found, remarks };
 }
 
+const OF_TIMES = ['time.repeated', 'time.missing', 'time.noFile'];
+
+/** What was found about times before anything was read: of each kind the first, and how many more. */
+function remarksOfTimes(snapshots: readonly PreparedSnapshot[]): Remark[] {
+  const all = snapshots.flatMap(({ remarks }) => remarks);
+  return OF_TIMES.flatMap((wanted) => {
+    const [first, ...others] = all.filter(({ code }) => code === wanted);
+    if (first === undefined) return [];
+    const text = others.length === 0 ? first.text : `${first.text} (and ${others.length} more)`;
+    return [{ ...first, text }];
+  });
+}
+
 /** Measures all snapshots; those that cannot be are told on standard error and returned. */
 async function measureAll(
-  files: readonly string[],
-  options: TrackOptions,
+  { snapshots, survey, threads, quiet, ledger: asked }: Work,
   records: MeasureRecord[],
   streams: Streams,
 ): Promise<{ readonly skipped: readonly string[]; readonly remarks: readonly Remark[] }> {
-  const { threads, quiet = false } = options;
-  const survey = await surveyOptionsOf(options, streams.interrupt);
-  const snapshots = await prepareSnapshots(files, survey);
   const asksFor = snapshots.find((snapshot) => snapshot.threads !== null)?.threads ?? undefined;
   const skipped: string[] = [];
-  const { ledger, remarks } = await ledgerFor(files, options);
+  const { ledger, remarks } = await ledgerFor(
+    snapshots.map(({ file }) => file),
+    asked === undefined ? {} : { ledger: asked },
+  );
   await withCrew(threads ?? asksFor, streams.interrupt, async (crew) => {
     const progress = startProgress(streams.stderr, quiet, crew);
     try {

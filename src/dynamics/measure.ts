@@ -14,7 +14,7 @@ import { fitFileForces, type FileForces } from './fileForces.ts';
 import { forcesFromFile, requireFileForces, requireForceColumns } from './forcesFromFile.ts';
 import { lagrangianRadii } from './lagrangian.ts';
 import { measureExtras } from './measureExtras.ts';
-import { RECORD_VERSION, type MeasureRecord, type Vector } from './record.ts';
+import { RECORD_VERSION, type MeasureRecord, type TimeSetting, type Vector } from './record.ts';
 import { findRemarks } from './remarks.ts';
 import { settle, type MeasureOptions } from './settings.ts';
 import { frameOf } from './sums.ts';
@@ -28,6 +28,8 @@ export interface MeasureContext {
   readonly readSeconds?: number;
   /** Run file whose defaults are among the options, for the record. */
   readonly runFile?: string | null;
+  /** Time that was stated for the snapshot from outside; what the particles say if not given. */
+  readonly time?: TimeSetting | null;
   readonly onStage?:
     ((stage: ForceStage | 'dynamics', fraction: number | null) => void) | undefined;
 }
@@ -50,7 +52,8 @@ export async function measureParticles(
   const start = performance.now();
   const particles = toPhysical(given);
   const { file, selection } = particles.origin;
-  const settings = settle(options, particles);
+  const decided = settle(options, particles);
+  const settings = context.time ? { ...decided, time: context.time } : decided;
   const gravity = settings.gravity.value;
   const { kernel, length } = settings.softening.value;
   const fromFile = settings.forces.value === 'file';
@@ -144,7 +147,7 @@ export async function measureParticles(
   const record = {
     record: RECORD_VERSION,
     file,
-    time: particles.time,
+    time: settings.time.value,
     runFile: context.runFile ?? null,
     ...(selection && { selection }),
     settings,

@@ -29,6 +29,14 @@ export interface UnitsSetting extends Setting<string> {
   readonly system?: Omit<UnitSystem, 'name'>;
 }
 
+/** Where a time was had: the snapshot itself, a table, its place in the series, or its name. */
+export type TimeSource = 'snapshot' | 'times file' | 'interval' | 'file name';
+
+/** The time of the snapshot; source and value are null if nothing tells it. */
+export interface TimeSetting extends Setting<number | null> {
+  readonly source: TimeSource | null;
+}
+
 export type CentreMethod = 'density' | 'shrinking' | 'mass' | 'potential';
 
 export interface SofteningSetting {
@@ -40,6 +48,7 @@ export interface SofteningSetting {
 }
 
 export interface RecordSettings {
+  readonly time: TimeSetting;
   readonly gravity: Setting<number>;
   readonly units: UnitsSetting;
   readonly softening: Setting<SofteningSetting>;

@@ -39,6 +39,16 @@ export async function recordSchema(): Promise<ZodType> {
   const centreMethod = z.enum(['density', 'shrinking', 'mass', 'potential']);
 
   const settings = z.object({
+    time: z
+      .object({
+        value: z.number().nullable(),
+        from: origin,
+        source: z
+          .enum(['snapshot', 'times file', 'interval', 'file name'])
+          .nullable()
+          .describe('how the time was had; null if nothing tells it'),
+      })
+      .describe('time of the snapshot [time]'),
     gravity: setting(
       z.number().positive(),
       'constant of gravitation G [length³ mass⁻¹ time⁻²] that was used',

@@ -11,6 +11,7 @@ import type {
   RecordSettings,
   Setting,
   SettingOrigin,
+  TimeSetting,
   UnitsSetting,
 } from './record.ts';
 
@@ -60,6 +61,7 @@ export function settle(options: MeasureOptions, particles: Particles): RecordSet
   const { gravity, units } = settleGravity(options, particles);
   const fractions = settleFractions(options);
   return {
+    time: timeOfSnapshot(particles.time),
     gravity,
     units,
     softening: settleSoftening(options, particles),
@@ -82,6 +84,12 @@ export function settle(options: MeasureOptions, particles: Particles): RecordSet
       DEFAULT_SHELLS,
     ),
   };
+}
+
+function timeOfSnapshot(time: number | null): TimeSetting {
+  return time === null
+    ? { value: null, from: 'default', source: null }
+    : { value: time, from: 'snapshot', source: 'snapshot' };
 }
 
 function decide<T>(

@@ -46,6 +46,23 @@ async function readWhole(path: string, options: ReadOptions, crew?: Crew): Promi
 }
 
 /**
+ * The time that a snapshot states, or null; no body is read, and standard input not at all.
+ * @throws InputError as {@link readSnapshot}, of what has to be read
+ */
+export async function readStatedTime(
+  path: string,
+  options: ReadOptions = {},
+): Promise<number | null> {
+  if (path === '-') return null;
+  return withInput(path, async (file) => {
+    const facts = (await isArrow(file, options))
+      ? await (await arrow()).readArrowFacts(file, options)
+      : await (await raw()).readRawFacts(file, options);
+    return facts.time;
+  });
+}
+
+/**
  * Says what is in a snapshot and reads no more of it than that takes; errors as {@link readSnapshot}.
  * @param values - whether values are looked at, which means to decompress them in a compressed file
  */

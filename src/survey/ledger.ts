@@ -14,6 +14,7 @@ import { linesOf } from '../snapshot/lines.ts';
 import type { Remark } from '../snapshot/particles.ts';
 import { figureOptions, fingerprint, sameFile, sourcesOf, type Source } from './fingerprint.ts';
 import type { PreparedSnapshot } from './prepare.ts';
+import { BEFORE_READING } from './times.ts';
 
 /** Form of a line of the ledger. */
 const LEDGER_VERSION = 1;
@@ -75,7 +76,7 @@ export class Ledger {
 
   /** The record of a snapshot as it is now on disk, or null if it must be measured. */
   async find(snapshot: PreparedSnapshot): Promise<MeasureRecord | null> {
-    const key = figureOptions(snapshot.options);
+    const key = keyOf(snapshot);
     let sources: readonly Source[];
     try {
       sources = await sourcesOf(snapshot, this.#folder);
@@ -110,7 +111,7 @@ export class Ledger {
     const after = await this.look(snapshot);
     if (sums === null || after === null || !before.every((source, k) => sameFile(source, after[k])))
       return;
-    const head = this.#headOf(figureOptions(snapshot.options), after, sums);
+    const head = this.#headOf(keyOf(snapshot), after, sums);
     await this.#append(head, JSON.stringify(record));
   }
 
@@ -241,10 +242,21 @@ function entryIn(line: string): Entry | null {
   }
 }
 
-/** The record under the names that its files have now. */
-function recordOf({ json }: Entry, { file, runFile }: PreparedSnapshot): MeasureRecord | null {
+/** Options that change a figure, and the time if it was stated from outside. */
+function keyOf({ options, time }: PreparedSnapshot): string {
+  const key = figureOptions(options);
+  return time === null ? key : `${key} ${time.value} ${time.source} ${time.from}`;
+}
+
+/** The record under the names that its files have now, with what was found this time before reading. */
+function recordOf({ json }: Entry, snapshot: PreparedSnapshot): MeasureRecord | null {
+  const { file, runFile, remarks: found } = snapshot;
   try {
-    return { ...(JSON.parse(json) as MeasureRecord), file, runFile };
+    const record = JSON.parse(json) as MeasureRecord;
+    const earlier = record.remarks.filter(({ code }) => BEFORE_READING.has(code));
+    const isSame = JSON.stringify(earlier) === JSON.stringify(found);
+    const others = record.remarks.filter((remark) => !earlier.includes(remark));
+    return { ...record, file, runFile, remarks: isSame ? record.remarks : [...found, ...others] };
   } catch {
     return null;
   }

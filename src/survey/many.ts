@@ -77,7 +77,7 @@ async function prepareAll(
     if (!isOfInput(error)) throw error;
     const each = paths.map(async (file): Promise<Entry> => {
       try {
-        return (await prepareEach([file], options))[0];
+        return (await prepareEach([file], options, paths))[0];
       } catch (reason) {
         if (!isOfInput(reason)) throw reason;
         return { file, record: null, error: reason };

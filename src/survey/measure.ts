@@ -4,15 +4,17 @@ import { measureParticles } from '../dynamics/measure.ts';
 import type { MeasureRecord } from '../dynamics/record.ts';
 import type { MeasureOptions } from '../dynamics/settings.ts';
 import type { Crew } from '../parallel/crew.ts';
+import type { Particles, Remark } from '../snapshot/particles.ts';
 import { readSnapshot } from '../snapshot/read.ts';
 import type { FieldName, ReadOptions } from '../snapshot/reading.ts';
 import { BYTES_OF_FILE_FORCES, requireMemory } from './memory.ts';
 import { prepareSnapshots, type PreparedSnapshot } from './prepare.ts';
+import type { StatedTime, TimeSettings } from './times.ts';
 
 /** Stages of one snapshot, for progress; `together` stands for several small ones at once. */
 export type Stage = 'together' | 'reading' | 'tree' | 'forces' | 'error' | 'dynamics';
 
-export interface SurveyOptions extends MeasureOptions {
+export interface SurveyOptions extends MeasureOptions, TimeSettings {
   readonly read?: ReadOptions;
   /**
    * Run file whose defaults stand below these options; false for none. If not given, it is
@@ -42,7 +44,7 @@ export async function measureFile(
 
 /** {@link measureFile} for a snapshot whose options are settled. */
 export async function measurePrepared(
-  { file, parts, options, runFile }: PreparedSnapshot,
+  { file, parts, options, runFile, time, remarks }: PreparedSnapshot,
   watch: Pick<SurveyOptions, 'read' | 'onStage'>,
   crew: Crew,
 ): Promise<MeasureRecord> {
@@ -66,14 +68,35 @@ export async function measurePrepared(
       (options.softening ?? 0) > 0,
       moreBytes,
     );
-    const particles = await readSnapshot(file, read, crew);
+    const particles = told(await readSnapshot(file, read, crew), time, remarks);
     const readSeconds = (performance.now() - start) / 1000;
     const { onStage } = watch;
-    return measureParticles(particles, options, crew, { readSeconds, onStage, runFile });
+    return measureParticles(particles, options, crew, { readSeconds, onStage, runFile, time });
   });
 }
 
 /** Columns to read besides those that are read anyway. */
 function withForces(optional: readonly FieldName[] = []): readonly FieldName[] {
   return [...new Set<FieldName>([...optional, 'potential', 'acceleration'])];
+}
+
+/** Agreement of two statements of a time: single precision, with room. */
+const SAME_TIME = 1e-6;
+
+/** Particles with the remarks that were made before they were read, and one if their time is another. */
+function told(particles: Particles, time: StatedTime | null, before: readonly Remark[]): Particles {
+  const { origin, time: own } = particles;
+  const remarks = [...origin.remarks, ...before];
+  const value = time?.value ?? own;
+  if (own !== null && value !== null && time !== null) {
+    const scale = Math.max(Math.abs(own), Math.abs(value));
+    if (Math.abs(own - value) > SAME_TIME * scale) {
+      remarks.push({
+        code: 'time.differs',
+        text: `${origin.file} says that its time is ${own}; ${value} was used (${time.source})`,
+        remedy: 'Look which of the two is meant.',
+      });
+    }
+  }
+  return { ...particles, time: value, origin: { ...origin, remarks } };
 }

@@ -27,6 +27,8 @@ import {
 } from '../snapshot/schemaIssues.ts';
 import { readTextFile } from '../snapshot/textFile.ts';
 import { UNIT_SYSTEMS } from '../snapshot/units.ts';
+import { checkRange, type SeriesRange } from './range.ts';
+import { checkTimeSettings, type TimeSettings } from './times.ts';
 
 /** Name of the file that is looked for in the folder of a snapshot. */
 export const RUN_FILE_NAME = 'settlemark.json';
@@ -37,7 +39,9 @@ type SelectingOption = 'only' | 'group' | 'within' | 'about';
 export interface RunSettings
   extends
     Omit<MeasureOptions, 'fromRunFile'>,
-    Pick<ReadOptions, 'layout' | 'columns' | SelectingOption> {
+    Pick<ReadOptions, 'layout' | 'columns' | SelectingOption>,
+    TimeSettings,
+    SeriesRange {
   readonly threads?: number;
 }
 
@@ -96,7 +100,13 @@ async function complete(
   places: JsonPlaces,
   stated: RunSettings,
 ): Promise<RunSettings> {
-  const { layout, units: named, with: extras = [] } = stated;
+  const { layout, times, units: named, with: extras = [] } = stated;
+  checkTimeSettings(stated, (key, text, remedy) => {
+    throw invalid(path, places.valueAt([key]), `${key}: ${text}`, remedy);
+  });
+  checkRange(stated, (key, text, remedy) => {
+    throw invalid(path, places.valueAt([key]), `${key}: ${text}`, remedy);
+  });
   extras.forEach((name, k) => checkExtra(path, places, name, k));
   let units = named;
   if (typeof units === 'string' && !isUnitsFile(units)) checkName(path, places, units);
@@ -111,6 +121,7 @@ async function complete(
   return {
     ...stated,
     ...(layout !== undefined && { layout: beside(path, layout) }),
+    ...(typeof times === 'string' && { times: beside(path, times) }),
     ...(units !== undefined && { units }),
   };
 }

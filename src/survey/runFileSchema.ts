@@ -83,6 +83,18 @@ const shape = {
     .max(MOST_SHELLS)
     .optional()
     .describe('number of shells of equal number of bodies'),
+  times: z
+    .union([z.string().min(1), z.literal(false)], {
+      error: 'the path of a table of times, or false',
+    })
+    .optional()
+    .describe('table of times, a path from this file; false: not even times.csv'),
+  interval: z.number().positive().optional().describe('time from one snapshot to the next'),
+  start: z.number().optional().describe('time of the first snapshot, with interval (0)'),
+  timePattern: z.string().min(1).optional().describe('name of a snapshot with {time} in it'),
+  from: z.number().optional().describe('no snapshots of the series before this time'),
+  to: z.number().optional().describe('no snapshots of the series after this time'),
+  every: z.int().min(1).optional().describe('only every n-th snapshot of the series'),
   threads: z.int().min(1).optional().describe('worker threads'),
 } satisfies Record<keyof RunSettings, z.ZodType>;
 

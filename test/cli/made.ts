@@ -30,6 +30,7 @@ export function madeRecord(change: Change = {}): MeasureRecord {
     time: 12.5,
     runFile: null,
     settings: {
+      time: { value: 12.5, from: 'snapshot', source: 'snapshot' },
       gravity: { value: 1, from: 'default' },
       units: { value: 'natural', from: 'default' },
       softening: { value: { length: 0, support: 0, kernel: 'none' }, from: 'default' },

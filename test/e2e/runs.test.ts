@@ -242,3 +242,57 @@ describe('some of the bodies', () => {
     expect(await failure(2, 'measure', at('kinds/a.bin'))).toContain('mean "only"');
   });
 });
+
+describe('times and ranges of a series', () => {
+  beforeAll(() => {
+    for (const k of [1, 2, 3, 10]) put(`series/s_${k}.bin`, PAIR);
+  });
+
+  const timesOf = async (...argv: string[]) =>
+    (await records(at('series'), ...argv)).map(({ time }) => time);
+
+  it('come from an interval, a name, a table, or the run file', async () => {
+    expect(await timesOf()).toEqual([null, null, null, null]);
+    expect(await timesOf('--interval', '0.5', '--start', '2')).toEqual([2, 2.5, 3, 3.5]);
+    expect(await timesOf('--time-pattern', 's_{time}.bin', '--from', '2', '--to', '9')).toEqual([
+      2, 3,
+    ]);
+    const table = put('clock.csv', 'file,time\ns_1.bin,9\ns_2.bin,8\ns_3.bin,7\ns_10.bin,6\n');
+    expect(await timesOf('--times', table, '--every', '2')).toEqual([6, 8]);
+    put('series/settlemark.json', { timePattern: 's_{step}.bin', interval: 0.1, to: 0.3 });
+    const [first, ...others] = await records(at('series'));
+    expect(first.settings.time).toEqual({ value: 0.1, from: 'run file', source: 'file name' });
+    expect(others.map(({ time }) => time)).toEqual([0.2, 0.1 * 3]);
+    // The command line decides about times altogether.
+    expect(await timesOf('--times', table, '--to', '7')).toEqual([6, 7]);
+  });
+
+  it('serve track, which says what is wrong with a table', async () => {
+    rmSync(at('series/settlemark.json'), { force: true });
+    const argv = ['track', at('series'), '--format', 'json', '--quiet'];
+    const timeless = await settlemark(argv);
+    expect({ code: timeless.code, out: timeless.out }).toEqual({ code: 4, out: '' });
+    const table = put('part.csv', 'file,time\ns_1.bin,0\ns_2.bin,1\ns_3.bin,2\ngone.bin,3\n');
+    const { code, out } = await settlemark([...argv, '--times', table]);
+    expect(code).toBe(0);
+    const { remarks } = JSON.parse(out) as { remarks: { code: string; text: string }[] };
+    const told = remarks.filter((remark) => remark.code.startsWith('time.'));
+    expect(told.map((remark) => remark.code)).toEqual(['time.missing', 'time.noFile']);
+    expect(told[0].text).toContain('s_10.bin is not in');
+    expect(told[1].text).toContain('gone.bin');
+  });
+
+  it('that cannot be are usage errors before anything is measured', async () => {
+    const clash = ['measure', at('series'), '--interval', '1', '--time-pattern', 's_{time}.bin'];
+    expect(await failure(2, ...clash)).toContain('(usage.times)');
+    expect(await failure(2, 'track', at('series'), '--from', '2', '--to', '1')).toContain(
+      '(usage.range)',
+    );
+    expect(await failure(3, 'track', at('series'), '--times', at('none.csv'))).toContain(
+      '(input.notFound)',
+    );
+    expect(await failure(4, 'measure', at('series'), '--from', '2')).toContain(
+      '(unanswerable.noTime)',
+    );
+  });
+});

@@ -14,7 +14,8 @@ import { seldom } from '../pieces.ts';
 import type { FieldName, ReadOptions } from '../reading.ts';
 import { BatchPlanner } from './batches.ts';
 import type { StoredColumn } from './convert.ts';
-import { isFact, readFacts } from './facts.ts';
+import { isFact, readFacts, type SnapshotFacts } from './facts.ts';
+import { FileCursor, readFooter, streamMessages } from './framing.ts';
 import { type NumberKind, type PlannedColumn } from './kinds.ts';
 import { allocateColumns, loadBatches, type ColumnSet } from './load.ts';
 import type { Schema } from './messages.ts';
@@ -101,6 +102,20 @@ export async function readArrowParts(
       }
     }),
   );
+}
+
+/** The facts that the schema of an open file states; no batch is read. Errors as {@link readArrow}. */
+export async function readArrowFacts(file: OpenFile, options: ReadOptions): Promise<SnapshotFacts> {
+  return withArrowFile(file, async (isFile) => {
+    if (isFile) return readFacts((await readFooter(file)).schema.metadata, file.path);
+    const planner = particlePlanner(file.path, options);
+    const cursor = new FileCursor(file, 0, file.size);
+    for await (const message of streamMessages(cursor, file.path, options.signal)) {
+      await planner.take(message);
+      if (planner.schema) break;
+    }
+    return readFacts(planner.schema?.metadata ?? new Map<string, string>(), file.path);
+  });
 }
 
 /** Reads a stream of bytes that can be taken only once; errors and columns as {@link readArrow}. */

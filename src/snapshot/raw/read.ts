@@ -18,6 +18,7 @@ import type { PlacedComponent } from './components.ts';
 import { allocateIds } from './decode.ts';
 import { findLayout, type FoundLayout } from './find-layout.ts';
 import { frameOf } from './frame.ts';
+import { readHeader } from './header.ts';
 import { layOverOrExplain } from './fit.ts';
 import { isSkip, type Layout } from './layout.ts';
 import {
@@ -243,6 +244,15 @@ function unreadOf(layout: Layout, plan: Plan): Unread[] {
   return [...new Set(fields)].map((name): Unread => ({ name, what: 'field' })).concat(items);
 }
 
+/** Time, units, G and softening of an open file; no body is read. Errors as {@link readRaw}. */
+export async function readRawFacts(
+  file: OpenFile,
+  options: ReadOptions,
+): Promise<ReturnType<typeof statedValues>> {
+  const { layout } = await findLayout(file.path, options.layout);
+  return statedValues(file.path, { layout, header: (await readHeader(file, layout)).header });
+}
+
 const PHASE_SPACE = ['mass', 'x', 'y', 'z', 'vx', 'vy', 'vz'] as const;
 
 function realsOf(columns: Columns, quantity: Quantity): FloatColumn {
@@ -299,7 +309,7 @@ function mantissaBits(plan: Plan): number {
  */
 export function statedValues(
   path: string,
-  structure: RawStructure,
+  structure: Pick<RawStructure, 'layout' | 'header'>,
 ): Pick<Particles, 'time' | 'units' | 'gravity' | 'softening'> {
   const { layout, header } = structure;
   const value = (
