@@ -205,9 +205,12 @@ export async function measureFiles(
 ): Promise<AsyncGenerator<FileOutcome>> {
   if (ledger !== undefined) {
     const paths = snapshots.filter((snapshot) => typeof snapshot === 'string');
-    const ready = (await prepareSnapshots(paths, options)).values();
-    const prepared = snapshots.map((snapshot) =>
-      typeof snapshot === 'string' ? (ready.next().value as PreparedSnapshot) : snapshot,
+    const { eachOnce, prepareEach } = await import('./survey/prepare.ts');
+    const ready = (await prepareEach(paths, options)).values();
+    const prepared = eachOnce(
+      snapshots.map((snapshot) =>
+        typeof snapshot === 'string' ? (ready.next().value as PreparedSnapshot) : snapshot,
+      ),
     );
     return (await import('./survey/measureNew.ts')).measureNew(prepared, options, crew, ledger);
   }

@@ -91,6 +91,26 @@ describe('a second look', () => {
     expect(readFileSync(ledgerPath, 'utf8').trim().split('\n')).toHaveLength(COUNT);
   });
 
+  it('gives a snapshot the time that is stated now, and what is found about it now', async () => {
+    const timesOf = (made: Awaited<ReturnType<typeof survey>>) => made.records.map((r) => r?.time);
+    const count = Array.from({ length: COUNT }, (_, k) => k);
+    const first = await survey({ interval: 1 });
+    expect(timesOf(first)).toEqual(count);
+    const twice = await survey({ interval: 2 });
+    expect(timesOf(twice)).toEqual(count.map((k) => 2 * k));
+    expect(timesOf(await survey())).toEqual(count.map(() => null));
+    expect(await survey({ interval: 1 })).toEqual({ ...first, known: COUNT });
+    // A row that is lost since is told, though nothing is measured again.
+    const rows = count.map((k) => `s${k}.bin,${k}\n`).join('');
+    const times = join(run, 'clock.csv');
+    writeFileSync(times, `file,time\n${rows}`);
+    await survey({ times });
+    writeFileSync(times, `file,time\n${rows}gone.bin,99\n`);
+    const { known, records } = await survey({ times });
+    expect(known).toBe(COUNT);
+    expect(records[0]?.remarks.map(({ code }) => code)).toContain('time.noFile');
+  });
+
   it('measures what is new and what has changed, even if length and date were kept', async () => {
     await survey();
     await writeModel(join(run, 's3.bin'), 99, 3);
