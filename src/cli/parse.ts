@@ -10,6 +10,16 @@ export function numberOf(option: string): (text: string) => number {
   };
 }
 
+/** A softening length, or `column` for those of the single bodies. */
+export function softeningOf(option: string): (text: string) => number | 'column' {
+  return (text) => {
+    const value = text.trim() === '' ? NaN : Number(text);
+    if (Number.isFinite(value)) return value;
+    if (text.trim() === 'column') return 'column';
+    throw notA(option, text, 'a length or "column"', 'Write it as 0.01 or column.');
+  };
+}
+
 /** A whole number of at least `least`; `1e6` and `100_000` are read as people mean them. */
 export function wholeOf(option: string, least: number): (text: string) => number {
   return (text) => {

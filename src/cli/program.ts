@@ -8,7 +8,7 @@ import type { MakeCommandOptions } from './make.ts';
 import type { MeasureCommandOptions } from './measure.ts';
 import type { TrackOptions } from './track.ts';
 import { modelling } from './makeOptions.ts';
-import { integerOf, listOf, numberOf, vectorOf, wholeOf, wordsOf } from './parse.ts';
+import { integerOf, listOf, numberOf, softeningOf, vectorOf, wholeOf, wordsOf } from './parse.ts';
 import type { Streams } from './streams.ts';
 import type { ExitCode } from '../errors.ts';
 
@@ -125,7 +125,11 @@ function measuring(command: Command): Command {
     .option('--about <x,y,z>', 'centre of that radius (the densest)', vectorOf('--about'))
     .option('--units <name|file>', 'unit system: natural, kpc-kms-msun, ..., or FILE.json; sets G')
     .option('--gravity <G>', 'constant of gravitation', numberOf('--gravity'))
-    .option('--softening <length>', 'Plummer-equivalent length', numberOf('--softening'))
+    .option(
+      '--softening <length|column>',
+      'Plummer-equivalent length, or a column of them',
+      softeningOf('--softening'),
+    )
     .addOption(kernel())
     .option('--error <E>', 'relative error wanted of U (1e-5)', numberOf('--error'))
     .option('--exact', 'direct sums over all pairs')

@@ -39,14 +39,16 @@ export function recordTable(record: MeasureRecord, paint: Paint = NO_PAINT): str
 
 function heading(record: MeasureRecord, paint: Paint): string {
   const { gravity, units, softening } = record.settings;
-  const { kernel, length, support } = softening.value;
+  const { kernel, length, support, ofBodies } = softening.value;
   const lengthUnit = unitText({ mass: 0, length: 1, time: 0 }, recordUnits(record));
   const softened =
     kernel === 'none'
       ? `no softening (${softening.from})`
-      : `${kernel} softening ${withUnit(short(length, 6), lengthUnit)}${
-          support === null ? '' : `, Newtonian beyond ${short(support, 6)}`
-        } (${softening.from})`;
+      : `${kernel} softening ${
+          ofBodies === undefined
+            ? withUnit(short(length, 6), lengthUnit)
+            : `of each body, ${short(ofBodies.least, 6)} to ${withUnit(short(ofBodies.greatest, 6), lengthUnit)}`
+        }${support === null ? '' : `, Newtonian beyond ${short(support, 6)}`} (${softening.from})`;
   const time =
     record.time === null
       ? 'time not stated'

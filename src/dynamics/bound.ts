@@ -165,7 +165,9 @@ async function sumAgain(
     z: pick(bodies.z),
     mass: pick(bodies.mass),
   };
-  const { gravity, softening, level } = forces;
+  const { gravity, level } = forces;
+  const { lengths, ...one } = forces.softening;
+  const softening = lengths === undefined ? one : { ...one, lengths: pick(lengths) };
   const again = await sumForces(
     columns,
     { gravity, softening, errorWanted: 1, ...(level ? { level } : {}), exact: level === null },

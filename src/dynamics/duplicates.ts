@@ -1,5 +1,6 @@
 /** Ids that occur more than once, and bodies that lie at one point. */
-import type { FloatColumn, IdColumn } from '../snapshot/particles.ts';
+import type { Softening } from '../octree/softening.ts';
+import type { IdColumn, Particles } from '../snapshot/particles.ts';
 
 export interface Duplicates {
   /** Bodies whose id an earlier one has already. */
@@ -27,11 +28,13 @@ export function duplicateIds(ids: IdColumn | undefined): Duplicates {
   return { count, firstIndex: indexOf(indexOf(0) + 1), firstId: String(first) };
 }
 
-/** The first few pairs of bodies at exactly one point, as input indices, in order of position. */
+/**
+ * The first few pairs of bodies at exactly one point without softening, as input indices, in order of
+ * position; bodies that have a softening length of their own are in none.
+ */
 export function coincidentPairs(
-  x: FloatColumn,
-  y: FloatColumn,
-  z: FloatColumn,
+  { x, y, z }: Pick<Particles, 'x' | 'y' | 'z'>,
+  { lengths }: Softening,
   most: number,
 ): [number, number][] {
   // Sort by x alone with the native sort, then look closer only where neighbours in x are equal.
@@ -41,7 +44,7 @@ export function coincidentPairs(
   const seen = new Map<string, number>();
   const pairs: [number, number][] = [];
   for (let i = 0; i < x.length && pairs.length < most; i++) {
-    if (!repeated.has(x[i])) continue;
+    if (!repeated.has(x[i]) || (lengths !== undefined && lengths[i] > 0)) continue;
     const place = `${x[i]} ${y[i]} ${z[i]}`;
     const other = seen.get(place);
     if (other !== undefined) pairs.push([other, i]);

@@ -9,6 +9,7 @@
 import { robustFit, type RobustFit } from '../numerics/robustFit.ts';
 import { takeDoubles } from '../numerics/reuse.ts';
 import type { Forces } from '../octree/forces.ts';
+import { softeningOfPair } from '../octree/softening.ts';
 import type { FloatColumn, Particles } from '../snapshot/particles.ts';
 
 /** What a column of the file is, in terms of our own sums. */
@@ -74,9 +75,13 @@ export function fitFileForces(particles: Particles, own: Forces): FileForces {
 
 function fitPotential(mass: FloatColumn, column: FloatColumn, own: Forces): PotentialFit {
   const count = column.length;
-  const { length } = own.softening;
   const softened = own.softening.kernel !== 'none';
-  const selfOf = (i: number): number => (softened ? (-own.gravity * mass[i]) / length : -1);
+  const selfOf = (i: number): number => {
+    if (!softened) return -1;
+    // A body with itself; one without a length of its own has no self term that could be written.
+    const { length } = softeningOfPair(own.softening, i, i);
+    return length > 0 ? (-own.gravity * mass[i]) / length : 0;
+  };
   const terms = count >= FEWEST_FOR_OFFSET ? 2 : 1;
   const fit = robustFit({
     count,
@@ -114,7 +119,8 @@ function fitPotential(mass: FloatColumn, column: FloatColumn, own: Forces): Pote
 
 /** The length whose self term is the constant found, if all bodies with mass have the same. */
 function softeningOf(mass: FloatColumn, constant: number, own: Forces): number | null {
-  const { length, kernel } = own.softening;
+  const { length, kernel, lengths } = own.softening;
+  if (lengths !== undefined) return null;
   if (kernel !== 'none') return length / constant;
   const first = mass[0];
   if (!mass.every((m: number) => m === first)) return null;

@@ -3,6 +3,7 @@ import { takeDoubles } from '../numerics/reuse.ts';
 import { InputError } from '../errors.ts';
 import { buildOctree } from '../octree/build.ts';
 import { PROMISED_SIGMAS, sumForces, type Forces, type ForceStage } from '../octree/forces.ts';
+import type { Softening } from '../octree/softening.ts';
 import type { Crew } from '../parallel/crew.ts';
 import { toPhysical } from '../snapshot/frame.ts';
 import type { Particles } from '../snapshot/particles.ts';
@@ -14,7 +15,13 @@ import { fitFileForces, type FileForces } from './fileForces.ts';
 import { forcesFromFile, requireFileForces, requireForceColumns } from './forcesFromFile.ts';
 import { lagrangianRadii } from './lagrangian.ts';
 import { measureExtras } from './measureExtras.ts';
-import { RECORD_VERSION, type MeasureRecord, type TimeSetting, type Vector } from './record.ts';
+import {
+  RECORD_VERSION,
+  type MeasureRecord,
+  type RecordSettings,
+  type TimeSetting,
+  type Vector,
+} from './record.ts';
 import { findRemarks } from './remarks.ts';
 import { settle, type MeasureOptions } from './settings.ts';
 import { frameOf } from './sums.ts';
@@ -40,7 +47,8 @@ export interface MeasureContext {
  * @throws UsageError for options that contradict each other or the snapshot; InputError
  *   `input.coincident` if bodies lie at one point, nothing is softened and refusal was asked for;
  *   InputError `input.missingForces` and `input.fileForces` if U and W are to come from the file and
- *   cannot; UnanswerableError `unanswerable.periodicBox` for bodies that are no single object in
+ *   cannot, and `input.missingSoftening` if softening lengths of single bodies are asked for and are not
+ *   there; UnanswerableError `unanswerable.periodicBox` for bodies that are no single object in
  *   their box
  */
 export async function measureParticles(
@@ -55,14 +63,14 @@ export async function measureParticles(
   const decided = settle(options, particles);
   const settings = context.time ? { ...decided, time: context.time } : decided;
   const gravity = settings.gravity.value;
-  const { kernel, length } = settings.softening.value;
+  const { length } = settings.softening.value;
   const fromFile = settings.forces.value === 'file';
   if (fromFile) requireForceColumns(given, '--forces file');
   const own = await sumForces(
     particles,
     {
       gravity,
-      softening: { kernel, length },
+      softening: softeningFor(settings, particles),
       errorWanted: settings.error.value,
       exact: settings.exact.value,
       accelerations: fromFile && particles.columns.acceleration !== undefined,
@@ -74,9 +82,7 @@ export async function measureParticles(
   const summed = performance.now();
   context.onStage?.('dynamics', null);
   const coincident =
-    own.coincidentPairs > 0
-      ? coincidentPairs(particles.x, particles.y, particles.z, PAIRS_NAMED)
-      : [];
+    own.coincidentPairs > 0 ? coincidentPairs(particles, own.softening, PAIRS_NAMED) : [];
   if (coincident.length > 0 && options.coincident === 'refuse') {
     const [a, b] = coincident[0];
     throw new InputError(
@@ -244,6 +250,13 @@ function overflow(file: string, what: string): InputError {
     `${file}: ${what} is beyond the range of double precision`,
     'check byte order, types and units: masses, lengths and velocities this extreme are rarely meant',
   );
+}
+
+/** The softening of the forces: the setting, with the lengths of the single bodies where it is theirs. */
+function softeningFor({ softening }: RecordSettings, { columns }: Particles): Softening {
+  const { kernel, length, ofBodies } = softening.value;
+  const lengths = ofBodies === undefined ? undefined : columns.softening;
+  return { kernel, length, ...(lengths !== undefined && { lengths }) };
 }
 
 /** Key of the first number that is not finite, or null. */

@@ -1,6 +1,6 @@
 /** Bound pairs among neighbours, and how hot it is around them: work of the crew. */
 import { eachGroup } from '../octree/groups.ts';
-import type { Softening } from '../octree/softening.ts';
+import { softeningOfPair, type Softening } from '../octree/softening.ts';
 import { Surroundings } from '../octree/surroundings.ts';
 import { NODE_BEGIN, NODE_END, TOPOLOGY, type Octree } from '../octree/tree.ts';
 import type { TakeJob } from '../parallel/crew.ts';
@@ -59,9 +59,10 @@ export function findPartners(round: PartnerRound, takeJob: TakeJob): void {
         const attraction2 = 2 * gravity * (mass[i] + mass[j]);
         // Most pairs move too fast even unsoftened, which takes no root to tell.
         if (v2 * v2 * r2 >= attraction2 * attraction2) continue;
-        if (r2 === 0 && softening.kernel === 'none') continue;
+        const ofPair = softeningOfPair(softening, own, other);
+        if (r2 === 0 && ofPair.kernel === 'none') continue;
         const binding =
-          (mass[i] * mass[j] * (attraction2 * pairPotential(softening, r2) - v2)) /
+          (mass[i] * mass[j] * (attraction2 * pairPotential(ofPair, r2) - v2)) /
           (mass[i] + mass[j]);
         // Of equals the first by index, so that both bodies choose alike.
         if (

@@ -8,9 +8,10 @@
  */
 import { takeBuffer, takeDoubles } from '../numerics/reuse.ts';
 import { sumForces, type Forces } from '../octree/forces.ts';
+import { softeningOfPair, type Softening } from '../octree/softening.ts';
 import type { Octree } from '../octree/tree.ts';
 import { crewOfOne, type Crew, type TaskModule } from '../parallel/crew.ts';
-import type { IdColumn, Particles } from '../snapshot/particles.ts';
+import type { FloatColumn, IdColumn, Particles } from '../snapshot/particles.ts';
 import { balanceOf, fieldOf } from './balance.ts';
 import { orbitOf, pairPotential } from './pairOrbit.ts';
 import { JUDGED, NOBODY, PAIRS_A_JOB } from './pairs.task.ts';
@@ -147,7 +148,7 @@ const square = ([x, y, z]: readonly [number, number, number]) => x * x + y * y +
 function bindingEnergy(bodies: Bodies, a: number, b: number, { gravity, softening }: Forces) {
   const { position, velocity } = relative(bodies, a, b);
   const [m, n] = [bodies.mass[a], bodies.mass[b]];
-  const depth = gravity * pairPotential(softening, square(position));
+  const depth = gravity * pairPotential(softeningOfPair(softening, a, b), square(position));
   return m * n * depth - ((m * n) / (m + n)) * 0.5 * square(velocity);
 }
 
@@ -158,7 +159,9 @@ function listed(pairs: readonly BoundPair[], { particles, forces }: PairInput): 
     attraction: gravity * (particles.mass[first] + particles.mass[second]),
     ...relative(particles, first, second),
   }));
-  const orbits = states.map((state) => orbitOf(state, softening));
+  const orbits = pairs.map(({ first, second }, k) =>
+    orbitOf(states[k], softeningOfPair(softening, first, second)),
+  );
   const hardness = pairs.map(({ energy, temperature }) => energy / temperature);
   return {
     first: pairs.map(({ first }) => first),
@@ -187,10 +190,33 @@ async function mergedBalance(
   crew: Crew,
 ): Promise<Balance> {
   const merged = mergedBodies(pairs, particles);
-  const { gravity, softening } = forces;
+  const { gravity } = forces;
+  const softening = mergedSoftening(pairs, particles.mass, forces.softening);
   const again = await sumForces(merged, { gravity, softening, errorWanted, exact }, crew);
   const set = { bodies: merged, member: null };
   return (await balanceOf(set, fieldOf(again), crew)).balance;
+}
+
+/** The softening with the lengths of {@link mergedBodies}: a pair has the mean of its two e² by mass. */
+export function mergedSoftening(
+  pairs: readonly Pick<BoundPair, 'first' | 'second'>[],
+  mass: FloatColumn,
+  softening: Softening,
+): Softening {
+  const { lengths } = softening;
+  if (lengths === undefined) return softening;
+  const other = new Map(pairs.map(({ first, second }) => [first, second]));
+  const gone = new Set(pairs.map(({ second }) => second));
+  const merged = takeDoubles(lengths.length - pairs.length);
+  for (let i = 0, k = 0; i < lengths.length; i++) {
+    if (gone.has(i)) continue;
+    const j = other.get(i);
+    merged[k++] =
+      j === undefined
+        ? lengths[i]
+        : Math.sqrt((mass[i] * lengths[i] ** 2 + mass[j] * lengths[j] ** 2) / (mass[i] + mass[j]));
+  }
+  return { ...softening, lengths: merged };
 }
 
 /** Bodies with each pair as one, at the place in the input of its first body. */

@@ -40,11 +40,16 @@ export interface TimeSetting extends Setting<number | null> {
 export type CentreMethod = 'density' | 'shrinking' | 'mass' | 'potential';
 
 export interface SofteningSetting {
-  /** Plummer-equivalent length. */
+  /**
+   * Plummer-equivalent length. Where bodies have lengths of their own, that of a pair whose two e² are
+   * the mean by mass.
+   */
   readonly length: number;
   /** Distance beyond which the force is Newtonian; null where it never is exactly (Plummer). */
   readonly support: number | null;
   readonly kernel: SofteningKernel;
+  /** Least and greatest length of the single bodies; only there if these have lengths of their own. */
+  readonly ofBodies?: { readonly least: number; readonly greatest: number };
 }
 
 export interface RecordSettings {

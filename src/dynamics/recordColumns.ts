@@ -36,6 +36,8 @@ const DIMENSIONS: Readonly<Record<string, Dimension>> = {
   'settings.gravity': { mass: -1, length: 3, time: -2 },
   'settings.softening.length': { mass: 0, length: 1, time: 0 },
   'settings.softening.support': { mass: 0, length: 1, time: 0 },
+  'settings.softening.ofBodies.least': { mass: 0, length: 1, time: 0 },
+  'settings.softening.ofBodies.greatest': { mass: 0, length: 1, time: 0 },
 };
 const SECONDS = 'engine.seconds.';
 

@@ -51,6 +51,7 @@ const FINDERS: readonly Finder[] = [
   scale,
   dominantBody,
   noNoise,
+  softeningOfBodies,
   softeningTooLarge,
   softenedRatio,
   unbound,
@@ -205,14 +206,38 @@ function noNoise({ record, frame, largestMass }: Findings): Remark[] {
   ];
 }
 
+function softeningOfBodies({ particles, record }: Findings): Remark[] {
+  const { value, from } = record.settings.softening;
+  const { kernel, length, ofBodies } = value;
+  if (from === 'default' && particles.origin.hasMoreSoftening === true) {
+    return [
+      {
+        code: 'softeningUnused',
+        text: 'The file has softening lengths of single bodies, and they are not used.',
+        remedy:
+          'Use them with --softening column, or state one length with --softening (0 for none).',
+      },
+    ];
+  }
+  if (ofBodies === undefined || kernel !== 'plummer') return [];
+  if (ofBodies.least !== ofBodies.greatest || length === 0) return [];
+  return [
+    {
+      code: 'softeningOfPairs',
+      text: `All bodies have the softening length ${short(ofBodies.least)}, so that each pair has ${short(length)}: squares of two lengths add up.`,
+      remedy: `If the run softens pairs by ${short(ofBodies.least)}, state that with --softening in place of "column".`,
+    },
+  ];
+}
+
 function softeningTooLarge({ record }: Findings): Remark[] {
-  const { length } = record.settings.softening.value;
+  const { length, ofBodies } = record.settings.softening.value;
   const { coreRadius } = record;
   if (coreRadius === null || !(length > coreRadius)) return [];
   return [
     {
       code: 'softeningLarge',
-      text: `The softening length ${short(length)} is larger than the core radius ${short(coreRadius)}: the core is shaped by it.`,
+      text: `The softening length ${short(length)}${ofBodies === undefined ? '' : ' of a typical pair'} is larger than the core radius ${short(coreRadius)}: the core is shaped by it.`,
       remedy: 'Trust nothing inside about three softening lengths, or run with a smaller one.',
     },
   ];

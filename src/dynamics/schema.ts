@@ -64,7 +64,9 @@ export async function recordSchema(): Promise<ZodType> {
       .describe('unit system'),
     softening: setting(
       z.object({
-        length: atLeast0('Plummer-equivalent length [length]; 0 without softening'),
+        length: atLeast0(
+          'Plummer-equivalent length [length]; 0 without softening; of a typical pair where bodies have lengths of their own',
+        ),
         support: z
           .number()
           .min(0)
@@ -73,6 +75,13 @@ export async function recordSchema(): Promise<ZodType> {
             'distance beyond which the force is Newtonian [length]; null where it never is exactly (plummer)',
           ),
         kernel: z.enum(['none', 'plummer', 'spline']),
+        ofBodies: z
+          .object({
+            least: atLeast0('least length of a body [length]'),
+            greatest: atLeast0('greatest length of a body [length]'),
+          })
+          .optional()
+          .describe('only there if bodies are softened by lengths of their own'),
       }),
       'softening of the pair force',
     ),

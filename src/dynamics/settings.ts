@@ -1,6 +1,6 @@
 /** Options of a measurement, and which of option, run file, snapshot and default decides each. */
-import { UsageError } from '../errors.ts';
-import { SPLINE_SUPPORT, type SofteningKernel } from '../octree/softening.ts';
+import { InputError, UsageError } from '../errors.ts';
+import { lengthOfPair, SPLINE_SUPPORT, type SofteningKernel } from '../octree/softening.ts';
 import type { Particles } from '../snapshot/particles.ts';
 import { unitSystemOf, type Units } from '../snapshot/ownUnits.ts';
 import { UNIT_SYSTEMS, type UnitSystem } from '../snapshot/units.ts';
@@ -11,6 +11,7 @@ import type {
   RecordSettings,
   Setting,
   SettingOrigin,
+  SofteningSetting,
   TimeSetting,
   UnitsSetting,
 } from './record.ts';
@@ -20,8 +21,8 @@ export interface MeasureOptions {
   /** Name of a unit system, or sizes of your own; sets G unless `gravity` is given at the same level. */
   readonly units?: Units;
   readonly gravity?: number;
-  /** Plummer-equivalent softening length [length]. */
-  readonly softening?: number;
+  /** Plummer-equivalent softening length [length], or `column` for those of the single bodies in the snapshot. */
+  readonly softening?: number | 'column';
   /** Kernel; `plummer` if a length is given without a kernel. */
   readonly softeningKernel?: SofteningKernel;
   readonly coulombFactor?: number;
@@ -55,7 +56,8 @@ const GRAVITY_CLASH = 1e-4;
 
 /**
  * Decides every setting.
- * @throws UsageError if an option is out of its domain, or units and G contradict each other
+ * @throws UsageError if an option is out of its domain, or units and G contradict each other; InputError
+ * `input.missingSoftening` if lengths of the single bodies are asked for and there are none
  */
 export function settle(options: MeasureOptions, particles: Particles): RecordSettings {
   const { gravity, units } = settleGravity(options, particles);
@@ -166,20 +168,25 @@ function settleSoftening(
   options: MeasureOptions,
   particles: Particles,
 ): RecordSettings['softening'] {
-  const length = options.softening ?? particles.softening ?? 0;
-  if (!(length >= 0) || length === Infinity) {
-    throw new UsageError(
-      'usage.softening',
-      `--softening ${length} is not a length of 0 or more`,
-      'give the Plummer-equivalent length in the unit of length of the snapshot',
-    );
-  }
   const stated = options.softening !== undefined || options.softeningKernel !== undefined;
   const from: SettingOrigin = stated
     ? originOf(options, options.softening !== undefined ? 'softening' : 'softeningKernel')
     : particles.softening !== null
       ? 'snapshot'
       : 'default';
+  if (options.softening === 'column') {
+    const kernel = options.softeningKernel ?? 'plummer';
+    if (kernel === 'none') return { value: { length: 0, support: 0, kernel }, from };
+    return { value: softeningOfBodies(kernel, particles), from };
+  }
+  const length = options.softening ?? particles.softening ?? 0;
+  if (!(length >= 0) || length === Infinity) {
+    throw new UsageError(
+      'usage.softening',
+      `--softening ${length} is not a length of 0 or more`,
+      'give the Plummer-equivalent length in the unit of length of the snapshot, or "column" for lengths of the single bodies',
+    );
+  }
   const kernel = options.softeningKernel ?? (length > 0 ? 'plummer' : 'none');
   if (kernel !== 'none' && length === 0) {
     throw new UsageError(
@@ -191,6 +198,44 @@ function settleSoftening(
   if (kernel === 'none') return { value: { length: 0, support: 0, kernel }, from };
   const support = kernel === 'spline' ? SPLINE_SUPPORT * length : null;
   return { value: { length, support, kernel }, from };
+}
+
+/**
+ * The setting for lengths of the single bodies.
+ * @throws InputError `input.missingSoftening` if the snapshot has none
+ */
+function softeningOfBodies(
+  kernel: SofteningKernel,
+  { columns, mass, origin }: Particles,
+): SofteningSetting {
+  const lengths = columns.softening;
+  if (lengths === undefined) {
+    throw new InputError(
+      'input.missingSoftening',
+      `${origin.file}: --softening column, but the file has no softening length of each body`,
+      'name the column with --columns softening=NAME, add the field softening to the layout, let the layout state the softening of each component, or give one length with --softening LENGTH',
+    );
+  }
+  let least = Infinity;
+  let greatest = 0;
+  for (let i = 0; i < lengths.length; i++) {
+    if (lengths[i] < least) least = lengths[i];
+    if (lengths[i] > greatest) greatest = lengths[i];
+  }
+  // In units of the greatest, so that no square is lost.
+  let total = 0;
+  let squares = 0;
+  for (let i = 0; greatest > 0 && i < lengths.length; i++) {
+    total += mass[i];
+    squares += mass[i] * (lengths[i] / greatest) ** 2;
+  }
+  const typical = total > 0 ? greatest * Math.sqrt(squares / total) : greatest;
+  return {
+    length: lengthOfPair(kernel, typical, typical),
+    support: kernel === 'spline' ? SPLINE_SUPPORT * greatest : null,
+    kernel,
+    ofBodies: { least, greatest },
+  };
 }
 
 function settleFractions(options: MeasureOptions): RecordSettings['fractions'] {

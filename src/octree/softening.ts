@@ -33,6 +33,19 @@ export function isOfEach({ kernel, lengths }: Softening): boolean {
   return kernel !== 'none' && lengths !== undefined;
 }
 
+/** The softening of two bodies, by index: one length, their own if they have any. */
+export function softeningOfPair(softening: Softening, i: number, j: number): Softening {
+  const { kernel, lengths } = softening;
+  if (kernel === 'none' || lengths === undefined) return softening;
+  const length = lengthOfPair(kernel, lengths[i], lengths[j]);
+  return length > 0 ? { kernel, length } : NO_SOFTENING;
+}
+
+/** The length of two bodies with lengths of their own [length]. */
+export function lengthOfPair(kernel: SofteningKernel, a: number, b: number): number {
+  return kernel === 'spline' ? Math.max(a, b) : Math.sqrt(a * a + b * b);
+}
+
 /** Squared lengths of the bodies, for {@link Softening.lengths} in their order. */
 export function squared(lengths: Float64Array | Float32Array): Float64Array {
   const squares = takeDoubles(lengths.length);

@@ -92,6 +92,8 @@ export interface ParticleOrigin {
   readonly format: 'raw' | 'arrow-file' | 'arrow-stream' | 'made';
   /** Significant binary digits of the coarsest of mass, position, velocity in the file: 53, 24 or 11. */
   readonly mantissaBits: number;
+  /** True if the file has softening lengths of single bodies that were not asked for, and left on disk. */
+  readonly hasMoreSoftening?: true;
   /** Which bodies of the file these are; absent or null if they are all. */
   readonly selection?: Selection | null;
   /** Findings of the reader that a user should see with the result (for instance a layout found by itself). */

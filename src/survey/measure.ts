@@ -7,7 +7,7 @@ import type { Crew } from '../parallel/crew.ts';
 import type { Particles, Remark } from '../snapshot/particles.ts';
 import { readSnapshot } from '../snapshot/read.ts';
 import type { FieldName, ReadOptions } from '../snapshot/reading.ts';
-import { BYTES_OF_FILE_FORCES, requireMemory } from './memory.ts';
+import { BYTES_OF_FILE_FORCES, BYTES_OF_LENGTHS, requireMemory } from './memory.ts';
 import { prepareSnapshots, type PreparedSnapshot } from './prepare.ts';
 import type { StatedTime, TimeSettings } from './times.ts';
 
@@ -53,7 +53,7 @@ export async function measurePrepared(
   const { signal } = watch.read ?? {};
   const read: ReadOptions = {
     ...options.read,
-    ...(options.forces === 'file' && { optional: withForces(options.read?.optional) }),
+    optional: columnsFor(options),
     ...(signal !== undefined && { signal }),
     onProgress: (done, total) => {
       watch.read?.onProgress?.(done, total);
@@ -61,13 +61,12 @@ export async function measurePrepared(
     },
   };
   return reusingMemory(async () => {
-    const moreBytes = options.forces === 'file' ? BYTES_OF_FILE_FORCES : 0;
-    await requireMemory(
-      { file, parts },
-      options.read ?? {},
-      (options.softening ?? 0) > 0,
-      moreBytes,
-    );
+    const { softening = 0, forces } = options;
+    const softened = softening === 'column' || softening > 0;
+    const moreBytes =
+      (forces === 'file' ? BYTES_OF_FILE_FORCES : 0) +
+      (softening === 'column' ? BYTES_OF_LENGTHS : 0);
+    await requireMemory({ file, parts }, options.read ?? {}, softened, moreBytes);
     const particles = told(await readSnapshot(file, read, crew), time, remarks);
     const readSeconds = (performance.now() - start) / 1000;
     const { onStage } = watch;
@@ -76,8 +75,10 @@ export async function measurePrepared(
 }
 
 /** Columns to read besides those that are read anyway. */
-function withForces(optional: readonly FieldName[] = []): readonly FieldName[] {
-  return [...new Set<FieldName>([...optional, 'potential', 'acceleration'])];
+function columnsFor({ read, forces, softening }: PreparedSnapshot['options']): FieldName[] {
+  const ofForces: FieldName[] = forces === 'file' ? ['potential', 'acceleration'] : [];
+  const ofSoftening: FieldName[] = softening === 'column' ? ['softening'] : [];
+  return [...new Set([...(read?.optional ?? []), ...ofForces, ...ofSoftening])];
 }
 
 /** Agreement of two statements of a time: single precision, with room. */

@@ -19,6 +19,8 @@ export const BYTES_A_BODY = 131;
 const BYTES_IF_SOFTENED = 16;
 /** Potentials and accelerations of the file, the same corrected, our own accelerations, shares of W. */
 export const BYTES_OF_FILE_FORCES = 96;
+/** Squared softening lengths of the bodies, in input and tree order; more and larger nodes for them. */
+export const BYTES_OF_LENGTHS = 72;
 /** Positions and velocities in physical coordinates. */
 const BYTES_IF_COMOVING = 48;
 /** Mass, position, velocity, what tells who is meant, and an index. */

@@ -41,6 +41,9 @@ const EXTRA_ROOTS = new Set(
   QUANTITIES.filter(({ extra }) => extra !== null).map(({ key }) => key.split('.')[0]),
 );
 
+const isOptional = (name: string): boolean =>
+  EXTRA_ROOTS.has(name.split(/[.[]/)[0]) || name.startsWith('settings.softening.ofBodies.');
+
 type Branch = { [key: string]: unknown };
 
 /**
@@ -57,7 +60,7 @@ export function recordsFromTable(table: TableOfRecords): MeasureRecord[] {
     const record: Branch = {};
     table.names.forEach((name, column) => {
       const cell = typedCell(table, row, column, name);
-      if (cell !== null || !EXTRA_ROOTS.has(name.split(/[.[]/)[0])) setters[column](record, cell);
+      if (cell !== null || !isOptional(name)) setters[column](record, cell);
     });
     if (record['record'] !== RECORD_VERSION) {
       throw new InputError(

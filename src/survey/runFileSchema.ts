@@ -54,7 +54,12 @@ const shape = {
       `unit system: ${Object.keys(UNIT_SYSTEMS).join(', ')}; a file of units, a path from this file; or sizes`,
     ),
   gravity: z.number().positive().optional().describe('constant of gravitation G'),
-  softening: z.number().min(0).optional().describe('Plummer-equivalent softening length'),
+  softening: z
+    .union([z.number().min(0), z.literal('column')], {
+      error: 'a number of 0 or more, or "column"',
+    })
+    .optional()
+    .describe('Plummer-equivalent softening length, or "column" for those of the single bodies'),
   softeningKernel: z.enum(['none', 'plummer', 'spline']).optional(),
   error: z.number().min(1e-15).max(1).optional().describe('relative error wanted of U'),
   exact: z.boolean().optional().describe('direct sums over all pairs'),

@@ -15,7 +15,9 @@ import { runFileJsonSchema } from '../../src/survey/runFileSchema.ts';
 const docs = (name: string) => readFileSync(new URL(`../../docs/${name}`, import.meta.url), 'utf8');
 
 async function recordOf(count: number, options: MeasureOptions = {}, change?: 'cold' | 'hot') {
-  const particles = makeModel({ model: 'plummer', count, seed: 3 });
+  const made = makeModel({ model: 'plummer', count, seed: 3 });
+  const softening = made.mass.map((_: number, i: number) => 0.1 * (1 + (i % 3)));
+  const particles = { ...made, columns: { ...made.columns, softening } };
   const factor = { cold: 0, hot: 30 };
   for (const column of [particles.vx, particles.vy, particles.vz]) {
     if (change) for (let i = 0; i < count; i++) column[i] *= factor[change];
@@ -59,6 +61,7 @@ describe('a record', async () => {
     ['of a sphere', 300, {}],
     ['with softening', 300, { softening: 0.1, softeningKernel: 'spline' }],
     ['with Plummer softening', 100, { softening: 0.1 }],
+    ['with lengths of each body', 100, { softening: 'column', softeningKernel: 'spline' }],
     ['of one body', 1, {}],
     ['of two bodies', 2, {}],
     ['of five bodies about the deepest', 5, { centre: 'potential' }],
@@ -77,7 +80,7 @@ describe('a record', async () => {
 
   it('has the keys of the schema, and no others', async () => {
     const units = { length: 'pc', mass: 'Msun', gravity: 1 };
-    const { text: whole } = await recordOf(300, { softening: 0.1, units, with: ['all'] });
+    const { text: whole } = await recordOf(300, { softening: 'column', units, with: ['all'] });
     const selection = { only: 'gas', group: '7', within: 2, about: [0, 0, 1], of: 900 };
     const text = { ...(whole as object), selection };
     expect(passes(text)).toEqual([true, true]);

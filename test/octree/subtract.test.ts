@@ -28,7 +28,12 @@ async function errorsAfter(
   const field = { potential, clausiusShare };
   const done = await subtractBodies(bodies, removed, kept, forces, field, crewOfOne());
   const { mass, x, y, z } = bodies;
-  const plain = plainField(columnsOf(stay.map((i) => [mass[i], x[i], y[i], z[i]])), softening);
+  const { lengths } = softening;
+  const ofStay =
+    lengths === undefined
+      ? softening
+      : { ...softening, lengths: lengths.filter((_, i) => kept[i]) };
+  const plain = plainField(columnsOf(stay.map((i) => [mass[i], x[i], y[i], z[i]])), ofStay);
   const error = (mine: Float64Array, plainOnes: Float64Array) =>
     rms(stay.map((i, k) => mine[i] - 2 * plainOnes[k])) / (2 * rms(plain.phi));
   // The forces of all are not touched.
@@ -42,14 +47,25 @@ async function errorsAfter(
   };
 }
 
+/** Lengths of the bodies' own; every number of bodies removed below takes some of each. */
+const OWN = Float64Array.from(
+  { length: 5000 },
+  (_, i) => [0.3, 0.003, 0, 0.1, 0.03, 0.003, 1][i % 7],
+);
+
 describe.each([
   NO_SOFTENING,
   { kernel: 'plummer', length: 0.1 },
   { kernel: 'spline', length: 0.1 },
-] as Softening[])('softening $kernel', (softening) => {
+  { kernel: 'plummer', length: 0.1, lengths: OWN },
+  { kernel: 'spline', length: 0.1, lengths: OWN },
+] as Softening[])('softening %o', (wanted) => {
+  const withCount = (count: number): Softening =>
+    wanted.lengths === undefined ? wanted : { ...wanted, lengths: wanted.lengths.slice(0, count) };
+
   it.each([3, 40])('direct sums, every %ith of 1500 bodies removed', async (every) => {
     const bodies = modelColumns('plummer', 1500, 1);
-    const { done, phi, share } = await errorsAfter(bodies, every, softening, {});
+    const { done, phi, share } = await errorsAfter(bodies, every, withCount(1500), {});
     expect(done).toBe(true);
     // Rounding of some thousand terms, of which those removed were added and taken away.
     expect(phi).toBeLessThan(1e-13);
@@ -59,7 +75,7 @@ describe.each([
   it.each([2, 4, 100])('the tree, every %ith of 5000 bodies removed', async (every) => {
     const level = LEVELS[2];
     const bodies = modelColumns('hernquist', 5000, 2);
-    const result = await errorsAfter(bodies, every, softening, { level });
+    const result = await errorsAfter(bodies, every, withCount(5000), { level });
     expect(result.done).toBe(true);
     // The error of the walk over all, and that of the walk over those removed; as in other tests of the tree.
     expect(result.phi).toBeLessThan(2 * level.tolerance);

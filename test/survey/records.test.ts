@@ -5,15 +5,19 @@ import { join } from 'node:path';
 import { afterAll, beforeAll, describe, expect, it } from 'vitest';
 import { recordsToArrow } from '../../src/dynamics/recordArrow.ts';
 import { recordsToCsv } from '../../src/dynamics/recordCsv.ts';
+import { makeModel } from '../../src/models/make.ts';
 import type { MeasureRecord } from '../../src/dynamics/record.ts';
 import { blocksOfLines, linesOf } from '../../src/snapshot/lines.ts';
 import { isRecords, readRecords } from '../../src/survey/records.ts';
-import { measureModel } from '../dynamics/samples.ts';
+import { measure, measureModel } from '../dynamics/samples.ts';
 import { madeRecord } from '../cli/made.ts';
 
 let folder: string;
 const at = (name: string): string => join(folder, name);
 let records: MeasureRecord[];
+
+const sphere = makeModel({ model: 'plummer', count: 50, seed: 4 });
+const withLengths = { ...sphere, columns: { softening: sphere.mass.map((_, i) => 0.1 * i) } };
 
 beforeAll(async () => {
   folder = mkdtempSync(join(tmpdir(), 'settlemark-records-'));
@@ -21,6 +25,7 @@ beforeAll(async () => {
     await measureModel('plummer', 200, 3, { fractions: [0.3] }),
     await measureModel('plummer', 400, 3, { with: ['all'], softening: 0.1 }),
     await measureModel('plummer', 1, 3),
+    await measure(withLengths, { softening: 'column' }),
     madeRecord({ time: null, coreRadius: null }),
   ];
 });

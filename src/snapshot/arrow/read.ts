@@ -69,7 +69,8 @@ export async function readArrowFile(
     assertParticles(count, path);
     const columns = allocateColumns(planner.plan, count, path);
     await loadBatches(batches, planner.plan, columns, path, options, crew);
-    return assemble(planner, columns, count, isFile ? 'arrow-file' : 'arrow-stream');
+    const format = isFile ? 'arrow-file' : 'arrow-stream';
+    return assemble(planner, columns, count, format, options);
   });
 }
 
@@ -93,10 +94,8 @@ export async function readArrowParts(
         await reusingMemory(async () => {
           const columns = allocateColumns(planner.plan, batch.rows, path);
           await loadBatches([batch], planner.plan, columns, path, options);
-          visit(
-            assemble(planner, columns, batch.rows, isFile ? 'arrow-file' : 'arrow-stream'),
-            first,
-          );
+          const format = isFile ? 'arrow-file' : 'arrow-stream';
+          visit(assemble(planner, columns, batch.rows, format, options), first);
         });
         first += batch.rows;
       }
@@ -141,7 +140,8 @@ export async function readArrowStream(
   }
   const count = parts.reduce((sum, { rows }) => sum + rows, 0);
   assertParticles(count, name);
-  return assemble(planner, joinParts(planner.plan, parts, count, name), count, 'arrow-stream');
+  const columns = joinParts(planner.plan, parts, count, name);
+  return assemble(planner, columns, count, 'arrow-stream', options);
 }
 
 function particlePlanner(file: string, options: ReadOptions): BatchPlanner {
@@ -192,6 +192,7 @@ function assemble(
   columns: ColumnSet,
   count: number,
   format: ParticleOrigin['format'],
+  options: ReadOptions,
 ): Particles {
   const [mass, x, y, z, vx, vy, vz] = PHASE_SPACE.map((name) => columns.get(name) as FloatColumn);
   const facts = readFacts(planner.schema?.metadata ?? new Map<string, string>(), planner.file);
@@ -200,8 +201,13 @@ function assemble(
       .filter(({ targets }) => targets.some((target) => PHASE_SPACE.includes(target)))
       .map(({ kind }) => MANTISSA_BITS[kind] ?? 53),
   );
-  const unread = unreadOf(planner);
-  const origin = { file: planner.file, format, mantissaBits, remarks: [], unread };
+  const name = options.columns?.softening ?? 'softening';
+  const hasMoreSoftening =
+    !columns.has('softening') && planner.schema?.fields.some((field) => field.name === name);
+  const origin: ParticleOrigin = {
+    ...{ file: planner.file, format, mantissaBits, remarks: [], unread: unreadOf(planner) },
+    ...(hasMoreSoftening === true && { hasMoreSoftening }),
+  };
   const componentNames = planner.components.names;
   const optional = optionalColumns(columns);
   return { count, mass, x, y, z, vx, vy, vz, columns: optional, componentNames, ...facts, origin };

@@ -212,6 +212,7 @@ export function assemble(
       file: path,
       format: 'raw',
       mantissaBits: mantissaBits(plan),
+      ...(!plan.has('softening') && hasSoftening(layout, options) && { hasMoreSoftening: true }),
       remarks: [
         ...found.remarks,
         ...similarNames(path, layout, options),
@@ -259,6 +260,15 @@ function realsOf(columns: Columns, quantity: Quantity): FloatColumn {
   const target = columns.get(quantity);
   if (target?.kind !== 'reals') throw new Error(`${quantity} was planned as something else`);
   return target.column;
+}
+
+/** Whether the file or its layout has softening lengths of all bodies or some. */
+function hasSoftening({ fields, components = [] }: Layout, { columns }: ReadOptions): boolean {
+  const name = columns?.softening ?? 'softening';
+  return (
+    fields.some((field) => 'name' in field && field.name === name) ||
+    components.some(({ softening }) => softening !== undefined)
+  );
 }
 
 /** Components as the layout lists them, or as a field has them. */
