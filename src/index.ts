@@ -25,6 +25,8 @@ import type { FieldName, ReadOptions, SnapshotDescription } from './snapshot/rea
 import type { AveragedBalance } from './survey/average.ts';
 import type { Conversion, ConvertOptions } from './survey/convert.ts';
 import type { MakeSnapshotOptions } from './survey/make.ts';
+import type { Forecast } from './settling/forecast.ts';
+import type { FollowOptions, Sighting } from './survey/follow.ts';
 import type { Ledger } from './survey/ledger.ts';
 import type { FileOutcome } from './survey/many.ts';
 import type { SurveyOptions } from './survey/measure.ts';
@@ -111,6 +113,8 @@ export type { Conversion, ConvertOptions } from './survey/convert.ts';
 export type { Difference } from './snapshot/comparison.ts';
 export type { MakeSnapshotOptions } from './survey/make.ts';
 export { LEDGER_NAME } from './survey/ledgerName.ts';
+export type { Forecast } from './settling/forecast.ts';
+export type { FollowOptions, Sighting } from './survey/follow.ts';
 export type { Ledger } from './survey/ledger.ts';
 export type { FileOutcome } from './survey/many.ts';
 export type { Stage, SurveyOptions } from './survey/measure.ts';
@@ -215,6 +219,27 @@ export async function measureFiles(
     return (await import('./survey/measureNew.ts')).measureNew(prepared, options, crew, ledger);
   }
   return (await import('./survey/many.ts')).measureMany(snapshots, options, crew);
+}
+
+/**
+ * Follows a folder into which a simulation writes, until the signal comes: snapshots as they become
+ * whole, and what else there is to know. Small steps that the caller may leave at any time.
+ * @throws InputError `input.notFound`, `input.noPermission` if the folder is not there at the start
+ */
+export async function followFolder(
+  folder: string,
+  options: SurveyOptions,
+  how: FollowOptions,
+): Promise<AsyncGenerator<Sighting>> {
+  return (await import('./survey/follow.ts')).follow(folder, options, how);
+}
+
+/**
+ * When a run that has not settled is expected to, by the records so far; null if nothing can be said.
+ * Times are in the unit of the records.
+ */
+export async function forecast(records: readonly MeasureRecord[]): Promise<Forecast | null> {
+  return (await import('./settling/forecast.ts')).forecastRun(records);
 }
 
 /**

@@ -7,6 +7,7 @@ import type { DescribeOptions } from './describe.ts';
 import type { MakeCommandOptions } from './make.ts';
 import type { MeasureCommandOptions } from './measure.ts';
 import type { TrackOptions } from './track.ts';
+import type { WatchOptions } from './watch.ts';
 import { modelling } from './makeOptions.ts';
 import { integerOf, listOf, numberOf, softeningOf, vectorOf, wholeOf, wordsOf } from './parse.ts';
 import type { Streams } from './streams.ts';
@@ -64,6 +65,20 @@ export function buildProgram(streams: Streams, done: (code: ExitCode) => void): 
     .option('--quiet', 'no progress on standard error')
     .action(async (inputs: string[], options: TrackOptions) => {
       done(await (await import('./track.ts')).track(inputs, options, streams));
+    });
+
+  measuring(reading(program.command('watch <folder>')))
+    .description('follow a running simulation: records, live verdict, forecast')
+    .option('--until <what>', 'end once it is settled, or decided, or at a time')
+    .option('--on-verdict <cmd>', 'run it with the verdict as JSON when that changes')
+    .option('--poll <s>', 'seconds between two looks (2)', numberOf('--poll'))
+    .option('--still <s>', 'seconds without change before a file is read (1)', numberOf('--still'))
+    .addOption(formats(['table', 'ndjson']))
+    .option('--ledger <file>', 'where records are kept (settlemark.ledger in the folder)')
+    .option('--no-ledger', 'keep no records')
+    .option('--quiet', 'no notes on standard error, and no live view')
+    .action(async (folder: string, options: WatchOptions) => {
+      done(await (await import('./watch.ts')).watch(folder, options, streams));
     });
 
   modelling(making(program.command('make <model>')))
