@@ -67,7 +67,7 @@ export function buildProgram(streams: Streams, done: (code: ExitCode) => void): 
       done(await (await import('./track.ts')).track(inputs, options, streams));
     });
 
-  measuring(reading(program.command('watch <folder>')))
+  timing(measuring(reading(program.command('watch <folder>'))))
     .description('follow a running simulation: records, live verdict, forecast')
     .option('--until <what>', 'end once it is settled, or decided, or at a time')
     .option('--on-verdict <cmd>', 'run it with the verdict as JSON when that changes')
@@ -176,15 +176,19 @@ function measuring(command: Command): Command {
 }
 
 function following(command: Command): Command {
+  return timing(command)
+    .option('--from <T>', 'only snapshots from this time on', numberOf('--from'))
+    .option('--to <T>', 'only snapshots up to this time', numberOf('--to'))
+    .option('--every <n>', 'only every n-th of them', wholeOf('--every', 1));
+}
+
+function timing(command: Command): Command {
   return command
     .option('--times <file>', 'times of the snapshots: CSV with the columns file,time')
     .option('--no-times', 'not even times.csv beside the snapshots')
     .option('--interval <DT>', 'snapshot k has the time k DT', numberOf('--interval'))
     .option('--start <T>', 'time of the first, with --interval (0)', numberOf('--start'))
-    .option('--time-pattern <name>', 'time in the names of files: snap_{time}.bin')
-    .option('--from <T>', 'only snapshots from this time on', numberOf('--from'))
-    .option('--to <T>', 'only snapshots up to this time', numberOf('--to'))
-    .option('--every <n>', 'only every n-th of them', wholeOf('--every', 1));
+    .option('--time-pattern <name>', 'time in the names of files: snap_{time}.bin');
 }
 
 function making(command: Command): Command {

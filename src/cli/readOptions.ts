@@ -41,7 +41,17 @@ export interface CommandOptions
 }
 
 /** Options that say how a command works and what it writes: none of them changes a figure. */
-const OF_THE_COMMAND = ['threads', 'format', 'out', 'quiet', 'ledger'] as const;
+const OF_THE_COMMAND = [
+  'threads',
+  'format',
+  'out',
+  'quiet',
+  'ledger',
+  'until',
+  'onVerdict',
+  'poll',
+  'still',
+] as const;
 /** Options that say which snapshots are meant. */
 const OF_THE_SERIES = ['from', 'to', 'every'] as const;
 

@@ -7,7 +7,7 @@
 import { watch as watchFolder, type FSWatcher } from 'node:fs';
 import { readdir, stat } from 'node:fs/promises';
 import { join } from 'node:path';
-import type { SettlemarkError } from '../errors.ts';
+import { SettlemarkError } from '../errors.ts';
 import { InputError } from '../errors.ts';
 import { asReadError } from '../snapshot/files.ts';
 import { describeSnapshot } from '../snapshot/read.ts';
@@ -61,6 +61,7 @@ export async function* follow(
   const bell = new Bell(signal);
   let isHere = true;
   let wasIdle = false;
+  let lastTrouble = '';
   try {
     await readdir(folder).catch((error: unknown) => {
       throw asReadError(folder, error);
@@ -80,7 +81,13 @@ export async function* follow(
         );
         const still = await stillFiles(files, seen, stillSeconds);
         const ready: PreparedSnapshot[] = [];
-        for (const snapshot of await prepareSnapshots(still, options)) {
+        const prepared = await prepare(files, still, options);
+        if (prepared instanceof SettlemarkError) {
+          if (prepared.message !== lastTrouble)
+            yield { kind: 'incomplete', file: folder, error: prepared };
+          lastTrouble = prepared.message;
+        }
+        for (const snapshot of prepared instanceof SettlemarkError ? [] : prepared) {
           const error = await whyNotWhole(snapshot);
           const parts = snapshot.parts ?? [snapshot.file];
           if (error === null) {
@@ -102,6 +109,27 @@ export async function* follow(
     }
   } finally {
     bell.close();
+  }
+}
+
+/**
+ * The snapshots that consist of files that are still; all files are looked at, because times may go by
+ * the place in the series. Gives the error of times or a run file that do not fit (yet).
+ */
+async function prepare(
+  files: readonly string[],
+  still: readonly string[],
+  options: SurveyOptions,
+): Promise<PreparedSnapshot[] | SettlemarkError> {
+  if (still.length === 0) return [];
+  const isStill = new Set(still);
+  try {
+    return (await prepareSnapshots(files, options)).filter(({ file, parts }) =>
+      (parts ?? [file]).some((part) => isStill.has(part)),
+    );
+  } catch (error) {
+    if (error instanceof SettlemarkError) return error;
+    throw error;
   }
 }
 
