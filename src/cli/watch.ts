@@ -23,7 +23,8 @@ import { ledgerFor, type LedgerOptions } from './ledger.ts';
 import type { MeasureCommandOptions } from './measure.ts';
 import { runOnVerdict } from './onVerdict.ts';
 import { surveyOptionsOf } from './readOptions.ts';
-import { remarksText } from './remarks.ts';
+import { wrap } from './layout.ts';
+import { asSentence } from './remarks.ts';
 import { paintFor } from './style.ts';
 import { write, type Streams } from './streams.ts';
 import { watchLine } from './watchLine.ts';
@@ -244,8 +245,7 @@ function tellerFor({ format, quiet = false }: WatchOptions, streams: Streams): T
     },
     async note(text) {
       notes.push(text);
-      const remark = { code: 'watch', text, remedy: '' };
-      if (!quiet) await write(stderr, `${remarksText([remark]).split('\n    (watch)')[0]}\n`);
+      if (!quiet) await write(stderr, `${wrap(asSentence(text), '  ', '! ')}\n`);
     },
     close: () => undefined,
   };
