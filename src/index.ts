@@ -13,6 +13,7 @@ import type { MeasureRecord } from './dynamics/record.ts';
 import type { RecordColumn } from './dynamics/recordColumns.ts';
 import type { MeasureOptions } from './dynamics/settings.ts';
 import { verdictOf as judge, type Verdict } from './settling/verdict.ts';
+import type { ExternalField } from './models/external.ts';
 import type { LeapfrogOptions } from './models/leapfrog.ts';
 import type { ModelFigures } from './models/figures.ts';
 import type { MakeOptions, SphereOptions } from './models/make.ts';
@@ -79,6 +80,8 @@ export type { Softening, SofteningKernel } from './octree/softening.ts';
 export type { Verdict, VerdictName } from './settling/verdict.ts';
 export type { Audit } from './settling/audit.ts';
 export type { Finding } from './settling/rule.ts';
+export type { ExternalField } from './models/external.ts';
+export type { ExternalFigures } from './dynamics/external.ts';
 export type { LeapfrogOptions } from './models/leapfrog.ts';
 export type { ModelFigures } from './models/figures.ts';
 export type {
@@ -262,10 +265,12 @@ export async function measureSnapshot(
 ): Promise<MeasureRecord> {
   const { onStage, ...measurement } = options;
   const { measureParticles } = await import('./dynamics/measure.ts');
-  const settled =
-    measurement.units === undefined
-      ? measurement
-      : { ...measurement, units: await loadUnits(measurement.units) };
+  const { units, external } = measurement;
+  const settled = {
+    ...measurement,
+    ...(units !== undefined && { units: await loadUnits(units) }),
+    ...(typeof external === 'string' && { external: await readExternal(external) }),
+  };
   return measureParticles(particles, settled, crew, { onStage });
 }
 
@@ -359,6 +364,14 @@ export async function findSnapshots(paths: readonly string[]): Promise<string[]>
  */
 export async function loadUnits(units: Units): Promise<Units> {
   return (await import('./snapshot/ownUnits.ts')).loadUnits(units);
+}
+
+/**
+ * Reads a file of external fields.
+ * @throws UsageError `usage.external`; InputError if it cannot be read
+ */
+export async function readExternal(path: string): Promise<ExternalField[]> {
+  return (await import('./survey/externalFile.ts')).readExternal(path);
 }
 
 /** Parses `name=column,…` for {@link ReadOptions.columns}. @throws UsageError */

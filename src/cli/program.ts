@@ -165,6 +165,7 @@ function measuring(command: Command): Command {
     )
     .option('--with <name,...>', 'also inertia, shells, profiles, pairs, or all', wordsOf)
     .option('--shells <n>', 'number of shells for these (16)', wholeOf('--shells', 1))
+    .option('--external <file>', 'external fields (JSON): a tide, a host galaxy')
     .option('--coulomb-factor <γ>', 'γ in Λ = γN (0.11)', numberOf('--coulomb-factor'))
     .addOption(
       new Option(

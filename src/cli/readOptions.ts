@@ -37,6 +37,7 @@ export async function readOptionsOf(
 export interface CommandOptions
   extends ReadingOptions, TimeSettings, SeriesRange, Omit<MeasureOptions, 'fromRunFile' | 'units'> {
   readonly units?: string;
+  readonly external?: string;
   readonly runFile?: string | boolean;
 }
 

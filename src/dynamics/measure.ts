@@ -1,6 +1,7 @@
 /** Particles → record: the order of the work, and nothing else. */
 import { takeDoubles } from '../numerics/reuse.ts';
 import { InputError } from '../errors.ts';
+import type { ExternalField } from '../models/external.ts';
 import { buildOctree } from '../octree/build.ts';
 import { PROMISED_SIGMAS, sumForces, type Forces, type ForceStage } from '../octree/forces.ts';
 import type { Softening } from '../octree/softening.ts';
@@ -11,6 +12,7 @@ import { balanceOf, fieldOf } from './balance.ts';
 import { boundSet } from './bound.ts';
 import { findCentre } from './centre.ts';
 import { coincidentPairs, duplicateIds } from './duplicates.ts';
+import { externalFigures, externalRemark } from './external.ts';
 import { fitFileForces, type FileForces } from './fileForces.ts';
 import { forcesFromFile, requireFileForces, requireForceColumns } from './forcesFromFile.ts';
 import { lagrangianRadii } from './lagrangian.ts';
@@ -63,6 +65,7 @@ export async function measureParticles(
   const decided = settle(options, particles);
   const settings = context.time ? { ...decided, time: context.time } : decided;
   const gravity = settings.gravity.value;
+  const settledFields = fieldsOf(options);
   const { length } = settings.softening.value;
   const fromFile = settings.forces.value === 'file';
   if (fromFile) requireForceColumns(given, '--forces file');
@@ -150,6 +153,18 @@ export async function measureParticles(
     },
     crew,
   );
+  const external =
+    settledFields.length === 0
+      ? null
+      : externalFigures(settledFields, {
+          particles,
+          gravity,
+          whole: balance,
+          boundMass: boundBalance.balance.mass,
+          centreOfMass: vector(frame.frame, 0),
+          centre: centre.centre,
+          halfMassRadius,
+        });
   const record = {
     record: RECORD_VERSION,
     file,
@@ -182,6 +197,7 @@ export async function measureParticles(
       coulombLogarithm: logarithm,
     },
     ...extras.figures,
+    ...(external && { external }),
   } as const;
   const unfit = firstNotFinite(record);
   if (unfit !== null) throw overflow(file, unfit);
@@ -222,8 +238,13 @@ export async function measureParticles(
         total: read + (end - start) / 1000,
       },
     },
-    remarks: [...remarks, ...extras.remarks],
+    remarks: [...remarks, ...extras.remarks, ...(external ? [externalRemark(external)] : [])],
   };
+}
+
+function fieldsOf({ external = [] }: MeasureOptions): readonly ExternalField[] {
+  if (typeof external !== 'string') return external;
+  throw new Error('the file of external fields was not read before');
 }
 
 /** @throws InputError if U and W cannot be had from the columns */

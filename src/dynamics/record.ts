@@ -7,6 +7,7 @@
 import type { SofteningKernel } from '../octree/softening.ts';
 import type { Remark, Selection } from '../snapshot/particles.ts';
 import type { UnitSystem } from '../snapshot/units.ts';
+import type { ExternalFigures } from './external.ts';
 import type { ExtraName } from './extras.ts';
 import type { InertiaFigures } from './inertia.ts';
 import type { PairFigures } from './pairs.ts';
@@ -126,9 +127,11 @@ export interface EngineReport {
   };
 }
 
-/** What `--with` adds: the keys of each extra are there if it was asked for. */
+/** What `--with` and `--external` add: the keys are there if it was asked for. */
 export interface ExtraFigures
   extends Partial<InertiaFigures>, Partial<RadialToTangential>, Partial<PairFigures> {
+  /** Only if external fields were stated. */
+  readonly external?: ExternalFigures;
   readonly shells?: Shells;
   readonly profiles?: Profiles;
 }

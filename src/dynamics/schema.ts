@@ -138,6 +138,19 @@ export async function recordSchema(): Promise<ZodType> {
     settings: settings.describe('what was used, and where it came from'),
     frame: { centreMethod: centreMethod.describe('method of frame.centre that was used') },
   };
+  const energy = (text: string) => z.number().describe(`${text} [mass length² time⁻²]`);
+  tree.external = z
+    .object({
+      fields: z.array(z.looseObject({ form: z.string() })).describe('as they were stated'),
+      potential: energy('Σ m φ of the fields'),
+      clausius: energy('Σ m (x − x_c)·a of the fields'),
+      energy: energy('T + U + Σ m φ'),
+      clausiusRatio: z.number().nullable().describe('2T/|W| with the share of the fields in W'),
+      jacobiRadius: z.number().min(0).nullable().describe('(G m/(λ₁ − λ₂))^⅓ [length]'),
+      massBeyond: z.number().min(0).nullable().describe('mass farther out than that [mass]'),
+    })
+    .optional()
+    .describe('external fields; only with --external');
   const optional = new Set<string>();
   for (const quantity of QUANTITIES) {
     const path = quantity.key.split('.');

@@ -1,5 +1,6 @@
 /** Options of a measurement, and which of option, run file, snapshot and default decides each. */
 import { InputError, UsageError } from '../errors.ts';
+import type { ExternalField } from '../models/external.ts';
 import { lengthOfPair, SPLINE_SUPPORT, type SofteningKernel } from '../octree/softening.ts';
 import type { Particles } from '../snapshot/particles.ts';
 import { unitSystemOf, type Units } from '../snapshot/ownUnits.ts';
@@ -40,6 +41,8 @@ export interface MeasureOptions {
   readonly with?: readonly string[];
   /** Number of shells of equal number that `shells` and `profiles` use. */
   readonly shells?: number;
+  /** External fields, or a file of them (`.json`); without them the bodies are taken to be alone. */
+  readonly external?: string | readonly ExternalField[];
   /** Which of these options a run file decided; all others count as stated by the caller. */
   readonly fromRunFile?: readonly (keyof MeasureOptions)[];
 }

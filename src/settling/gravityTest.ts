@@ -37,8 +37,9 @@ export function impliedGravity(records: readonly MeasureRecord[]): ImpliedGravit
   const [first] = records;
   const { gravity } = first.settings;
   const isOneSystem = records.every(
-    ({ whole, settings, selection }) =>
+    ({ whole, settings, selection, external }) =>
       selection === undefined &&
+      external === undefined &&
       whole.particles === first.whole.particles &&
       Math.abs(whole.mass / first.whole.mass - 1) < 1e-9 &&
       settings.gravity.value === gravity.value &&

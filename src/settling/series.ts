@@ -131,7 +131,9 @@ function energyErrors(records: readonly MeasureRecord[]): Float64Array | null {
     ({ whole }) => whole.particles === particles && Math.abs(whole.mass / mass - 1) < 1e-9,
   );
   const stated = records.every(({ settings }) => settings.softening.from !== 'default');
-  if (!same || !stated) return null;
+  // In a field from outside T + U alone is not kept.
+  const alone = records.every(({ external }) => external === undefined);
+  if (!same || !stated || !alone) return null;
   const start = first.whole.energy;
   const scale = Math.max(Math.abs(start), Math.abs(first.whole.potential) / 4);
   return Float64Array.from(records, ({ whole }) => (whole.energy - start) / scale);

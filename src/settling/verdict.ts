@@ -219,7 +219,7 @@ function remarksOf(
   if (track.energyError === null) {
     remarks.push({
       code: 'energyNotJudged',
-      text: 'whether the energy was kept is not judged: softening is not stated, or mass or number of bodies changed',
+      text: 'whether the energy was kept is not judged: softening is not stated, mass or number of bodies changed, or external fields act',
       remedy: 'state the softening of the run (--softening, 0 for none)',
     });
   }

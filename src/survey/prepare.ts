@@ -6,6 +6,7 @@ import type { Remark } from '../snapshot/particles.ts';
 import { joinFiles, type JoinedFile } from '../snapshot/parts.ts';
 import type { ReadOptions } from '../snapshot/reading.ts';
 import type { SurveyOptions } from './measure.ts';
+import { readExternal } from './externalFile.ts';
 import type { SeriesRange } from './range.ts';
 import { findRunFile, readRunFile, type RunFile, type RunSettings } from './runFile.ts';
 import { TIME_KEYS, timesOf, type FoundTime, type StatedTime, type TimeSettings } from './times.ts';
@@ -149,12 +150,14 @@ async function overlay(
   for (const key of ['runFile', 'onStage', 'read'] as const) delete stated[key];
   const taken = takenDefaults(stated, rest);
   const units = stated.units ?? taken.units;
+  const external = stated.external ?? taken.external;
   const keys = Object.keys(taken) as (keyof MeasureOptions)[];
   return {
     options: {
       ...taken,
       ...stated,
       ...(units !== undefined && { units: await loadUnits(units) }),
+      ...(typeof external === 'string' && { external: await readExternal(external) }),
       ...(keys.length > 0 && { fromRunFile: keys }),
       // Standard input is an Arrow stream, whatever else the run consists of.
       read: { ...selecting, ...readOptions(read, file === '-' ? undefined : layout, columns) },

@@ -100,7 +100,7 @@ async function complete(
   places: JsonPlaces,
   stated: RunSettings,
 ): Promise<RunSettings> {
-  const { layout, times, units: named, with: extras = [] } = stated;
+  const { layout, times, units: named, with: extras = [], external } = stated;
   checkTimeSettings(stated, (key, text, remedy) => {
     throw invalid(path, places.valueAt([key]), `${key}: ${text}`, remedy);
   });
@@ -123,6 +123,7 @@ async function complete(
     ...(layout !== undefined && { layout: beside(path, layout) }),
     ...(typeof times === 'string' && { times: beside(path, times) }),
     ...(units !== undefined && { units }),
+    ...(typeof external === 'string' && { external: beside(path, external) }),
   };
 }
 

@@ -100,6 +100,7 @@ const shape = {
   from: z.number().optional().describe('no snapshots of the series before this time'),
   to: z.number().optional().describe('no snapshots of the series after this time'),
   every: z.int().min(1).optional().describe('only every n-th snapshot of the series'),
+  external: z.string().min(1).optional().describe('file of external fields, a path from this file'),
   threads: z.int().min(1).optional().describe('worker threads'),
 } satisfies Record<keyof RunSettings, z.ZodType>;
 

@@ -80,7 +80,9 @@ describe('a record', async () => {
 
   it('has the keys of the schema, and no others', async () => {
     const units = { length: 'pc', mass: 'Msun', gravity: 1 };
-    const { text: whole } = await recordOf(300, { softening: 'column', units, with: ['all'] });
+    const external = [{ form: 'pointMass', mass: 1, centre: [9, 0, 0] }] as const;
+    const options: MeasureOptions = { softening: 'column', units, with: ['all'], external };
+    const { text: whole } = await recordOf(300, options);
     const selection = { only: 'gas', group: '7', within: 2, about: [0, 0, 1], of: 900 };
     const text = { ...(whole as object), selection };
     expect(passes(text)).toEqual([true, true]);
