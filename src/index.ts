@@ -14,6 +14,12 @@ import type { RecordColumn } from './dynamics/recordColumns.ts';
 import type { MeasureOptions } from './dynamics/settings.ts';
 import { verdictOf as judge, type Verdict } from './settling/verdict.ts';
 import type { ExternalField } from './models/external.ts';
+import { comparedRun as shortRun, type ComparedRun } from './gate/compareRun.ts';
+import {
+  compareRuns as compareShortRuns,
+  type CompareOptions,
+  type Comparison,
+} from './gate/compare.ts';
 import type { LeapfrogOptions } from './models/leapfrog.ts';
 import type { ModelFigures } from './models/figures.ts';
 import type { MakeOptions, SphereOptions } from './models/make.ts';
@@ -82,6 +88,9 @@ export type { Audit } from './settling/audit.ts';
 export type { Finding } from './settling/rule.ts';
 export type { ExternalField } from './models/external.ts';
 export type { ExternalFigures } from './dynamics/external.ts';
+export type { CompareOptions, Comparison, QuantityComparison } from './gate/compare.ts';
+export type { ComparedRun, RunSetup } from './gate/compareRun.ts';
+export { looksLikeReference, parseReference, referenceText } from './gate/compareReference.ts';
 export type { LeapfrogOptions } from './models/leapfrog.ts';
 export type { ModelFigures } from './models/figures.ts';
 export type {
@@ -420,6 +429,27 @@ export async function isRecords(path: string): Promise<boolean> {
  */
 export function verdictOf(records: readonly MeasureRecord[]): Verdict {
   return judge(records);
+}
+
+/**
+ * The short form of a run in which it is compared and stored.
+ * @throws UnanswerableError `unanswerable.emptyRun`
+ */
+export function comparedRun(records: readonly MeasureRecord[], name: string): ComparedRun {
+  return shortRun(records, name);
+}
+
+/**
+ * Compares candidate runs with reference runs: the same, or different in what, when and by how much.
+ * @throws UsageError `usage.range`; InputError `input.otherSetup`; UnanswerableError
+ *   `unanswerable.noOverlap`, `unanswerable.noRuns`
+ */
+export function compareRuns(
+  candidates: readonly ComparedRun[],
+  references: readonly ComparedRun[],
+  options: CompareOptions = {},
+): Comparison {
+  return compareShortRuns(candidates, references, options);
 }
 
 /**

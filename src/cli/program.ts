@@ -1,6 +1,7 @@
 /** The commands and their options; each command's work is loaded when it is called. */
 import { readFileSync } from 'node:fs';
 import { Command, Option } from 'commander';
+import type { CompareCommandOptions } from './compare.ts';
 import type { ConvertCommandOptions } from './convert.ts';
 import type { DemoOptions } from './demo.ts';
 import type { DescribeOptions } from './describe.ts';
@@ -81,6 +82,25 @@ export function buildProgram(streams: Streams, done: (code: ExitCode) => void): 
       done(await (await import('./watch.ts')).watch(folder, options, streams));
     });
 
+  following(measuring(reading(program.command('compare <run...>')), false))
+    .description('say whether runs are statistically the same as reference runs')
+    .option('--with <run...>', 'reference runs: folders, records, or a stored reference')
+    .option('--store <file>', 'keep the references (without --with, the runs) in a file')
+    .option(
+      '--false-alarm <rate>',
+      'of correct runs called different (0.05)',
+      numberOf('--false-alarm'),
+    )
+    .option('--windows <n>', 'parts of the common time (4)', wholeOf('--windows', 1))
+    .addOption(formats(['table', 'json']))
+    .addOption(new Option('--out <file>', 'write to a file; its ending may name the format'))
+    .option('--no-ledger', 'keep no records, and measure all anew')
+    .option('--quiet', 'no progress on standard error')
+    .addHelpText('after', '\nExit code 0: the same, 1: different.')
+    .action(async (runs: string[], options: CompareCommandOptions) => {
+      done(await (await import('./compare.ts')).compare(runs, options, streams));
+    });
+
   modelling(making(program.command('make <model>')))
     .description(
       'make a snapshot of an equilibrium model: plummer, hernquist, jaffe, dehnen, king or uniform',
@@ -132,7 +152,11 @@ function reading(command: Command): Command {
     .option('--no-run-file', 'do not look for a run file');
 }
 
-function measuring(command: Command): Command {
+/** @param extras - whether `--with` names further quantities */
+function measuring(command: Command, extras = true): Command {
+  if (extras) {
+    command.option('--with <name,...>', 'also inertia, shells, profiles, pairs, or all', wordsOf);
+  }
   return command
     .option('--only <component>', 'only the bodies of this component')
     .option('--group <n>', 'only the bodies of this group', integerOf('--group'))
@@ -163,7 +187,6 @@ function measuring(command: Command): Command {
         'file',
       ]),
     )
-    .option('--with <name,...>', 'also inertia, shells, profiles, pairs, or all', wordsOf)
     .option('--shells <n>', 'number of shells for these (16)', wholeOf('--shells', 1))
     .option('--external <file>', 'external fields (JSON): a tide, a host galaxy')
     .option('--coulomb-factor <γ>', 'γ in Λ = γN (0.11)', numberOf('--coulomb-factor'))

@@ -8,15 +8,27 @@
 import { normalPoint, normalTail } from '../numerics/normal.ts';
 import type { ComparedRun } from './compareRun.ts';
 
-/** Standard deviations times √N_eff of quantities without memory of a model: see docs/compare.md. */
-const NOISE: Readonly<Record<string, { readonly seeds: number; readonly time: number }>> = {
-  ratio: { seeds: 0.85, time: 0.6 },
-  'lagrangian[0.1]': { seeds: 1.5, time: 1.6 },
-  'lagrangian[0.5]': { seeds: 0.9, time: 0.9 },
-  virialRadius: { seeds: 0.8, time: 0.5 },
+/**
+ * Standard deviations times √N_eff: of one moment and of a mean over crossing times between seeds, and in
+ * time between runs of the same bodies. Measured on Plummer spheres of 64 to 256 bodies, see
+ * docs/compare.md; r_v and the radii settle to what the energy of the draw asks for, and so differ more
+ * after some crossing times than at the start.
+ */
+const NOISE: Readonly<
+  Record<string, { readonly start: number; readonly settled: number; readonly time: number }>
+> = {
+  ratio: { start: 0.85, settled: 0.6, time: 0.6 },
+  'lagrangian[0.1]': { start: 1.5, settled: 1.85, time: 1.6 },
+  'lagrangian[0.5]': { start: 1.1, settled: 1.5, time: 0.9 },
+  virialRadius: { start: 0.85, settled: 1.42, time: 0.5 },
+};
+/** Sampling errors of the radii × √N_eff of the spheres that the above were measured on. */
+const PLUMMER_SAMPLING: Readonly<Record<string, number>> = {
+  'lagrangian[0.1]': 1.27,
+  'lagrangian[0.5]': 0.9,
 };
 /** Crossing times over which noise in time has a memory, and in which it averages out. */
-const MEMORY = { ratio: 0.3, radii: 3 } as const;
+const MEMORY = { ratio: 0.17, radii: 3 } as const;
 
 export interface Band {
   readonly standardError: number;
@@ -41,29 +53,23 @@ export function bandsOf(
   sameBodies: boolean,
   falseAlarm: number,
 ): Map<string, Band> {
-  const [{ setup, sampling }] = references;
+  const runs = [...candidates, ...references];
   const share = 1 / candidates.length + 1 / references.length;
+  const root = Math.sqrt(references[0].setup.effectiveNumber);
   const bands = new Map<string, Band>();
   for (const [key, value] of difference) {
     const noise = NOISE[key];
-    const root = Math.sqrt(setup.effectiveNumber);
-    const isRatio = key === 'ratio';
-    const measured =
-      key === 'lagrangian[0.1]' ? sampling.inner : key === 'lagrangian[0.5]' ? sampling.half : null;
-    const inTime =
-      (noise.time / root) *
-      Math.sqrt(Math.min(1, (isRatio ? MEMORY.ratio : MEMORY.radii) / Math.max(span, 1e-9)));
+    const memory = key === 'ratio' ? MEMORY.ratio : MEMORY.radii;
+    const averaged = Math.sqrt(Math.min(1, memory / Math.max(span, 1e-9)));
     // Over time the ratio goes to 1 whatever the seed; the radii of one draw stay its own.
-    const between = sameBodies
-      ? 0
-      : isRatio
-        ? span > 0
-          ? 0
-          : noise.seeds / root
-        : (measured ?? noise.seeds / root);
-    // At one time alone there is nothing to average: draws differ by what they differ at the start.
-    const variance = span > 0 ? inTime ** 2 + between ** 2 : between ** 2;
-    const standardError = Math.max(1e-9, Math.sqrt(variance * share));
+    const unit =
+      span === 0
+        ? noise.start
+        : sameBodies
+          ? noise.time * averaged
+          : noise.settled * (key === 'ratio' ? averaged : 1);
+    const sigma = (unit / root) * shapeOf(key, runs, root);
+    const standardError = Math.max(1e-9, sigma * Math.sqrt(share));
     bands.set(key, {
       standardError,
       p: normalTail(value / standardError),
@@ -71,4 +77,18 @@ export function bandsOf(
     });
   }
   return bands;
+}
+
+/** Sampling error of a radius over that of a Plummer sphere: a cusp or a shallow core has another one. */
+function shapeOf(key: string, runs: readonly ComparedRun[], root: number): number {
+  const errors = runs.flatMap(({ sampling }) =>
+    key === 'lagrangian[0.1]'
+      ? (sampling.inner ?? [])
+      : key === 'lagrangian[0.5]'
+        ? (sampling.half ?? [])
+        : [],
+  );
+  if (errors.length === 0) return 1;
+  const mean = errors.reduce((sum, value) => sum + value, 0) / errors.length;
+  return (mean * root) / PLUMMER_SAMPLING[key];
 }

@@ -15,6 +15,8 @@ import { principalScores } from './comparePrincipal.ts';
 const LABELLINGS = 1000;
 /** Below this a scatter is rounding: all features are of order 1. */
 const LEAST_SCATTER = 1e-9;
+/** Least scatter within groups, as a share of that of all runs together, which no labelling changes. */
+const LEAST_SHARE = 0.25;
 
 export interface PermutationResult {
   /** Chance of so large a combined statistic if all runs are alike. */
@@ -53,8 +55,8 @@ export function permutationTest(
   const rows = [...candidates, ...references];
   const a = candidates.length;
   const features = rows[0].length;
-  const differenceOf = paired ? pairedDifference(rows, a) : groupDifference(rows, a);
   const pooled = scatterOf(rows, features);
+  const differenceOf = paired ? pairedDifference(rows, a) : groupDifference(rows, a, pooled);
   const scaled = rows.map((row) => row.map((value, f) => value / pooled[f]));
   const distances = distanceMatrix(scaled);
   const scores = principalScores(scaled);
@@ -156,7 +158,11 @@ function* everyChoice(
 
 type Difference = (labels: Uint8Array, t: Float64Array, error: Float64Array) => void;
 
-function groupDifference(rows: readonly Float64Array[], a: number): Difference {
+function groupDifference(
+  rows: readonly Float64Array[],
+  a: number,
+  pooled: Float64Array,
+): Difference {
   const b = rows.length - a;
   return (labels, t, error) => {
     for (let f = 0; f < t.length; f++) {
@@ -164,7 +170,9 @@ function groupDifference(rows: readonly Float64Array[], a: number): Difference {
       rows.forEach((row, k) => (mean[labels[k]] += row[f] / (labels[k] === 1 ? a : b)));
       let squares = 0;
       rows.forEach((row, k) => (squares += (row[f] - mean[labels[k]]) ** 2));
-      const scatter = Math.max(LEAST_SCATTER, Math.sqrt(squares / Math.max(1, a + b - 2)));
+      // What varies in one run alone (a first escaper) would else stand out without bound.
+      const least = LEAST_SHARE * pooled[f];
+      const scatter = Math.max(least, Math.sqrt(squares / Math.max(1, a + b - 2)));
       error[f] = scatter * Math.sqrt(1 / a + 1 / b);
       t[f] = (mean[1] - mean[0]) / error[f];
     }

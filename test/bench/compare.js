@@ -40,8 +40,9 @@ function draw(bank, random, a, b, paired) {
   return [runs.slice(0, a), runs.slice(a)];
 }
 
+/** A run that is off by so much in one quantity, from the second snapshot on: it starts as it did. */
 function shifted(run, quantity, by) {
-  const column = run.values[quantity].map((value) => value + by);
+  const column = run.values[quantity].map((value, k) => (k === 0 ? value : value + by));
   return { ...run, values: { ...run.values, [quantity]: column } };
 }
 
@@ -80,6 +81,7 @@ for (const count of [64, 128, 256]) {
     power.push([count, kind, cell('ratio'), cell('lagrangian[0.1]'), cell('lagrangian[0.5]')]);
   }
 }
-printTable(['N', 'runs', 'comparisons', 'called different'], rates);
+const columns = (heads) => heads.map((head, k) => [head, (row) => String(row[k])]);
+printTable(rates, columns(['N', 'runs', 'comparisons', 'called different']));
 console.log(`\nall: ${alarms} of ${comparisons}, ${((100 * alarms) / comparisons).toFixed(2)} %\n`);
-printTable(['N', 'runs', 'ratio', 'ln r_10', 'ln r_h'], power);
+printTable(power, columns(['N', 'runs', 'ratio', 'ln r_10', 'ln r_h']));
