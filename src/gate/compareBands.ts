@@ -17,7 +17,7 @@ import type { ComparedRun } from './compareRun.ts';
 const NOISE: Readonly<
   Record<string, { readonly start: number; readonly settled: number; readonly time: number }>
 > = {
-  ratio: { start: 0.85, settled: 0.6, time: 0.6 },
+  ratio: { start: 0.85, settled: 0.85, time: 0.6 },
   'lagrangian[0.1]': { start: 1.5, settled: 1.85, time: 1.6 },
   'lagrangian[0.5]': { start: 1.1, settled: 1.5, time: 0.9 },
   virialRadius: { start: 0.85, settled: 1.42, time: 0.5 },
@@ -27,8 +27,8 @@ const PLUMMER_SAMPLING: Readonly<Record<string, number>> = {
   'lagrangian[0.1]': 1.27,
   'lagrangian[0.5]': 0.9,
 };
-/** Crossing times over which noise in time has a memory, and in which it averages out. */
-const MEMORY = { ratio: 0.17, radii: 3 } as const;
+/** Crossing times over which noise of the radii has a memory, and over which that of the ratio averages out. */
+const MEMORY = { radii: 3, ratio: 0.6 } as const;
 
 export interface Band {
   readonly standardError: number;
@@ -59,15 +59,18 @@ export function bandsOf(
   const bands = new Map<string, Band>();
   for (const [key, value] of difference) {
     const noise = NOISE[key];
-    const memory = key === 'ratio' ? MEMORY.ratio : MEMORY.radii;
-    const averaged = Math.sqrt(Math.min(1, memory / Math.max(span, 1e-9)));
-    // Over time the ratio goes to 1 whatever the seed; the radii of one draw stay its own.
+    const averaged =
+      key === 'ratio'
+        ? // The mean of 2T + W is the change of the virial's boundary term over the time: it falls as 1/t.
+          1 / Math.sqrt(1 + (span / MEMORY.ratio) ** 2)
+        : Math.sqrt(Math.min(1, MEMORY.radii / Math.max(span, 1e-9)));
     const unit =
       span === 0
         ? noise.start
         : sameBodies
           ? noise.time * averaged
-          : noise.settled * (key === 'ratio' ? averaged : 1);
+          : // Over time the ratio goes to 1 whatever the seed; the radii of one draw stay its own.
+            noise.settled * (key === 'ratio' ? averaged : 1);
     const sigma = (unit / root) * shapeOf(key, runs, root);
     const standardError = Math.max(1e-9, sigma * Math.sqrt(share));
     bands.set(key, {

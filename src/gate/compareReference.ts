@@ -4,10 +4,10 @@ import { COMPARED_QUANTITIES, type ComparedRun } from './compareRun.ts';
 
 const MARK = 'comparison/1';
 
-/** Runs as the text of a reference file; figures to nine digits, which is far below any noise. */
+/** Runs as the text of a reference file; figures to twelve digits, which is far below any noise. */
 export function referenceText(runs: readonly ComparedRun[]): string {
   const short = (_key: string, value: unknown): unknown =>
-    typeof value === 'number' && !Number.isInteger(value) ? Number(value.toPrecision(9)) : value;
+    typeof value === 'number' && !Number.isInteger(value) ? Number(value.toPrecision(12)) : value;
   const lines = runs.map((run) => JSON.stringify(run, short));
   return `{"settlemark":"${MARK}","runs":[\n${lines.join(',\n')}\n]}\n`;
 }
