@@ -178,10 +178,9 @@ function byBands(
   candidates: readonly ComparedRun[],
   references: readonly ComparedRun[],
   kept: typeof COMPARED_QUANTITIES,
-  { edges: _edges, ...shared }: Shared,
+  { falseAlarm, from, to, start }: Shared,
   remarks: readonly Remark[],
 ): Comparison {
-  const { from, to, start, falseAlarm } = shared;
   const crossing = references[0].crossingTime;
   const banded = kept.filter(({ key }) => BANDED.includes(key));
   if (banded.length === 0) {
@@ -249,7 +248,10 @@ function byBands(
     p: Math.min(...quantities.map(({ adjusted: value }) => value)),
     parts: null,
     quantities,
-    ...shared,
+    falseAlarm,
+    from,
+    to,
+    start,
     remarks: [
       ...remarks,
       {

@@ -139,7 +139,7 @@ describe('what cannot be compared', () => {
 
   it('no time in common, no runs, and a rate that is none', () => {
     const later = { ...a, times: a.times.map((t) => t + 100) };
-    const code = (text: string) => expect.objectContaining({ code: text });
+    const code = (text: string) => expect.objectContaining({ code: text }) as Error;
     expect(() => compareRuns([later], [b])).toThrow(code('unanswerable.noOverlap'));
     expect(() => compareRuns([], [b])).toThrow(code('unanswerable.noRuns'));
     expect(() => compareRuns([a], [b], { falseAlarm: 1 })).toThrow(code('usage.range'));
