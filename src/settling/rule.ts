@@ -408,11 +408,16 @@ function motionNow(
   };
 }
 
+/** Snapshots among which a wave is sought. */
+const WAVE_SNAPSHOTS = 2000;
+
 function waveNow(track: Track, noise: number): Finding | null {
   const { time: t } = track;
   const n = t.length;
   let from = firstAt(t, t[n - 1] - 0.5 * (t[n - 1] - t[0]));
   if (n - from < 10) from = n - 10;
+  // A wave that is there now is there in the last few thousand; the work grows as the square of their number.
+  from = Math.max(from, n - WAVE_SNAPSHOTS);
   const half = sliceFrom(track, from);
   const gaps = Float64Array.from(
     { length: half.time.length - 1 },

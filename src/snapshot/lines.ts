@@ -1,5 +1,4 @@
 /** Lines of a text as it comes, several times faster than the lines of `node:readline`. */
-import { StringDecoder } from 'node:string_decoder';
 
 /**
  * Lines without their ends (`\n` or `\r\n`); a last line without an end counts too.
@@ -13,24 +12,20 @@ export async function* linesOf(chunks: AsyncIterable<Uint8Array | string>): Asyn
 export async function* blocksOfLines(
   chunks: AsyncIterable<Uint8Array | string>,
 ): AsyncGenerator<string[]> {
-  const decoder = new StringDecoder('utf8');
-  let rest = '';
+  let rest: Buffer[] = [];
   for await (const chunk of chunks) {
-    const text =
-      typeof chunk === 'string'
-        ? chunk
-        : decoder.write(Buffer.from(chunk.buffer, chunk.byteOffset, chunk.length));
-    const lines = text.split('\n');
-    if (lines.length === 1) {
-      rest += text;
-      continue;
+    const bytes = Buffer.from(chunk as Uint8Array);
+    // Whole lines are decoded at once: no byte of a longer character is that of a line's end.
+    const end = bytes.lastIndexOf(LINE_END) + 1;
+    if (end > 0) {
+      const text = Buffer.concat([...rest, bytes.subarray(0, end - 1)]).toString();
+      yield text.split('\n').map(withoutReturn);
+      rest = [];
     }
-    lines[0] = rest + lines[0];
-    rest = lines.pop() as string;
-    yield lines.map(withoutReturn);
+    if (end < bytes.length) rest.push(bytes.subarray(end));
   }
-  rest += decoder.end();
-  if (rest !== '') yield [withoutReturn(rest)];
+  if (rest.length > 0) yield [withoutReturn(Buffer.concat(rest).toString())];
 }
 
+const LINE_END = 0x0a;
 const withoutReturn = (line: string): string => (line.endsWith('\r') ? line.slice(0, -1) : line);
