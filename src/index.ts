@@ -125,6 +125,7 @@ export type { Conversion, ConvertOptions } from './survey/convert.ts';
 export type { Difference } from './snapshot/comparison.ts';
 export type { MakeSnapshotOptions } from './survey/make.ts';
 export { LEDGER_NAME } from './survey/ledgerName.ts';
+export type { ScalarMean } from './settling/scalars.ts';
 export type { Forecast } from './settling/forecast.ts';
 export type { FollowOptions, Sighting } from './survey/follow.ts';
 export type { Ledger } from './survey/ledger.ts';

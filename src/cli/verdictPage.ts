@@ -18,6 +18,11 @@ const WORDS: Record<Verdict['verdict'], string> = {
 };
 
 const RATIO = { virialRatio: '2T/|U|', clausiusRatio: '2T/|W|' } as const;
+const SETS = {
+  whole: 'bodies',
+  bound: 'bound bodies',
+  pairsMerged: 'bodies, hard pairs as one',
+} as const;
 const NAME_WIDTH = 60;
 
 export function verdictPage(verdict: Verdict, paint: Paint): string {
@@ -44,8 +49,17 @@ export function verdictPage(verdict: Verdict, paint: Paint): string {
           ] as [string, string][])),
       [
         RATIO[ratio.kind],
-        `${figure(ratio.mean, ratio.error)} of the ${ratio.set === 'bound' ? 'bound bodies' : 'bodies'}, mean over the ${good ? 'settled part' : 'second half'}`,
+        `${figure(ratio.mean, ratio.error)} of the ${SETS[ratio.set]}, mean over the ${good ? 'settled part' : 'second half'}`,
       ],
+      ...meansOf(verdict),
+      ...(verdict.convergenceRadius === null
+        ? []
+        : ([
+            [
+              'relaxed',
+              `inside ${short(verdict.convergenceRadius, 3)} by the noise of its own bodies (Power et al. 2003)`,
+            ],
+          ] as [string, string][])),
       [
         'noise',
         ratio.noise === null
@@ -72,6 +86,21 @@ export function verdictPage(verdict: Verdict, paint: Paint): string {
     ...(verdict.remarks.length > 0 ? ['', remarksText(verdict.remarks, paint)] : []),
   ];
   return `${lines.join('\n')}\n`;
+}
+
+const SHOWN = [
+  ['halfMassRadius', 'r_h'],
+  ['velocityDispersion', 'dispersion'],
+] as const;
+
+function meansOf({ means }: Verdict): [string, string][] {
+  return SHOWN.flatMap(([key, name]) => {
+    const found = means.find(({ quantity }) => quantity === key);
+    if (found === undefined) return [];
+    const { mean, error, trend, trendError } = found;
+    const per = trend === null ? '' : `, ${figure(trend, trendError)} a crossing time`;
+    return [[name, `${figure(mean, error)}${per}`] as [string, string]];
+  });
 }
 
 function rows(list: readonly (readonly [string, string])[]): string[] {

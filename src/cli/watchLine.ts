@@ -7,10 +7,10 @@ import type { RunSoFar } from './watch.ts';
 export function watchLine(record: MeasureRecord, { verdict, forecast }: RunSoFar): string {
   const set = verdict?.ratio.set ?? 'whole';
   const kind = verdict?.ratio.kind ?? kindOf(record);
-  const ratio = record[set][kind];
+  const ratio = (record[set] ?? record.whole)[kind];
   const parts = [
     record.time === null ? record.file : `time ${short(record.time, 6)}`,
-    `${kind === 'virialRatio' ? '2T/|U|' : '2T/|W|'} ${figure(ratio, record[set].noise)}`,
+    `${kind === 'virialRatio' ? '2T/|U|' : '2T/|W|'} ${figure(ratio, (record[set] ?? record.whole).noise)}`,
     `r_h ${short(record.halfMassRadius, 4)}`,
     ...(verdict === null ? [] : [verdictWords(verdict, forecast)]),
   ];

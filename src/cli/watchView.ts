@@ -100,11 +100,14 @@ function plots(records: readonly MeasureRecord[], verdict: RunSoFar['verdict']):
   const name = kind === 'virialRatio' ? '2T/|U|' : '2T/|W|';
   return [
     `${name}${noise === null ? '' : ', and the band of its noise'}`,
-    ...terminalPlot([{ x: times, y: records.map((record) => record[set][kind] ?? NaN) }], {
-      ...size,
-      height: RATIO_ROWS,
-      band: noise === null ? null : [1 - noise, 1 + noise],
-    }),
+    ...terminalPlot(
+      [{ x: times, y: records.map((record) => (record[set] ?? record.whole)[kind] ?? NaN) }],
+      {
+        ...size,
+        height: RATIO_ROWS,
+        band: noise === null ? null : [1 - noise, 1 + noise],
+      },
+    ),
     `radii of ${FRACTIONS.map((fraction) => `${100 * fraction}`).join(', ')} % of the mass, logarithmic`,
     ...terminalPlot(radii, {
       ...size,

@@ -18,6 +18,9 @@ export interface Blocks {
   readonly mean: Float64Array;
 }
 
+/** Fewer block means than this tell neither a scatter nor a slope. */
+export const FEW = 4;
+
 /** Means of `count` blocks of equal duration over the whole series. */
 export function blockMeans(t: Float64Array, x: Float64Array, count: number): Blocks {
   const n = t.length;

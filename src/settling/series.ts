@@ -4,7 +4,7 @@ import type { Remark } from '../snapshot/particles.ts';
 import { median } from './blocks.ts';
 import type { Track } from './rule.ts';
 
-export type SetName = 'whole' | 'bound';
+export type SetName = 'whole' | 'bound' | 'pairsMerged';
 export type RatioKind = 'virialRatio' | 'clausiusRatio';
 
 export interface Series {
@@ -65,12 +65,17 @@ export function seriesOf(records: readonly MeasureRecord[]): Series | null {
   if (last === undefined) return null;
   const boundShare = last.bound.mass / last.whole.mass;
   // What has come apart is no remnant with escapers.
-  const set: SetName = boundShare < 1 - UNBOUND_SHARE && boundShare > 0.5 ? 'bound' : 'whole';
+  const set: SetName =
+    boundShare < 1 - UNBOUND_SHARE && boundShare > 0.5
+      ? 'bound'
+      : pairsRule(ordered)
+        ? 'pairsMerged'
+        : 'whole';
   const softened = ordered.some(({ settings }) => settings.softening.value.kernel !== 'none');
   const ratio: RatioKind = softened ? 'clausiusRatio' : 'virialRatio';
   const judged = ordered.filter(
     (record) =>
-      record[set][ratio] !== null &&
+      (balanceOf(record, set)?.[ratio] ?? null) !== null &&
       record.crossingTime !== null &&
       (radiusOf(radiiOf(record, set), 0.5) ?? 0) > 0,
   );
@@ -88,7 +93,7 @@ export function seriesOf(records: readonly MeasureRecord[]): Series | null {
   };
   const track: Track = {
     time: column((record) => (record.time as number) / crossingTime),
-    ratio: column((record) => record[set][ratio] as number),
+    ratio: column((record) => balanceOf(record, set)?.[ratio] as number),
     logHalf: column((record) => Math.log(radiusOf(radiiOf(record, set), 0.5) as number)),
     logInner: optional((record) => logOf(radiusOf(radiiOf(record, set), 0.1))),
     logVirial: optional((record) => logOf(virialRadiusOf(record, set))),
@@ -99,6 +104,26 @@ export function seriesOf(records: readonly MeasureRecord[]): Series | null {
   return { records: judged, set, ratio, crossingTime, track, remarks };
 }
 
+/** The balance of a set; null where it was not measured. */
+export const balanceOf = (record: MeasureRecord, set: SetName): Balance | null =>
+  record[set] ?? null;
+
+/** Energy of hard pairs over |U| above which they rule the ratio. */
+const PAIRS_SHARE = 0.05;
+
+/** Whether hard pairs were sought throughout, and have a share of U that is not small. */
+function pairsRule(records: readonly MeasureRecord[]): boolean {
+  const shares = records.map(({ pairsMerged, hardPairsEnergy, whole }) =>
+    pairsMerged && typeof hardPairsEnergy === 'number'
+      ? Math.abs(hardPairsEnergy / whole.potential)
+      : null,
+  );
+  return (
+    shares.every((share) => share !== null) && shares.some((share) => (share ?? 0) > PAIRS_SHARE)
+  );
+}
+
+/** Radii are those of the bodies themselves, whether or not pairs count as one in the balance. */
 export const radiiOf = (record: MeasureRecord, set: SetName): LagrangianRadii =>
   set === 'bound' ? record.boundLagrangian : record.lagrangian;
 
@@ -111,7 +136,7 @@ const logOf = (value: number | null): number | null =>
 
 /** r_v = G M²/(2|U|) of the set: it needs no centre, so a centre that hops cannot spoil it. */
 function virialRadiusOf({ settings, ...record }: MeasureRecord, set: SetName): number | null {
-  const { mass, potential }: Balance = record[set];
+  const { mass, potential } = record[set] ?? record.whole;
   return potential < 0 ? (settings.gravity.value * mass * mass) / (-2 * potential) : null;
 }
 

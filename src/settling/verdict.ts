@@ -3,12 +3,23 @@ import { UnanswerableError } from '../errors.ts';
 import type { MeasureRecord } from '../dynamics/record.ts';
 import type { Remark } from '../snapshot/particles.ts';
 import { auditOf, type Audit } from './audit.ts';
+import { convergenceRadius } from './convergence.ts';
 import { cutAt } from './cut.ts';
 import { gravityTest } from './gravityTest.ts';
 import { LIMITS } from './limits.ts';
 import { autocorrelationTime, bootstrapHalfWidth, meanOf } from './means.ts';
+import { scalarMeans, type ScalarMean } from './scalars.ts';
 import { decide, type Decision, type Finding, type State, type Track } from './rule.ts';
-import { inOrderOfTime, seriesOf, type RatioKind, type Series, type SetName } from './series.ts';
+import {
+  balanceOf,
+  inOrderOfTime,
+  radiiOf,
+  radiusOf,
+  seriesOf,
+  type RatioKind,
+  type Series,
+  type SetName,
+} from './series.ts';
 
 export type VerdictName = State | 'dispersing';
 
@@ -40,6 +51,13 @@ export interface Verdict {
   /** After settling: snapshots worth a fresh one each, and the spacing that makes them so; null if not settled. */
   readonly independentSnapshots: number | null;
   readonly advisedSpacing: number | null;
+  /**
+   * Radius inside which the run is relaxed by the noise of its own bodies [length]; null if it lies inside
+   * the innermost Lagrangian radius, or if all of the run is relaxed, which a remark says.
+   */
+  readonly convergenceRadius: number | null;
+  /** Of every scalar of the records, over the settled part (the second half if not settled). */
+  readonly means: readonly ScalarMean[];
   readonly audit: Audit;
   readonly remarks: readonly Remark[];
 }
@@ -69,7 +87,9 @@ export function verdictOf(records: readonly MeasureRecord[]): Verdict {
   const independent = settled ? independence(part(track.time), part(track.ratio)) : null;
   const verdict = nameOf(decision, series);
   const at = (k: number) => series.records[k].time as number;
-  const noises = series.records.flatMap((record) => record[series.set].noise ?? []);
+  const span = at(n - 1) - at(0);
+  const converged = convergenceRadius(series.records[n - 1], series.set, span);
+  const noises = series.records.flatMap((record) => balanceOf(record, series.set)?.noise ?? []);
   return {
     verdict,
     settledAt: settled ? at(from) : null,
@@ -85,18 +105,28 @@ export function verdictOf(records: readonly MeasureRecord[]): Verdict {
     evidence: decision.findings,
     states: statesOf(track, decision, verdict, at),
     crossingTime,
-    span: at(n - 1) - at(0),
+    span,
     snapshots: n,
     independentSnapshots: independent?.count ?? null,
     advisedSpacing: independent === null ? null : independent.spacing * crossingTime,
+    convergenceRadius: converged.radius,
+    means: scalarMeans(series.records.slice(from), part(track.time)),
     audit: auditOf(series.records),
     remarks: [
       ...series.remarks,
       ...remarksOf(series, decision, level),
+      ...(converged.isThroughout ? [RELAXED_THROUGHOUT] : []),
       ...gravityTest(series.records.slice(decision.settledFrom ?? 0)),
     ],
   };
 }
+
+const RELAXED_THROUGHOUT: Remark = {
+  code: 'relaxedThroughout',
+  text: 'two-body encounters have had time to relax the run at every radius that was measured',
+  remedy:
+    'read it as a system of so many bodies, not as a smooth one: more bodies are needed for that',
+};
 
 /** Growing: bound, or losing itself? */
 function nameOf({ state }: Decision, { records, set }: Series): VerdictName {
@@ -189,12 +219,14 @@ function firstOf(track: Track, size: number): Track {
   };
 }
 
+/** r_v over r_h of smooth systems is 0.9 (uniform) to 1.3 and above; below this few pairs must rule U. */
+const FEW_PAIRS = 0.5;
 /** How far the mean may be from 1, beside three standard errors. */
 const VIRIAL = 0.03;
 
 function remarksOf(
   { set, track, records }: Series,
-  { settledFrom }: Decision,
+  { settledFrom, state }: Decision,
   level: { readonly mean: number; readonly error: number | null },
 ): Remark[] {
   const remarks: Remark[] = [];
@@ -205,6 +237,25 @@ function remarksOf(
       code: 'unboundMass',
       text: `${(100 * share).toPrecision(2)} % of the mass is unbound at the end; the verdict speaks of the bound bodies`,
       remedy: 'compare the ratio of all bodies before it is quoted: escapers raise it',
+    });
+  }
+  const last = records[records.length - 1];
+  const radius = radiusOf(radiiOf(last, set), 0.5) ?? 0;
+  const { gravity } = last.settings;
+  const virial = (gravity.value * last.whole.mass ** 2) / (2 * Math.abs(last.whole.potential));
+  const isOver = settledFrom !== null || state === 'oscillating'; // Before a merger clumps do the same.
+  if (isOver && last.pairsMerged === undefined && virial < FEW_PAIRS * radius) {
+    remarks.push({
+      code: 'pairsLikely',
+      text: `U is far deeper than a smooth system of that size has: r_v is ${(virial / radius).toPrecision(2)} of r_h; a few close pairs rule T, U and their ratio`,
+      remedy: 'measure with --with pairs, and the verdict speaks of each hard pair as one body',
+    });
+  }
+  if (set === 'pairsMerged') {
+    remarks.push({
+      code: 'pairsMerged',
+      text: 'hard pairs hold more than 5 % of U; the verdict speaks of the ratio with each of them as one body',
+      remedy: 'quote that ratio: inside a pair 2T/|U| is 1 by itself, whatever the system does',
     });
   }
   const off = Math.abs(level.mean - 1);

@@ -1,5 +1,6 @@
 /** Tables of records read back: the columns of `recordColumns` → records. */
 import { RECORD_VERSION, type MeasureRecord } from '../dynamics/record.ts';
+import { recordColumns } from '../dynamics/recordColumns.ts';
 import { QUANTITIES } from '../dynamics/registry.ts';
 import { InputError } from '../errors.ts';
 
@@ -31,8 +32,6 @@ const NEEDED = [
   'boundLagrangian[0.5]',
   'crossingTime',
 ];
-const TEXTS =
-  /^(file|runFile|remarks|frame\.centreMethod|engine\.origin)$|\.(set|from|kernel)$|^settings\.(units|centre|forces|with|fractions)/;
 const FRACTION = /^(lagrangian|boundLagrangian)(\.errors)?\[(.+)\]$/;
 const MEMBER = /^(.+)\[(\d+)\]$/;
 const VECTORS = new Set(QUANTITIES.filter(({ kind }) => kind === 'vector').map(({ key }) => key));
@@ -52,14 +51,15 @@ type Branch = { [key: string]: unknown };
  * @throws InputError `input.notARecord` with the column, or the row and column, that is wrong;
  *   `input.recordVersion`
  */
-export function recordsFromTable(table: TableOfRecords): MeasureRecord[] {
+export async function recordsFromTable(table: TableOfRecords): Promise<MeasureRecord[]> {
   const missing = NEEDED.find((name) => !table.names.includes(name));
   if (missing !== undefined) throw notATable(table.path, `it has no column "${missing}"`);
+  const texts = await textColumns();
   const setters = table.names.map((name) => setterOf(name));
   return Array.from({ length: table.rows }, (_, row) => {
     const record: Branch = {};
     table.names.forEach((name, column) => {
-      const cell = typedCell(table, row, column, name);
+      const cell = typedCell(table, row, column, texts.has(name));
       if (cell !== null || !isOptional(name)) setters[column](record, cell);
     });
     if (record['record'] !== RECORD_VERSION) {
@@ -73,14 +73,20 @@ export function recordsFromTable(table: TableOfRecords): MeasureRecord[] {
   });
 }
 
-function typedCell(table: TableOfRecords, row: number, column: number, name: string): Cell {
+/** Names of the columns that hold text, by the schema of the record. */
+async function textColumns(): Promise<ReadonlySet<string>> {
+  const columns = await recordColumns([]);
+  return new Set(columns.filter(({ type }) => type === 'text').map(({ name }) => name));
+}
+
+function typedCell(table: TableOfRecords, row: number, column: number, isText: boolean): Cell {
   const cell = table.cell(row, column);
   if (cell === '') return null;
-  if (typeof cell !== 'string' || TEXTS.test(name)) return cell;
+  if (typeof cell !== 'string' || isText) return cell;
   if (cell === 'true' || cell === 'false') return cell === 'true';
   const value = Number(cell);
   if (Number.isFinite(value) && cell.trim() !== '') return value;
-  throw notATable(table.place(row), `"${cell}" in column "${name}" is no number`);
+  throw notATable(table.place(row), `"${cell}" in column "${table.names[column]}" is no number`);
 }
 
 function setterOf(name: string): (record: Branch, cell: Cell) => void {
@@ -109,7 +115,8 @@ function pathOf(name: string): string[] {
   if (VECTORS.has(vector)) return [...keys.slice(0, -1), String(axis)];
   if (keys[0] !== 'settings') return keys;
   const [, setting, ...rest] = keys;
-  const isApart = rest[0] === 'from' || rest[0] === 'system';
+  // The value is an object for the softening alone; what other settings have besides stands beside it.
+  const isApart = rest.length > 0 && (setting !== 'softening' || rest[0] === 'from');
   return ['settings', setting, ...(isApart ? [] : ['value']), ...rest];
 }
 
