@@ -3,12 +3,15 @@ import {
   makeSnapshot,
   leapfrog,
   measureSnapshot,
+  verdictOf,
   type Crew,
   type MeasureRecord,
   type Particles,
+  type Verdict,
 } from '../index.ts';
-import { short, wholeNumber } from './figure.ts';
+import { figure, short, wholeNumber } from './figure.ts';
 import { wrap } from './layout.ts';
+import { asSentence } from './remarks.ts';
 import type { Paint } from './style.ts';
 
 const STARS = 2000;
@@ -109,7 +112,23 @@ function tell(records: readonly MeasureRecord[], paint: Paint): string {
       `The energy of the run was never off by more than ${short(100 * drift, 1)} %: the time step was short enough for that fall.`,
       '   ',
     ),
+    '',
+    ...verdictLines(verdictOf(records), paint),
   ].join('\n');
+}
+
+/** What `settlemark track` says of the run, in three lines. */
+function verdictLines(verdict: Verdict, paint: Paint): string[] {
+  const { settledAt, settledAtError, independentSnapshots, evidence } = verdict;
+  const good = settledAt !== null;
+  const since = good ? ` since time ${figure(settledAt, settledAtError)}` : '';
+  const worth = good
+    ? ` The snapshots from then on are worth ${short(independentSnapshots ?? 0)} independent ones.`
+    : '';
+  return [
+    `   ${paint.strong('The verdict:')} ${paint[good ? 'good' : 'warn'](`${verdict.verdict}${since}`)}`,
+    wrap(`${evidence.map(({ text }) => asSentence(text)).join(' ')}${worth}`, '   '),
+  ];
 }
 
 const place = (ratio: number) => Math.round((Math.min(ratio, BAR_END) / BAR_END) * BAR);
