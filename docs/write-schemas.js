@@ -3,6 +3,7 @@
 import { readFile, writeFile } from 'node:fs/promises';
 import { quantityTable } from '../dist/dynamics/registryText.js';
 import { recordJsonSchema } from '../dist/dynamics/schema.js';
+import { rulesJsonSchema } from '../dist/gate/rulesSchema.js';
 import { layoutJsonSchema } from '../dist/snapshot/raw/layout.js';
 import { runFileJsonSchema } from '../dist/survey/runFileSchema.js';
 
@@ -11,6 +12,7 @@ const asFile = (schema) => `${JSON.stringify(schema, null, 2)}\n`;
 
 await writeFile(at('layout.schema.json'), asFile(layoutJsonSchema()));
 await writeFile(at('run.schema.json'), asFile(runFileJsonSchema()));
+await writeFile(at('rules.schema.json'), asFile(rulesJsonSchema()));
 await writeFile(at('record.schema.json'), asFile(await recordJsonSchema()));
 
 const BEGIN = '<!-- quantities: made by npm run schemas -->';

@@ -39,6 +39,10 @@ import type { FileOutcome } from './survey/many.ts';
 import type { SurveyOptions } from './survey/measure.ts';
 import type { PreparedSnapshot } from './survey/prepare.ts';
 import type { RunFile } from './survey/runFile.ts';
+import { BUILT_IN_RULES } from './gate/builtIn.ts';
+import type { GateReportOptions, GateResult } from './gate/judge.ts';
+import { stateOf, summaryText } from './gate/summary.ts';
+import type { RuleSet } from './gate/rules.ts';
 import type { SeriesOptions } from './survey/series.ts';
 
 export {
@@ -85,6 +89,8 @@ export type { ForceOptions, Forces } from './octree/forces.ts';
 export type { Softening, SofteningKernel } from './octree/softening.ts';
 export type { Verdict, VerdictName } from './settling/verdict.ts';
 export type { Audit } from './settling/audit.ts';
+export type { GateReportOptions, GateResult, Outcome, RuleOutcome } from './gate/judge.ts';
+export type { Rule, RuleSet, Severity, Statistic, StatisticName, Window } from './gate/rules.ts';
 export type { Finding } from './settling/rule.ts';
 export type { ExternalField } from './models/external.ts';
 export type { ExternalFigures } from './dynamics/external.ts';
@@ -451,6 +457,69 @@ export function compareRuns(
   options: CompareOptions = {},
 ): Comparison {
   return compareShortRuns(candidates, references, options);
+}
+
+/**
+ * The rules of a file in JSON or YAML, or built-in ones by name.
+ * @throws UsageError for rules that are none, with file, line, column and key; InputError if the file
+ *   cannot be read
+ */
+export async function readRules(nameOrPath: string): Promise<RuleSet> {
+  return (await import('./gate/readRules.ts')).readRules(nameOrPath);
+}
+
+/** Texts of the built-in rules (YAML) by name: files to start from. */
+export function builtInRules(): Readonly<Record<string, string>> {
+  return BUILT_IN_RULES;
+}
+
+/** The options of a measurement with the extras and mass fractions added that the rules ask for. */
+export async function optionsForRules<O extends Pick<MeasureOptions, 'with' | 'fractions'>>(
+  rules: readonly RuleSet[],
+  options: O,
+): Promise<O> {
+  return (await import('./gate/needs.ts')).optionsForRules(rules, options);
+}
+
+/**
+ * Judges the records of a run by rules: each passes, fails, or cannot be told.
+ * @param records - in any order
+ * @throws UnanswerableError `unanswerable.emptySeries` without records; UsageError for rules that are none
+ */
+export async function judgeRules(
+  rules: RuleSet | readonly RuleSet[],
+  records: readonly MeasureRecord[],
+): Promise<GateResult> {
+  return (await import('./gate/judge.ts')).judgeRules(rules, records);
+}
+
+/** A result in one sentence. */
+export function gateSummary(result: GateResult, options: GateReportOptions = {}): string {
+  return summaryText(result, options);
+}
+
+/** Whether a result lets a run pass: the exit code of `settlemark gate` follows from it. */
+export function gateState(
+  result: GateResult,
+  options: GateReportOptions = {},
+): 'passed' | 'failed' | 'not answered' {
+  return stateOf(result, options);
+}
+
+/** A result as JUnit XML, for servers of continuous integration. */
+export async function gateToJunit(
+  result: GateResult,
+  options: GateReportOptions = {},
+): Promise<string> {
+  return (await import('./gate/junit.ts')).gateToJunit(result, options);
+}
+
+/** A result as Markdown, for a merge request. */
+export async function gateToMarkdown(
+  result: GateResult,
+  options: GateReportOptions = {},
+): Promise<string> {
+  return (await import('./gate/markdown.ts')).gateToMarkdown(result, options);
 }
 
 /**

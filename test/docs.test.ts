@@ -7,6 +7,12 @@ import { fileURLToPath } from 'node:url';
 import { describe, expect, it } from 'vitest';
 import { buildProgram } from '../src/cli/program.ts';
 import type { Streams } from '../src/cli/streams.ts';
+import { BUILT_IN_RULES } from '../src/gate/builtIn.ts';
+import { OF_RUN, OF_SNAPSHOT } from '../src/gate/derived.ts';
+import { VERDICT_SCALARS } from '../src/gate/quantities.ts';
+import { parseRules } from '../src/gate/readRules.ts';
+import { REMARK_CODES } from '../src/gate/remarkCodes.ts';
+import { STATISTICS } from '../src/gate/rules.ts';
 import { parseLayout } from '../src/snapshot/raw/layout-check.ts';
 import { bodyBytes, fieldBytes, isSkip } from '../src/snapshot/raw/layout.ts';
 import { readRaw } from '../src/snapshot/raw/read.ts';
@@ -196,6 +202,42 @@ describe('run files in the docs', () => {
   it('have all their keys in the table', () => {
     const page = read('docs/runs.md');
     for (const key of RUN_FILE_KEYS) expect(page, key).toContain(`\`${key}\``);
+  });
+});
+
+describe('rules in the docs', () => {
+  const rules = fencesOf('docs/gate.md').filter(({ text }) => text.includes('settlemark: rules/1'));
+
+  it('are rules', async () => {
+    expect(rules.length).toBeGreaterThanOrEqual(1);
+    for (const { text } of rules) {
+      const { rules: list } = await parseRules(text, 'gate.md');
+      expect(list.length).toBeGreaterThan(0);
+    }
+  });
+
+  it('have all keys, windows, statistics, bounds and names in the tables', async () => {
+    const page = read('docs/gate.md');
+    const { keysAt } = await import('../src/gate/rulesSchema.ts');
+    const keys = ['', 'rules', 'rules.during', 'rules.statistic'].flatMap((at) =>
+      keysAt(at === '' ? [] : at.split('.')),
+    );
+    const names = [...Object.keys(OF_SNAPSHOT), ...Object.keys(OF_RUN)];
+    for (const key of [...keys, ...STATISTICS, ...names, ...Object.keys(BUILT_IN_RULES)])
+      expect(page, key).toMatch(new RegExp(`\`[^\`]*\\b${key.replace('$', '\\$')}\\b[^\`]*\``));
+    for (const name of Object.keys(VERDICT_SCALARS))
+      expect(page, name).toMatch(new RegExp(`\`(verdict\\.)?${name.replaceAll('.', '\\.')}\``));
+  });
+
+  it('know the remarks of a record, and no others', () => {
+    const table = read('docs/record.md').split('\n## Remarks')[1].split('\n## ')[0];
+    const codes = table
+      .split('\n')
+      .filter((line) => line.startsWith('| `') && !/\| (verdict|compare): /.test(line))
+      .flatMap((line) => [...line.split('|')[1].matchAll(/`([A-Za-z0-9.]+)`/g)])
+      .map(([, code]) => code);
+    expect(codes.length).toBeGreaterThan(30);
+    expect([...REMARK_CODES].sort()).toEqual(codes.sort());
   });
 });
 

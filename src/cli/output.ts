@@ -74,10 +74,11 @@ export function refuseTerminal(format: Format, out: string | undefined, streams:
   );
 }
 
-/** Refuses `--out` that would overwrite one of the inputs. */
+/** Refuses an output (`--out`, or the option named) that would overwrite one of the inputs. */
 export async function refuseOverwriting(
   out: string | undefined,
   inputs: readonly string[],
+  option = '--out',
 ): Promise<void> {
   if (out === undefined) return;
   const { stat } = await import('node:fs/promises');
@@ -91,7 +92,7 @@ export async function refuseOverwriting(
     if ((await identity(input)) === target) {
       throw new UsageError(
         'usage.outIsInput',
-        `--out ${out} is the snapshot ${input} itself, which would be overwritten`,
+        `${option} ${out} is the ${option === '--out' ? 'snapshot' : 'input'} ${input} itself, which would be overwritten`,
         'Give another name for the results.',
       );
     }

@@ -5,6 +5,7 @@ import type { CompareCommandOptions } from './compare.ts';
 import type { ConvertCommandOptions } from './convert.ts';
 import type { DemoOptions } from './demo.ts';
 import type { DescribeOptions } from './describe.ts';
+import type { GateOptions } from './gate.ts';
 import type { MakeCommandOptions } from './make.ts';
 import type { MeasureCommandOptions } from './measure.ts';
 import type { TrackOptions } from './track.ts';
@@ -15,8 +16,13 @@ import type { Streams } from './streams.ts';
 import type { ExitCode } from '../errors.ts';
 
 const KERNELS = ['none', 'plummer', 'spline'] as const;
-const ANSWERS = `Exit codes: 0 done, 2 wrong usage, 3 input unusable, 4 no answer from
-this input, 5 internal error, 130 interrupted.`;
+const ANSWERS = `Exit codes: 0 done, 1 a rule fails or a run differs, 2 wrong usage,
+3 input unusable, 4 no answer from this input, 5 internal error,
+130 interrupted.`;
+
+const GATE_ANSWERS = `Exit codes: 0 passed, 1 a rule fails (with --strict also if one cannot be
+told), 2 wrong usage or rules, 3 input unusable, 4 no snapshots, or too few.`;
+const append = (value: string, before: readonly string[] = []): string[] => [...before, value];
 
 /**
  * Builds the program.
@@ -99,6 +105,27 @@ export function buildProgram(streams: Streams, done: (code: ExitCode) => void): 
     .addHelpText('after', '\nExit code 0: the same, 1: different.')
     .action(async (runs: string[], options: CompareCommandOptions) => {
       done(await (await import('./compare.ts')).compare(runs, options, streams));
+    });
+
+  following(measuring(reading(program.command('gate [run...]'))))
+    .description('judge snapshots or a run by rules: the exit code tells whether they pass')
+    .option(
+      '--rules <file|name>',
+      'rules in JSON or YAML, or built-in ones; may be repeated',
+      append,
+    )
+    .option('--list [name]', 'list the built-in rules, or print one set as a file to start from')
+    .option('--ledger <file>', 'where records are kept (settlemark.ledger in the folder)')
+    .option('--no-ledger', 'keep no records, and measure all anew')
+    .option('--strict', 'what cannot be told fails, too')
+    .option('--junit <file>', 'also write JUnit XML')
+    .option('--markdown <file>', 'also write Markdown for a merge request')
+    .addOption(formats(['table', 'json']))
+    .addOption(new Option('--out <file>', 'write to a file; its ending may name the format'))
+    .option('--quiet', 'no progress and no warnings on standard error')
+    .addHelpText('after', `\n${GATE_ANSWERS}`)
+    .action(async (inputs: string[], options: GateOptions) => {
+      done(await (await import('./gate.ts')).gate(inputs, options, streams));
     });
 
   modelling(making(program.command('make <model>')))

@@ -1,26 +1,17 @@
 /** `settlemark track`: has the run settled, when, and how do we know? */
 import {
   findSeries,
-  InputError,
-  isRecords,
-  measureFiles,
-  readRecords,
   UnanswerableError,
   verdictOf,
   type ExitCode,
   EXIT,
-  type MeasureRecord,
-  type PreparedSnapshot,
   type Remark,
-  type SurveyOptions,
   type Verdict,
 } from '../index.ts';
-import { turn, withCrew } from './crew.ts';
-import { reportFailure } from './failure.ts';
-import { ledgerFor, type LedgerOptions } from './ledger.ts';
+import type { LedgerOptions } from './ledger.ts';
 import type { MeasureCommandOptions } from './measure.ts';
 import { formatOf, refuseOverwriting, withOutput } from './output.ts';
-import { startProgress } from './progress.ts';
+import { measureSeries, sortInputs, type SeriesWork } from './series.ts';
 import { surveyOf } from './snapshots.ts';
 import { NO_PAINT, paintFor } from './style.ts';
 import type { Streams } from './streams.ts';
@@ -37,22 +28,17 @@ export async function track(
 ): Promise<ExitCode> {
   const { threads, format: askedFormat, out, quiet = false, ...rest } = options;
   const format = formatOf(askedFormat, out, ['table', 'json']);
-  const records: MeasureRecord[] = [];
-  const paths: string[] = [];
-  for (const arg of args) {
-    if (await isRecords(arg)) records.push(...(await readRecords(arg)));
-    else paths.push(arg);
-  }
+  const { recordFiles, paths } = await sortInputs(args);
   const { survey, range } = await surveyOf(rest, streams);
   const snapshots = paths.length > 0 ? await findSeries(paths, { ...survey, ...range }) : [];
   await refuseOverwriting(out, [
     ...args,
     ...snapshots.flatMap(({ file, parts }) => parts ?? [file]),
   ]);
-  const work = { snapshots, survey, threads, quiet, ledger: rest.ledger };
+  const work = { recordFiles, snapshots, survey, threads, quiet, ledger: rest.ledger };
   // A file that cannot be written is told of before anything is measured.
   await withOutput(out, streams, async (sink) => {
-    const verdict = await judge(work, records, streams);
+    const verdict = await judge(work, streams);
     if (format === 'json') return sink(`${JSON.stringify(verdict, null, 2)}\n`);
     const { verdictPage } = await import('./verdictPage.ts');
     return sink(
@@ -62,18 +48,11 @@ export async function track(
   return EXIT.done;
 }
 
-interface Work {
-  readonly snapshots: readonly PreparedSnapshot[];
-  readonly survey: SurveyOptions;
-  readonly threads: number | undefined;
-  readonly quiet: boolean;
-  readonly ledger: LedgerOptions['ledger'];
-}
-
-async function judge(work: Work, records: MeasureRecord[], streams: Streams): Promise<Verdict> {
+async function judge(work: SeriesWork, streams: Streams): Promise<Verdict> {
   const { snapshots } = work;
-  const { skipped, remarks: ofLedger } =
-    snapshots.length > 0 ? await measureAll(work, records, streams) : { skipped: [], remarks: [] };
+  const series = await measureSeries(work, streams);
+  const { records } = series;
+  const skipped = series.skipped.map(({ file }) => file);
   if (records.length === 0) {
     throw new UnanswerableError(
       'unanswerable.series',
@@ -82,7 +61,7 @@ async function judge(work: Work, records: MeasureRecord[], streams: Streams): Pr
     );
   }
   const found = verdictOf(records);
-  const remarks: Remark[] = [...found.remarks, ...ofLedger, ...remarksOfTimes(snapshots)];
+  const remarks: Remark[] = [...found.remarks, ...series.remarks];
   if (skipped.length > 0) {
     remarks.unshift({
       code: 'snapshotsSkipped',
@@ -91,56 +70,4 @@ async function judge(work: Work, records: MeasureRecord[], streams: Streams): Pr
     });
   }
   return { ...found, remarks };
-}
-
-const OF_TIMES = ['time.repeated', 'time.missing', 'time.noFile'];
-
-/** What was found about times before anything was read: of each kind the first, and how many more. */
-function remarksOfTimes(snapshots: readonly PreparedSnapshot[]): Remark[] {
-  const all = snapshots.flatMap(({ remarks }) => remarks);
-  return OF_TIMES.flatMap((wanted) => {
-    const [first, ...others] = all.filter(({ code }) => code === wanted);
-    if (first === undefined) return [];
-    const text = others.length === 0 ? first.text : `${first.text} (and ${others.length} more)`;
-    return [{ ...first, text }];
-  });
-}
-
-/** Measures all snapshots; those that cannot be are told on standard error and returned. */
-async function measureAll(
-  { snapshots, survey, threads, quiet, ledger: asked }: Work,
-  records: MeasureRecord[],
-  streams: Streams,
-): Promise<{ readonly skipped: readonly string[]; readonly remarks: readonly Remark[] }> {
-  const asksFor = snapshots.find((snapshot) => snapshot.threads !== null)?.threads ?? undefined;
-  const skipped: string[] = [];
-  const { ledger, remarks } = await ledgerFor(
-    snapshots.map(({ file }) => file),
-    asked === undefined ? {} : { ledger: asked },
-  );
-  await withCrew(threads ?? asksFor, streams.interrupt, async (crew) => {
-    const progress = startProgress(streams.stderr, quiet, crew);
-    try {
-      let done = 0;
-      for await (const { file, record, error } of await measureFiles(
-        snapshots,
-        survey,
-        crew,
-        ledger ?? undefined,
-      )) {
-        await turn(streams.interrupt);
-        progress.say(`${file}, ${done + 1} of ${snapshots.length}`, ++done / snapshots.length);
-        if (error === null) records.push(record);
-        else if (error instanceof InputError || error instanceof UnanswerableError) {
-          progress.clear();
-          await reportFailure(error, streams);
-          skipped.push(file);
-        } else throw error;
-      }
-    } finally {
-      await ledger?.close();
-      progress.close();
-    }
-  });
-  return { skipped, remarks: [...remarks, ...(ledger?.remarks ?? [])] };
 }

@@ -7,6 +7,7 @@ import { QUANTITIES } from '../../src/dynamics/registry.ts';
 import { dimensionText, quantityTable } from '../../src/dynamics/registryText.ts';
 import { recordJsonSchema, recordSchema } from '../../src/dynamics/schema.ts';
 import type { MeasureOptions } from '../../src/dynamics/settings.ts';
+import { rulesJsonSchema } from '../../src/gate/rulesSchema.ts';
 import { makeModel } from '../../src/models/make.ts';
 import { crewOfOne } from '../../src/parallel/crew.ts';
 import { layoutJsonSchema } from '../../src/snapshot/raw/layout.ts';
@@ -33,6 +34,7 @@ describe('committed files', () => {
     expect(JSON.parse(docs('record.schema.json'))).toEqual(await recordJsonSchema());
     expect(JSON.parse(docs('layout.schema.json'))).toEqual(layoutJsonSchema());
     expect(JSON.parse(docs('run.schema.json'))).toEqual(runFileJsonSchema());
+    expect(JSON.parse(docs('rules.schema.json'))).toEqual(rulesJsonSchema());
   });
 
   it('have the table of quantities of the registry', () => {
