@@ -40,7 +40,7 @@ import type { SurveyOptions } from './survey/measure.ts';
 import type { PreparedSnapshot } from './survey/prepare.ts';
 import type { RunFile } from './survey/runFile.ts';
 import { BUILT_IN_RULES } from './gate/builtIn.ts';
-import type { GateReportOptions, GateResult } from './gate/judge.ts';
+import type { GateReportOptions, GateResult, RuleOutcome } from './gate/judge.ts';
 import { stateOf, summaryText } from './gate/summary.ts';
 import type { RuleSet } from './gate/rules.ts';
 import type { SeriesOptions } from './survey/series.ts';
@@ -479,6 +479,18 @@ export async function optionsForRules<O extends Pick<MeasureOptions, 'with' | 'f
   options: O,
 ): Promise<O> {
   return (await import('./gate/needs.ts')).optionsForRules(rules, options);
+}
+
+/**
+ * The rules that fail and that the run can no longer pass, whatever is still to come: a greatest value
+ * that is too great, a window that is over, energy that is lost.
+ * @param result - of {@link judgeRules} for the same records
+ */
+export async function hopelessRules(
+  result: GateResult,
+  records: readonly MeasureRecord[],
+): Promise<readonly RuleOutcome[]> {
+  return (await import('./gate/hopeless.ts')).hopelessRules(result, records);
 }
 
 /**

@@ -11,7 +11,7 @@ const SECONDS_AT_MOST = 60;
  */
 export async function runOnVerdict(
   command: string,
-  verdict: Verdict,
+  verdict: Partial<Verdict>,
   interrupt: AbortSignal,
 ): Promise<string | null> {
   return new Promise((resolve) => {

@@ -76,6 +76,7 @@ export function buildProgram(streams: Streams, done: (code: ExitCode) => void): 
 
   timing(measuring(reading(program.command('watch <folder>'))))
     .description('follow a running simulation: records, live verdict, forecast')
+    .option('--rules <file|name>', 'end with code 1 once one can no longer pass', append)
     .option('--until <what>', 'end once it is settled, or decided, or at a time')
     .option('--on-verdict <cmd>', 'run it with the verdict as JSON when that changes')
     .option('--poll <s>', 'seconds between two looks (2)', numberOf('--poll'))

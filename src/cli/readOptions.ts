@@ -52,6 +52,7 @@ const OF_THE_COMMAND = [
   'onVerdict',
   'poll',
   'still',
+  'rules',
 ] as const;
 /** Options that say which snapshots are meant. */
 const OF_THE_SERIES = ['from', 'to', 'every'] as const;

@@ -3,9 +3,14 @@ import {
   EXIT,
   followFolder,
   forecast,
+  gateSummary,
+  hopelessRules,
   InputError,
   InterruptedError,
+  judgeRules,
   measureFiles,
+  optionsForRules,
+  readRules,
   UnanswerableError,
   UsageError,
   verdictOf,
@@ -15,6 +20,8 @@ import {
   type Ledger,
   type MeasureRecord,
   type PreparedSnapshot,
+  type RuleOutcome,
+  type RuleSet,
   type SurveyOptions,
   type Verdict,
 } from '../index.ts';
@@ -36,6 +43,8 @@ export interface WatchOptions extends Omit<MeasureCommandOptions, 'format' | 'ou
   readonly until?: string;
   /** Command of the shell that gets the verdict as JSON whenever it changes. */
   readonly onVerdict?: string;
+  /** Files or names of built-in rules: the watch ends once one of them can no longer pass. */
+  readonly rules?: readonly string[];
   /** Seconds. */
   readonly poll?: number;
   readonly still?: number;
@@ -65,13 +74,15 @@ export async function watch(
   streams: Streams,
 ): Promise<ExitCode> {
   const until = untilOf(options.until);
-  const survey = await surveyOptionsOf(options, streams.interrupt);
+  const rules = await Promise.all((options.rules ?? []).map(readRules));
+  const own = await surveyOptionsOf(options, streams.interrupt);
+  const survey = rules.length > 0 ? await optionsForRules(rules, own) : own;
   const { ledger, remarks } = await ledgerFor([`${folder}/x`], options);
   const teller = tellerFor(options, streams);
   for (const { text } of remarks) await teller.note(text);
   try {
     return await withCrew(options.threads, streams.interrupt, (crew) =>
-      watchWith({ folder, options, survey, streams, crew, ledger, teller, until }),
+      watchWith({ folder, options, survey, streams, crew, ledger, teller, until, rules }),
     );
   } finally {
     teller.close();
@@ -88,6 +99,7 @@ interface Job {
   readonly ledger: Ledger | null;
   readonly teller: Teller;
   readonly until: Until;
+  readonly rules: readonly RuleSet[];
 }
 
 async function watchWith(job: Job): Promise<ExitCode> {
@@ -101,7 +113,7 @@ async function watchWith(job: Job): Promise<ExitCode> {
     signal: streams.interrupt,
   });
   let ledgerRemarks = 0;
-  let judged = -Infinity;
+  let judgedAt = -Infinity;
   for await (const sighting of sightings) {
     switch (sighting.kind) {
       case 'gone':
@@ -119,24 +131,52 @@ async function watchWith(job: Job): Promise<ExitCode> {
       case 'ready':
         for await (const { file, isLast } of measured(sighting.snapshots, job, byFile)) {
           // Of a run that is being caught up with, not every state is judged.
-          const isDue = isLast || performance.now() - judged > JUDGE_EVERY_MS;
+          const isDue = isLast || performance.now() - judgedAt > JUDGE_EVERY_MS;
           const run = isDue
             ? await soFar(folder, byFile, teller)
             : unjudged(folder, byFile, teller);
-          if (isDue) judged = performance.now();
+          if (isDue) judgedAt = performance.now();
           const name = run.verdict?.verdict ?? null;
           await teller.show(run, byFile.get(file) ?? null);
           if (run.verdict && name !== told) {
             told = name;
             await tellCommand(options.onVerdict, run.verdict, streams, teller);
           }
-          if (isReached(until, run)) return EXIT.done;
+          const gate = isDue ? await hopelessCode(job, run) : null;
+          if (gate !== null) return gate;
+          if (isReached(until, run)) return await finalCode(job, run);
         }
     }
     for (const { text } of job.ledger?.remarks.slice(ledgerRemarks) ?? []) await teller.note(text);
     ledgerRemarks = job.ledger?.remarks.length ?? 0;
   }
   throw new InterruptedError();
+}
+
+/** The gate's code once a rule can no longer pass, with the reason on standard error; null before. */
+async function hopelessCode(
+  { rules, options, streams, teller }: Job,
+  { records, verdict }: RunSoFar,
+): Promise<ExitCode | null> {
+  if (rules.length === 0 || records.length === 0) return null;
+  const hopeless = await hopelessRules(await judgeRules(rules, records), records);
+  if (hopeless.length === 0) return null;
+  const [{ subject, bound, reason, message }] = hopeless;
+  await write(
+    streams.stderr,
+    `settlemark: gate failed: ${subject} ${bound} can no longer pass: ${message ?? reason}\n`,
+  );
+  await tellCommand(options.onVerdict, { ...verdict, hopeless }, streams, teller);
+  return EXIT.gateFailed;
+}
+
+/** The code of a watch that has reached its end: that of the gate, if there are rules. */
+async function finalCode({ rules, streams }: Job, { records }: RunSoFar): Promise<ExitCode> {
+  if (rules.length === 0) return EXIT.done;
+  const result = await judgeRules(rules, records);
+  if (result.gate === 'passed') return EXIT.done;
+  await write(streams.stderr, `settlemark: gate ${gateSummary(result, {})}\n`);
+  return EXIT.gateFailed;
 }
 
 /** Measures snapshots and gives the name of each whose record is new, and whether nothing follows. */
@@ -188,7 +228,7 @@ async function soFar(
 
 async function tellCommand(
   command: string | undefined,
-  verdict: Verdict,
+  verdict: Partial<Verdict> & { readonly hopeless?: readonly RuleOutcome[] },
   streams: Streams,
   teller: Teller,
 ): Promise<void> {

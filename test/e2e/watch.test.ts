@@ -161,6 +161,31 @@ describe('a watch', () => {
     expect(err).toContain('--on-verdict ended with exit code 3');
   }, 30_000);
 
+  it('ends with the code of the gate once a rule can no longer pass, and tells the command', async () => {
+    const path = newRun();
+    writeAll(path);
+    const rules = join(folder, 'rules.json');
+    const rule = { quantity: 'virialRatio', during: 'all', statistic: 'max', atMost: 0.5 };
+    writeFileSync(rules, JSON.stringify({ rules: [rule] }));
+    const told = join(folder, 'hopeless.ndjson');
+    const argv = ['watch', path, '--rules', rules, '--on-verdict', `cat >> '${told}'`, ...FAST];
+    const { code, err } = await settlemark(argv);
+    expect(code).toBe(1);
+    expect(err).toMatch(/^settlemark: gate failed: greatest virialRatio .* can no longer pass/m);
+    const last = readFileSync(told, 'utf8').trim().split('\n').at(-1) ?? '';
+    expect(JSON.parse(last)).toMatchObject({ hopeless: [{ outcome: 'fails' }] });
+    const passing = await settlemark([
+      'watch',
+      path,
+      '--rules',
+      'settled',
+      '--until',
+      '20',
+      ...FAST,
+    ]);
+    expect(passing.code).toBe(0);
+  }, 60_000);
+
   it.each([
     [['--until', 'soon'], 2, 'usage.until'],
     [['--poll', 'x'], 2, '--poll'],
