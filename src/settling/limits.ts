@@ -54,6 +54,8 @@ export const LIMITS = {
   /** |d ln r/dt| t_rh of encounters. */
   relaxingLeast: 0.005,
   relaxingMost: 2,
+  /** |Δ ln M| of all bodies above which encounters are not what moves the radii. */
+  massChange: 0.02,
   /** Scatter of the ratio over realisations, times √N: the floor where a run's own noise is not known. */
   noiseRatio: 0.8,
 } as const;

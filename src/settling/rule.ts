@@ -6,6 +6,7 @@
  * enough to be nearly independent, and against both a significance and a size that matters.
  */
 import { average, bestStep, blockMeans, median, slopeOf, type Step } from './blocks.ts';
+import { lastBurst } from './burst.ts';
 import { cutAt } from './cut.ts';
 import { FEWEST_BLOCKS, LIMITS, MOST_BLOCKS, studentPoint } from './limits.ts';
 import { phaseAgreement, strongestWave } from './oscillation.ts';
@@ -28,6 +29,8 @@ export interface Track {
   readonly effectiveNumber: number | null;
   /** Half-mass relaxation time [crossing times], or null. */
   readonly relaxationTime?: number | null;
+  /** |Δ ln M| of all bodies from the first to the last snapshot. */
+  readonly massChange?: number;
 }
 
 export type State =
@@ -104,6 +107,11 @@ export function decide(track: Track): Decision {
   let cut = Math.max(...cuts);
   const capped = t[cut] - t[0] > LIMITS.capped * span;
   if (!capped && headFits(track, cut, noise)) cut = 0;
+  const disturbed = capped ? null : lastBurst(t.subarray(cut), track.ratio.subarray(cut), noise);
+  const after = disturbed === null ? n : cut + disturbed.to + 1;
+  // At rest again: judged from there on. Too late for that: told of below.
+  const isOver = n - after >= LIMITS.tailSnapshots && t[n - 1] - t[after] >= LIMITS.tail;
+  if (isOver) cut = after;
 
   const motion = motionNow(track, noise);
   if (motion !== null) {
@@ -116,7 +124,7 @@ export function decide(track: Track): Decision {
     note('shortSpan', span, needed, tooShort(span, needed));
     return end('undecided', cut);
   }
-  const wave = waveNow(track, noise);
+  const wave = waveNow(track, noise, isOver ? cut : 0);
   if (wave !== null) {
     findings.push(wave);
     return end('oscillating', cut);
@@ -137,22 +145,32 @@ export function decide(track: Track): Decision {
     }
     return end('undecided', cut);
   }
-  return judgeTail(track, cut, capped, noise, findings, end);
+  if (disturbed !== null && !isOver) {
+    const { rms, limit } = disturbed;
+    note(
+      'disturbance',
+      rms,
+      limit,
+      `the ratio leaves its level by ${number(rms)} (rms over a crossing time, limit ${number(limit)}) late in the run`,
+    );
+    return end('drifting', cut);
+  }
+  return judgeTail(track, { cut, capped, disturbed: isOver }, noise, findings, end);
 }
 
 /** The last stage: trends and steps after the cut. */
 function judgeTail(
   track: Track,
-  cut: number,
-  capped: boolean,
+  start: { readonly cut: number; readonly capped: boolean; readonly disturbed: boolean },
   noise: number,
   findings: Finding[],
   end: (state: State, cut: number | null, settledFrom?: number | null) => Decision,
 ): Decision {
   const { time: t } = track;
   const n = t.length;
+  const { cut, capped } = start;
   const middle = t[0] + (t[n - 1] - t[0]) / 2;
-  const from = Math.min(cut, firstAt(t, middle));
+  const from = start.disturbed ? cut : Math.min(cut, firstAt(t, middle));
   const window = sliceFrom(track, from);
   const tail = sliceFrom(track, cut);
   if (window.time.length < LIMITS.tailSnapshots) {
@@ -242,6 +260,7 @@ function judgeTail(
       rate > LIMITS.relaxingLeast &&
       rate < LIMITS.relaxingMost &&
       balanced &&
+      !((track.massChange ?? 0) > LIMITS.massChange) &&
       !(half.trend && halfRate > LIMITS.relaxingMost);
     if (!byEncounters || capped) return end('drifting', cut);
     findings.push({
@@ -411,10 +430,11 @@ function motionNow(
 /** Snapshots among which a wave is sought. */
 const WAVE_SNAPSHOTS = 2000;
 
-function waveNow(track: Track, noise: number): Finding | null {
+function waveNow(track: Track, noise: number, earliest: number): Finding | null {
   const { time: t } = track;
   const n = t.length;
   let from = firstAt(t, t[n - 1] - 0.5 * (t[n - 1] - t[0]));
+  from = Math.max(from, earliest);
   if (n - from < 10) from = n - 10;
   // A wave that is there now is there in the last few thousand; the work grows as the square of their number.
   from = Math.max(from, n - WAVE_SNAPSHOTS);

@@ -100,6 +100,7 @@ export function seriesOf(records: readonly MeasureRecord[]): Series | null {
     energyError: energyErrors(judged),
     effectiveNumber: median(judged.map(({ effectiveNumber }) => effectiveNumber)),
     relaxationTime: relaxationOf(late, crossingTime),
+    massChange: Math.abs(Math.log(judged[judged.length - 1].whole.mass / judged[0].whole.mass)),
   };
   return { records: judged, set, ratio, crossingTime, track, remarks };
 }

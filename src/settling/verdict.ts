@@ -20,6 +20,7 @@ import {
   type Series,
   type SetName,
 } from './series.ts';
+import { stretchesOf } from './states.ts';
 
 export type VerdictName = State | 'dispersing';
 
@@ -39,10 +40,11 @@ export interface Verdict {
     readonly noise: number | null;
   };
   readonly evidence: readonly Finding[];
+  /** The run in turn: `transient` before the first rest, `disturbed` between two of them. */
   readonly states: readonly {
     readonly from: number;
     readonly to: number;
-    readonly state: VerdictName | 'transient';
+    readonly state: VerdictName | 'transient' | 'disturbed';
   }[];
   /** One crossing time, in the unit of time of the records. */
   readonly crossingTime: number;
@@ -103,7 +105,11 @@ export function verdictOf(records: readonly MeasureRecord[]): Verdict {
       noise: noises.length > 0 ? noises[noises.length - 1] : null,
     },
     evidence: decision.findings,
-    states: statesOf(track, decision, verdict, at),
+    states: stretchesOf(track, decision, verdict).map(({ from, to, state }) => ({
+      from: at(from),
+      to: at(to),
+      state,
+    })),
     crossingTime,
     span,
     snapshots: n,
@@ -172,51 +178,6 @@ function settledError(track: Track, from: number): number {
     ),
   );
   return Math.max(width, spread, spacing / 2);
-}
-
-/** Prefixes that are looked at for a settled part before a later disturbance. */
-const PREFIXES = 12;
-
-function statesOf(
-  track: Track,
-  decision: Decision,
-  verdict: VerdictName,
-  at: (k: number) => number,
-): Verdict['states'] {
-  const n = track.time.length;
-  const end = at(n - 1);
-  if (decision.settledFrom !== null) {
-    const from = decision.settledFrom;
-    return [
-      ...(from > 0 ? [{ from: at(0), to: at(from), state: 'transient' as const }] : []),
-      { from: at(from), to: end, state: verdict },
-    ];
-  }
-  for (let k = PREFIXES - 1; k >= 4; k--) {
-    const size = Math.floor((n * k) / PREFIXES);
-    const before = decide(firstOf(track, size));
-    if (before.settledFrom === null) continue;
-    const from = before.settledFrom;
-    return [
-      ...(from > 0 ? [{ from: at(0), to: at(from), state: 'transient' as const }] : []),
-      { from: at(from), to: at(size - 1), state: before.state },
-      { from: at(size - 1), to: end, state: verdict },
-    ];
-  }
-  return [{ from: at(0), to: end, state: verdict }];
-}
-
-function firstOf(track: Track, size: number): Track {
-  const cut = (x: Float64Array | null | undefined) => (x ? x.subarray(0, size) : null);
-  return {
-    ...track,
-    time: track.time.subarray(0, size),
-    ratio: track.ratio.subarray(0, size),
-    logHalf: track.logHalf.subarray(0, size),
-    logInner: cut(track.logInner),
-    logVirial: cut(track.logVirial),
-    energyError: cut(track.energyError),
-  };
 }
 
 /** r_v over r_h of smooth systems is 0.9 (uniform) to 1.3 and above; below this few pairs must rule U. */
