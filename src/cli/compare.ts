@@ -4,26 +4,23 @@ import {
   compareRuns,
   comparedRun,
   EXIT,
+  exitCodeOf,
   findSeries,
-  InputError,
   isRecords,
   looksLikeReference,
-  measureFiles,
   parseReference,
   readRecords,
   referenceText,
-  UnanswerableError,
   UsageError,
   type ComparedRun,
   type ExitCode,
   type MeasureRecord,
 } from '../index.ts';
-import { turn, withCrew } from './crew.ts';
-import { reportFailure } from './failure.ts';
-import { ledgerFor, type LedgerOptions } from './ledger.ts';
+import { AlreadyReported } from './failure.ts';
+import type { LedgerOptions } from './ledger.ts';
 import type { MeasureCommandOptions } from './measure.ts';
 import { formatOf, refuseOverwriting, withOutput } from './output.ts';
-import { startProgress } from './progress.ts';
+import { measureSeries } from './series.ts';
 import { surveyOf } from './snapshots.ts';
 import { write, type Streams } from './streams.ts';
 import { NO_PAINT, paintFor } from './style.ts';
@@ -124,32 +121,13 @@ async function measureRun(
   quiet: boolean,
   rest: Omit<RunOptions, 'threads' | 'quiet'>,
   streams: Streams,
-): Promise<MeasureRecord[]> {
+): Promise<readonly MeasureRecord[]> {
   const { survey, range } = await surveyOf(rest, streams);
   const snapshots = await findSeries([path], { ...survey, ...range });
-  const files = snapshots.map(({ file }) => file);
-  const { ledger } = await ledgerFor(files, { ledger: rest.ledger ?? true });
-  const asksFor = snapshots.find((snapshot) => snapshot.threads !== null)?.threads ?? undefined;
-  const records: MeasureRecord[] = [];
-  await withCrew(threads ?? asksFor, streams.interrupt, async (crew) => {
-    const progress = startProgress(streams.stderr, quiet, crew);
-    try {
-      let done = 0;
-      const outcomes = await measureFiles(snapshots, survey, crew, ledger ?? undefined);
-      for await (const { file, record, error } of outcomes) {
-        await turn(streams.interrupt);
-        progress.say(`${file}, ${done + 1} of ${snapshots.length}`, ++done / snapshots.length);
-        if (error === null) records.push(record);
-        else if (error instanceof InputError || error instanceof UnanswerableError) {
-          progress.clear();
-          if (snapshots.length === 1) throw error;
-          await reportFailure(error, streams);
-        } else throw error;
-      }
-    } finally {
-      await ledger?.close();
-      progress.close();
-    }
-  });
+  const work = { recordFiles: [], snapshots, survey, threads, quiet, ledger: rest.ledger };
+  const { records, skipped } = await measureSeries(work, streams);
+  // A run of one snapshot that cannot be measured ends with the code of what has just been told of it.
+  if (snapshots.length === 1 && skipped.length === 1)
+    throw new AlreadyReported(exitCodeOf(skipped[0].error));
   return records;
 }

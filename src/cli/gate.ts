@@ -160,11 +160,7 @@ async function surveyFor(
   options: GateOptions,
   streams: Streams,
 ): ReturnType<typeof surveyOf> {
-  const ofMeasurement = { ...options };
-  for (const key of ['rules', 'list', 'strict', 'junit', 'markdown'] as const) {
-    delete (ofMeasurement as Record<string, unknown>)[key];
-  }
-  const { survey, range } = await surveyOf(ofMeasurement, streams);
+  const { survey, range } = await surveyOf(options, streams);
   return { survey: await optionsForRules(sets, survey), range };
 }
 

@@ -53,6 +53,10 @@ const OF_THE_COMMAND = [
   'poll',
   'still',
   'rules',
+  'list',
+  'strict',
+  'junit',
+  'markdown',
 ] as const;
 /** Options that say which snapshots are meant. */
 const OF_THE_SERIES = ['from', 'to', 'every'] as const;
