@@ -1,7 +1,7 @@
 /** Which rules a run can no longer pass, whatever is still to come. */
 import type { MeasureRecord } from '../dynamics/record.ts';
 import type { GateResult, RuleOutcome } from './judge.ts';
-import type { Rule, Window } from './rules.ts';
+import { intervalOf, type Rule, type Window } from './rules.ts';
 
 /**
  * The rules of severity `fail` that fail now and will fail for ever: what they look at lies in the past,
@@ -27,7 +27,7 @@ const LOST_FOR_EVER = /(^|\.)audit\.(massKept|particlesKept)$/;
 
 function isFinal({ rule, value, bar }: RuleOutcome, now: number): boolean {
   const { quantity, statistic, during } = rule;
-  const isAbove = value !== null && isBeyond(rule, value, bar, 'above');
+  const isAbove = isBeyond(rule, value, bar, 'above');
   if (ONLY_GROWS.test(quantity)) return isAbove;
   if (LOST_FOR_EVER.test(quantity)) return value === false;
   if (quantity === 'verdict') return value === 'broken';
@@ -36,7 +36,7 @@ function isFinal({ rule, value, bar }: RuleOutcome, now: number): boolean {
   if (!keepsItsSnapshots(during)) return false;
   if (statistic === 'every') return true;
   if (statistic === 'max' || statistic === 'largest') return isAbove;
-  return statistic === 'min' && value !== null && isBeyond(rule, value, bar, 'below');
+  return statistic === 'min' && isBeyond(rule, value, bar, 'below');
 }
 
 /** A window that ended in the past. */
@@ -49,14 +49,13 @@ const keepsItsSnapshots = (window: Window | undefined): boolean =>
   (typeof window === 'object' && !('lastSnapshots' in window) && !('lastCrossingTimes' in window));
 
 function isBeyond(
-  { between, atLeast, atMost, near }: Rule,
-  value: number | string | boolean,
+  rule: Rule,
+  value: RuleOutcome['value'],
   bar: RuleOutcome['bar'],
   side: 'above' | 'below',
 ): boolean {
-  if (typeof value !== 'number') return false;
+  const interval = intervalOf(rule);
+  if (typeof value !== 'number' || interval === null) return false;
   const [low, high] = bar ?? [value, value];
-  const upper = between?.[1] ?? atMost ?? (near && near.value + near.tolerance) ?? Infinity;
-  const lower = between?.[0] ?? atLeast ?? (near && near.value - near.tolerance) ?? -Infinity;
-  return side === 'above' ? low > upper : high < lower;
+  return side === 'above' ? low > interval[1] : high < interval[0];
 }

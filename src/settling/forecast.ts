@@ -2,7 +2,7 @@
 import { average, median, slopeOf } from './blocks.ts';
 import { LIMITS } from './limits.ts';
 import type { MeasureRecord } from '../dynamics/record.ts';
-import { decide, type Decision, type Track } from './rule.ts';
+import { decide, noiseOf, type Decision, type Track } from './rule.ts';
 import { seriesOf } from './series.ts';
 
 export interface Forecast {
@@ -26,11 +26,10 @@ const CLEAR = 2;
  * that has no end in sight, or if no sinking is seen.
  */
 export function forecastOf(track: Track, { state, settledFrom }: Decision): Forecast | null {
-  const { time: t, ratio, effectiveNumber } = track;
+  const { time: t, ratio } = track;
   const n = t.length;
   if (settledFrom !== null || !['undecided', 'oscillating'].includes(state) || n < 8) return null;
-  const noise = effectiveNumber ? LIMITS.noiseRatio / Math.sqrt(effectiveNumber) : 0;
-  const limit = Math.max(0.7 * LIMITS.wave, 2.5 * noise);
+  const limit = Math.max(0.7 * LIMITS.wave, 2.5 * noiseOf(track));
   const now = t[n - 1];
   const level = average(ratio.subarray(Math.floor((2 * n) / 3)));
   const envelope = envelopeOf(t, ratio, level);

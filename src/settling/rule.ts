@@ -382,7 +382,8 @@ function worstEnergyError({ energyError: e }: Track): number | null {
   return worst;
 }
 
-function noiseOf({ effectiveNumber }: Track): number {
+/** Scatter of the ratio over realisations; 0 if the number of bodies is not known. */
+export function noiseOf({ effectiveNumber }: Track): number {
   return effectiveNumber ? LIMITS.noiseRatio / Math.sqrt(effectiveNumber) : 0;
 }
 
@@ -520,17 +521,21 @@ function isQuiet(track: Track, noise: number): boolean {
   );
 }
 
-function sliceFrom(track: Track, from: number): Track {
-  const cut = (x: Float64Array | null | undefined) => (x ? x.subarray(from) : null);
+/** Samples from `begin` up to, not including, `end`, of all columns. */
+export function partOf(track: Track, begin: number, end: number): Track {
+  const cut = (x: Float64Array | null | undefined) => (x ? x.subarray(begin, end) : null);
   return {
     ...track,
-    time: track.time.subarray(from),
-    ratio: track.ratio.subarray(from),
-    logHalf: track.logHalf.subarray(from),
+    time: track.time.subarray(begin, end),
+    ratio: track.ratio.subarray(begin, end),
+    logHalf: track.logHalf.subarray(begin, end),
     logInner: cut(track.logInner),
     logVirial: cut(track.logVirial),
+    energyError: cut(track.energyError),
   };
 }
+
+const sliceFrom = (track: Track, from: number): Track => partOf(track, from, track.time.length);
 
 /** Index of the first time not before `when`. */
 function firstAt(t: Float64Array, when: number): number {

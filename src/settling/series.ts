@@ -136,7 +136,10 @@ const logOf = (value: number | null): number | null =>
   value !== null && value > 0 ? Math.log(value) : null;
 
 /** r_v = G M²/(2|U|) of the set: it needs no centre, so a centre that hops cannot spoil it. */
-function virialRadiusOf({ settings, ...record }: MeasureRecord, set: SetName): number | null {
+export function virialRadiusOf(
+  { settings, ...record }: MeasureRecord,
+  set: SetName,
+): number | null {
   const { mass, potential } = record[set] ?? record.whole;
   return potential < 0 ? (settings.gravity.value * mass * mass) / (-2 * potential) : null;
 }

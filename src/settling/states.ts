@@ -1,7 +1,7 @@
 /** What a run was in turn: at rest from–to, disturbed, at rest again. */
 import { lastBurst } from './burst.ts';
 import { LIMITS } from './limits.ts';
-import { decide, type Decision, type State, type Track } from './rule.ts';
+import { decide, noiseOf, partOf, type Decision, type State, type Track } from './rule.ts';
 
 /** Stretch of samples; neighbours share a sample. */
 export interface Stretch<Name extends string = State> {
@@ -66,24 +66,10 @@ function longestRest(track: Track, begin: number, end: number, restless: boolean
     const earlier = settledFrom > 0 ? longestRest(track, begin, begin + settledFrom, false) : null;
     if (earlier !== null) return earlier;
     const rest = partOf(part, settledFrom, length);
-    const noise = track.effectiveNumber ? LIMITS.noiseRatio / Math.sqrt(track.effectiveNumber) : 0;
     // A prefix may reach into what disturbs it next.
-    const burst = lastBurst(rest.time, rest.ratio, noise);
+    const burst = lastBurst(rest.time, rest.ratio, noiseOf(track));
     const to = burst !== null && burst.from > 1 ? settledFrom + burst.from - 1 : length - 1;
     return { from: begin + settledFrom, to: begin + to, state };
   }
   return null;
-}
-
-function partOf(track: Track, begin: number, end: number): Track {
-  const cut = (x: Float64Array | null | undefined) => (x ? x.subarray(begin, end) : null);
-  return {
-    ...track,
-    time: track.time.subarray(begin, end),
-    ratio: track.ratio.subarray(begin, end),
-    logHalf: track.logHalf.subarray(begin, end),
-    logInner: cut(track.logInner),
-    logVirial: cut(track.logVirial),
-    energyError: cut(track.energyError),
-  };
 }

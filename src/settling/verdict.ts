@@ -9,7 +9,7 @@ import { gravityTest } from './gravityTest.ts';
 import { LIMITS } from './limits.ts';
 import { autocorrelationTime, bootstrapHalfWidth, meanOf } from './means.ts';
 import { scalarMeans, type ScalarMean } from './scalars.ts';
-import { decide, type Decision, type Finding, type State, type Track } from './rule.ts';
+import { decide, noiseOf, type Decision, type Finding, type State, type Track } from './rule.ts';
 import {
   balanceOf,
   inOrderOfTime,
@@ -18,6 +18,7 @@ import {
   seriesOf,
   type RatioKind,
   type Series,
+  virialRadiusOf,
   type SetName,
 } from './series.ts';
 import { stretchesOf } from './states.ts';
@@ -153,7 +154,7 @@ function independence(t: Float64Array, x: Float64Array): { count: number; spacin
 /** Half-width of the interval of the cut: blocks drawn anew, and not less than the spread of the single cuts [crossing times]. */
 function settledError(track: Track, from: number): number {
   const { time: t, ratio, logHalf, logVirial } = track;
-  const noise = track.effectiveNumber ? LIMITS.noiseRatio / Math.sqrt(track.effectiveNumber) : 0;
+  const noise = noiseOf(track);
   const floors = [LIMITS.floorRatio, LIMITS.floorRadius, LIMITS.floorRadius].map((floor) =>
     Math.max(floor, noise / 2),
   );
@@ -191,8 +192,8 @@ function remarksOf(
   level: { readonly mean: number; readonly error: number | null },
 ): Remark[] {
   const remarks: Remark[] = [];
+  const last = records[records.length - 1];
   if (set === 'bound') {
-    const last = records[records.length - 1];
     const share = 1 - last.bound.mass / last.whole.mass;
     remarks.push({
       code: 'unboundMass',
@@ -200,10 +201,8 @@ function remarksOf(
       remedy: 'compare the ratio of all bodies before it is quoted: escapers raise it',
     });
   }
-  const last = records[records.length - 1];
   const radius = radiusOf(radiiOf(last, set), 0.5) ?? 0;
-  const { gravity } = last.settings;
-  const virial = (gravity.value * last.whole.mass ** 2) / (2 * Math.abs(last.whole.potential));
+  const virial = virialRadiusOf(last, 'whole') ?? Infinity;
   const isOver = settledFrom !== null || state === 'oscillating'; // Before a merger clumps do the same.
   if (isOver && last.pairsMerged === undefined && virial < FEW_PAIRS * radius) {
     remarks.push({
