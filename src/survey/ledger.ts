@@ -91,8 +91,9 @@ export class Ledger {
     const same = sums && this.#byContent.get(`${key} ${sums.join(' ')}`);
     if (sums === null || !same) return null;
     const record = recordOf(same, snapshot);
-    // Known by another name or date: noted, so that it need not be read the next time.
-    if (record !== null) await this.#append(this.#headOf(key, sources, sums), same.json);
+    // Known by another name or date: noted, if that spares reading it the next time.
+    const head = this.#headOf(key, sources, sums);
+    if (record !== null && isUntouched(head, sources)) await this.#append(head, same.json);
     return record;
   }
 
@@ -267,7 +268,7 @@ const bytesOf = (sources: readonly Source[]) => sources.map(({ bytes }) => bytes
 /** Clocks of file systems tick as slowly as this: what changed just before it was seen may have changed after. */
 const TICK_MS = 2000;
 
-function isUntouched(entry: Entry, sources: readonly Source[]): boolean {
+function isUntouched(entry: Head, sources: readonly Source[]): boolean {
   return (
     entry.files.length === sources.length &&
     entry.files.every(
